@@ -1,0 +1,4 @@
+//! Sums that merge: the same bytes for any order, any number of threads and any sharding.
+
+pub mod gram;
+pub mod panel;

@@ -1,0 +1,23 @@
+//! Types with units that every part speaks. Imports nothing of ours.
+
+mod locus;
+mod programme;
+mod strata;
+
+pub use locus::{CallTally, Genotypes, Locus, MISSING_ALLELE, MISSING_DOSAGE, Verdict};
+pub use programme::{LifeHistory, PopulationSettings, Programme, SamplingPlan};
+pub use strata::{Comparison, ComparisonKind, Individual, Sex, SheetRow, Strata, Stratum};
+
+/// A hash that is the same on every machine and in every version: FNV-1a with a final mix.
+///
+/// Used to spread loci and contigs over a bounded number of groups without regard to their order.
+pub fn stable_hash(bytes: &[u8]) -> u64 {
+    let mut h: u64 = 0xcbf2_9ce4_8422_2325;
+    for &b in bytes {
+        h = (h ^ u64::from(b)).wrapping_mul(0x0000_0100_0000_01b3);
+    }
+    h ^= h >> 33;
+    h = h.wrapping_mul(0xff51_afd7_ed55_8ccd);
+    h ^= h >> 33;
+    h
+}

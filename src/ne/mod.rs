@@ -1,0 +1,8 @@
+//! Estimators: sums to estimates with intervals. No streaming, no files.
+
+pub mod demographic;
+pub mod diffusion;
+pub mod linkage;
+pub mod prior;
+pub mod temporal;
+pub mod wright_fisher;

@@ -1,0 +1,4 @@
+//! Projections and simulations that build on the estimates.
+
+pub mod losses;
+pub mod rehearse;
