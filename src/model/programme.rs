@@ -59,6 +59,9 @@ impl Programme {
         population: &str,
         field: impl Fn(&PopulationSettings) -> Option<T>,
     ) -> Option<T> {
-        self.by_population.get(population).and_then(&field).or_else(|| field(&self.all))
+        self.by_population
+            .get(population)
+            .and_then(&field)
+            .or_else(|| field(&self.all))
     }
 }
