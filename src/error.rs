@@ -4,6 +4,8 @@ use std::fmt;
 use std::io;
 use std::path::PathBuf;
 
+pub use crate::model::Problem;
+
 /// Result of everything that can fail here.
 pub type Result<T> = std::result::Result<T, Error>;
 
@@ -117,17 +119,6 @@ impl fmt::Display for Place {
             Place::End => write!(f, "end of file"),
         }
     }
-}
-
-/// One problem of a sheet, a programme or another small input file.
-#[derive(Debug, Clone, PartialEq, Eq)]
-pub struct Problem {
-    /// 1-based row (line) of the file, where one is to blame.
-    pub row: Option<u64>,
-    /// What is wrong, with the offending value.
-    pub what: String,
-    /// What the user can do.
-    pub cure: String,
 }
 
 fn list(path: &std::path::Path, problems: &[Problem]) -> String {
