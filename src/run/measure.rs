@@ -4,19 +4,23 @@ use std::collections::BTreeMap;
 use std::path::Path;
 use std::sync::Arc;
 
+use super::order::Places;
 use super::pipeline::{Collected, LocusTable, Source, collect};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
 use crate::ingest::sheet::{Sheet, read_sheet};
 use crate::ingest::{self, Selection};
-use crate::merge::Scheme;
+use crate::merge::{LocusView, Scheme};
 use crate::model::{
-    Compared, Matched, MeasurePlan, Note, Programme, Verdict, comparisons, default_gene_copies,
-    match_samples,
+    Compared, Locus, Matched, MeasurePlan, Note, Programme, Verdict, comparisons,
+    default_gene_copies, match_samples,
 };
 use crate::report::assemble::{self, Findings};
 use crate::report::table::{LocusTable as Table, TableFile};
-use crate::report::wire::{FORMAT, FORMAT_VERSION, InputFile, Loci, Provenance, Report, Samples};
+use crate::report::warnings::warning;
+use crate::report::wire::{
+    FORMAT, FORMAT_VERSION, InputFile, Loci, Provenance, Report, Samples, Warning,
+};
 use crate::report::{CAUTIONS, Output, methods};
 
 /// Runs `measure` and writes its outputs; returns the report for the summary.
@@ -53,7 +57,7 @@ impl Inputs {
             }
             None => (Programme::default(), None),
         };
-        programme.override_with(&plan.flags);
+        programme.overrule(&plan.flags);
         let (sources, matched) = open_calls(plan, &sheet)?;
         let compared =
             comparisons(&matched.strata, &programme).map_err(|problems| Error::Sheet {
@@ -95,7 +99,7 @@ impl Inputs {
             use std::io::Write;
             file.write_all(rows.header().as_bytes()).map_err(failed)?;
         }
-        let row = |locus: &_, view: &_, out: &mut Vec<u8>| rows.row(locus, view, out);
+        let row = |locus: &Locus, view: &LocusView, out: &mut Vec<u8>| rows.row(locus, view, out);
         let table = file.as_mut().map(|out| LocusTable {
             out,
             row: &row,
@@ -201,36 +205,28 @@ impl Inputs {
                 .collect(),
             without_calls: individuals
                 .iter()
-                .zip(all.sums.typed_loci())
-                .filter(|(_, loci)| *loci == 0)
+                .zip(&all.sums.typed_records)
+                .filter(|(_, loci)| **loci == 0)
                 .map(|(individual, _)| individual.sample.clone())
                 .collect(),
         }
     }
 
-    fn warnings(&self, all: &Collected) -> Vec<crate::report::wire::Warning> {
+    fn warnings(&self, all: &Collected) -> Vec<Warning> {
         let notes = self
             .sheet
             .notes
             .iter()
             .chain(&self.matched.notes)
             .chain(&self.compared.notes);
-        let mut warnings: Vec<_> = notes.map(crate::report::warning).collect();
+        let mut warnings: Vec<_> = notes.map(warning).collect();
         for source in &self.sources {
             let file = source.reader.path().display().to_string();
             for text in source.reader.warnings() {
-                warnings.push(crate::report::warning(&Note::new(
-                    "calls",
-                    file.clone(),
-                    text.clone(),
-                )));
+                warnings.push(warning(&Note::new("calls", file.clone(), text.clone())));
             }
         }
-        warnings.extend(
-            crate::report::warnings::of_order(&all.places)
-                .iter()
-                .map(crate::report::warning),
-        );
+        warnings.extend(of_order(&all.places).iter().map(warning));
         warnings
     }
 }
@@ -305,6 +301,30 @@ fn loci(all: &Collected) -> Loci {
         genotypes: genotypes.map(|(name, n)| (name.to_owned(), n)).into(),
         panel: all.sums.panel.loci().len() as u64,
     }
+}
+
+/// What the order of the records showed, as notes.
+fn of_order(places: &Places) -> Vec<Note> {
+    let told = [
+        (
+            places.backwards,
+            "unsorted",
+            "record(s) come before the one ahead of them; windows of the genome do not mind, but check how the file was made",
+        ),
+        (
+            places.repeated,
+            "repeated_position",
+            "record(s) stand at the place of the one ahead of them; each counts as a locus: join them, or remove duplicates",
+        ),
+        (
+            places.contigs_again,
+            "contig_again",
+            "time(s) a contig comes back after another; if a part was given twice, every locus in it counts twice",
+        ),
+    ];
+    let told = told.into_iter().filter(|(n, ..)| *n > 0);
+    told.map(|(n, code, text)| Note::new(code, "calls", format!("{n} {text}")))
+        .collect()
 }
 
 fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String) -> InputFile {

@@ -88,11 +88,11 @@ fn per_site(findings: &Findings, diversity: &TwoWay<StratumTerms>) -> wire::PerS
 
 fn hardy_weinberg(findings: &Findings, sums: &StratumSums) -> wire::HardyWeinberg {
     let rate = findings.false_discovery_rate;
-    let rejected = sums.hardy_weinberg.rejected(rate);
+    let rejected = sums.hardy_weinberg.rejections(rate);
     wire::HardyWeinberg {
         tested: sums.hardy_weinberg.tested(),
         false_discovery_rate: rate,
-        rejected: rejected.excess + rejected.deficit,
+        rejected: rejected.rejected(),
         excess: rejected.excess,
         deficit: rejected.deficit,
     }
