@@ -1,5 +1,7 @@
 //! Sums that merge: the same bytes for any order, any number of threads and any sharding.
 
+pub mod carriers;
+pub mod fates;
 mod fixed;
 pub mod gram;
 pub mod histogram;
@@ -10,7 +12,7 @@ mod two_way;
 mod windows;
 
 pub use fixed::{BATCH_LOCI, FRACTION_BITS, Terms, from_fixed, to_fixed};
-pub use scheme::Scheme;
+pub use scheme::{Pair, Scheme};
 pub use sums::{LocusView, PairSums, StratumSums, Sums};
 pub use two_way::TwoWay;
 pub use windows::{ENOUGH_BLOCKS, Windows};

@@ -2,7 +2,7 @@
 
 use std::ops::Range;
 
-use crate::model::{Comparison, Strata};
+use crate::model::{Comparison, ComparisonKind, Strata};
 
 /// Memory that windows of one run may take, in bytes; their number follows from it.
 const WINDOW_MEMORY: usize = 48 << 20;
@@ -14,14 +14,29 @@ const MOST_WINDOWS: usize = 4096;
 pub struct Scheme {
     /// Slots of each stratum.
     pub strata: Vec<Range<usize>>,
-    /// Pairs of strata, first and second.
-    pub pairs: Vec<(usize, usize)>,
+    /// Pairs of strata, in the order of the comparisons.
+    pub pairs: Vec<Pair>,
+    /// The latest stratum of each population.
+    pub latest: Vec<usize>,
     /// Strata that share a visit, where there are at least two.
     pub visits: Vec<Vec<usize>>,
     /// Smallest share of individuals typed for a locus to count in a stratum.
     pub min_call_rate: f64,
     /// Gene copies that richness is rarefied to.
     pub gene_copies: u32,
+    /// Most alleles kept by name in each list.
+    pub most_listed: usize,
+}
+
+/// Two strata to compare.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Pair {
+    /// The first (earlier) stratum.
+    pub from: usize,
+    /// The second (later) stratum.
+    pub to: usize,
+    /// Whether both are visits of one population, so that alleles have a fate.
+    pub in_time: bool,
 }
 
 impl Scheme {
@@ -31,22 +46,38 @@ impl Scheme {
         comparisons: &[Comparison],
         min_call_rate: f64,
         gene_copies: u32,
+        most_listed: usize,
     ) -> Self {
+        let all = &strata.strata;
         let mut visits: Vec<Vec<usize>> = Vec::new();
-        for (i, stratum) in strata.strata.iter().enumerate() {
-            let same = |v: &&mut Vec<usize>| strata.strata[v[0]].visit == stratum.visit;
+        for (i, stratum) in all.iter().enumerate() {
+            let same = |v: &&mut Vec<usize>| all[v[0]].visit == stratum.visit;
             match visits.iter_mut().find(same) {
                 Some(visit) => visit.push(i),
                 None => visits.push(vec![i]),
             }
         }
         visits.retain(|v| v.len() > 1);
+        // Strata come by population, then year: the last of each run is the latest.
+        let next_differs = |i: &usize| {
+            all.get(i + 1)
+                .is_none_or(|n| n.population != all[*i].population)
+        };
         Scheme {
-            strata: strata.strata.iter().map(|s| s.slots.clone()).collect(),
-            pairs: comparisons.iter().map(|c| (c.from, c.to)).collect(),
+            strata: all.iter().map(|s| s.slots.clone()).collect(),
+            pairs: comparisons
+                .iter()
+                .map(|c| Pair {
+                    from: c.from,
+                    to: c.to,
+                    in_time: c.kind != ComparisonKind::BetweenPopulations,
+                })
+                .collect(),
+            latest: (0..all.len()).filter(next_differs).collect(),
             visits,
             min_call_rate,
             gene_copies,
+            most_listed,
         }
     }
 

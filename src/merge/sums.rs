@@ -2,10 +2,12 @@
 
 use std::sync::Arc;
 
+use super::carriers::Carriers;
+use super::fates::Fates;
 use super::fixed::Terms;
 use super::histogram::PValueHistogram;
 use super::panel::Panel;
-use super::scheme::Scheme;
+use super::scheme::{Pair, Scheme};
 use super::two_way::TwoWay;
 use crate::locus::hardy_weinberg::{HardyWeinbergCache, test_many_alleles};
 use crate::locus::richness::Rarefaction;
@@ -37,12 +39,8 @@ pub struct StratumSums {
 pub struct PairSums {
     /// Differentiation and change.
     pub change: TwoWay<PairTerms>,
-    /// Alleles seen in the first.
-    pub alleles_from: u64,
-    /// Of these, alleles not seen in the second.
-    pub not_seen_again: u64,
-    /// Loci that vary in the first and show one allele in the second.
-    pub loci_fixed: u64,
+    /// What became of the alleles of the first; nothing is added for two populations.
+    pub fates: Fates,
 }
 
 /// Everything that is summed over loci.
@@ -55,6 +53,8 @@ pub struct Sums {
     pub pairs: Vec<PairSums>,
     /// By visit of the scheme, then stratum of that visit.
     pub private: Vec<Vec<TwoWay<PrivateTerms>>>,
+    /// Alleles in few carriers, by latest stratum of the scheme.
+    pub carriers: Vec<Carriers>,
     /// Genotypes at a sample of loci.
     pub panel: Panel,
     /// Kept records at which each individual is typed, by slot.
@@ -113,11 +113,9 @@ impl Sums {
         let pairs = scheme
             .pairs
             .iter()
-            .map(|&(from, to)| PairSums {
-                change: TwoWay::new(side_by_side(&[from, to]), most),
-                alleles_from: 0,
-                not_seen_again: 0,
-                loci_fixed: 0,
+            .map(|pair| PairSums {
+                change: TwoWay::new(side_by_side(&[pair.from, pair.to]), most),
+                fates: Fates::new(scheme.most_listed),
             })
             .collect();
         let private = scheme
@@ -128,6 +126,11 @@ impl Sums {
                     .map(|_| TwoWay::new(side_by_side(v), most))
                     .collect()
             })
+            .collect();
+        let carriers = scheme
+            .latest
+            .iter()
+            .map(|&s| Carriers::new(range(s), scheme.most_listed))
             .collect();
         let scratch = Scratch {
             counts: vec![Counts::default(); strata.len()],
@@ -142,6 +145,7 @@ impl Sums {
             strata,
             pairs,
             private,
+            carriers,
             panel: Panel::default(),
             typed_records: vec![0; scheme.slots()],
             kept: 0,
@@ -191,9 +195,7 @@ impl Sums {
         }
         for (a, b) in self.pairs.iter_mut().zip(other.pairs) {
             a.change.merge(b.change);
-            a.alleles_from += b.alleles_from;
-            a.not_seen_again += b.not_seen_again;
-            a.loci_fixed += b.loci_fixed;
+            a.fates.merge(b.fates);
         }
         for (a, b) in self
             .private
@@ -201,6 +203,9 @@ impl Sums {
             .flatten()
             .zip(other.private.into_iter().flatten())
         {
+            a.merge(b);
+        }
+        for (a, b) in self.carriers.iter_mut().zip(other.carriers) {
             a.merge(b);
         }
         self.panel.merge(other.panel);
@@ -275,16 +280,18 @@ impl Sums {
                 sums.hardy_weinberg.add(mid_p, direction);
             }
         }
-        for (sums, &(from, to)) in self.pairs.iter_mut().zip(&scheme.pairs) {
+        for (sums, &Pair { from, to, in_time }) in self.pairs.iter_mut().zip(&scheme.pairs) {
             if usable[from] && usable[to] {
                 at.add(&mut sums.change, counts, &[from, to], |c| {
                     pair_terms(&c[from], &c[to], rarefaction)
                 });
-                let seen = fates(&counts[from], &counts[to]);
-                sums.alleles_from += seen.0;
-                sums.not_seen_again += seen.1;
-                sums.loci_fixed += u64::from(seen.2);
+                if in_time {
+                    sums.fates.add(locus, &counts[from], &counts[to]);
+                }
             }
+        }
+        for (carriers, &s) in self.carriers.iter_mut().zip(&scheme.latest) {
+            carriers.add(locus, &counts[s]);
         }
         for (members, visit) in self.private.iter_mut().zip(&scheme.visits) {
             if visit.iter().all(|&s| usable[s]) {
@@ -367,15 +374,4 @@ fn varies(counts: &[Counts]) -> bool {
     let alleles = counts.first().map_or(0, |c| c.copies.len());
     let seen = |a: &usize| counts.iter().any(|c| c.copies[*a] > 0);
     (0..alleles).filter(seen).nth(1).is_some()
-}
-
-/// Alleles of the first, those of them not seen in the second, and whether a locus that varied in
-/// the first shows a single allele in the second.
-fn fates(from: &Counts, to: &Counts) -> (u64, u64, bool) {
-    let (mut seen, mut gone) = (0, 0);
-    for (&before, &after) in from.copies.iter().zip(&to.copies) {
-        seen += u64::from(before > 0);
-        gone += u64::from(before > 0 && after == 0);
-    }
-    (seen, gone, seen > 1 && to.alleles_seen() == 1)
 }

@@ -87,7 +87,13 @@ impl Inputs {
             .or_else(|| default_gene_copies(strata))
             .unwrap_or(2);
         let pairs = &self.compared.comparisons;
-        let scheme = Arc::new(Scheme::new(strata, pairs, plan.min_call_rate, gene_copies));
+        let scheme = Arc::new(Scheme::new(
+            strata,
+            pairs,
+            plan.min_call_rate,
+            gene_copies,
+            plan.list_losses,
+        ));
         let rows = Table::new(strata, pairs);
         let mut file = plan
             .loci_output

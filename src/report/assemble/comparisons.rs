@@ -45,8 +45,8 @@ fn one(findings: &Findings, comparison: &Comparison, sums: &PairSums) -> wire::C
         fs: in_time.then(|| pair.change(|t| ratio(t.fs_numerator, t.fs_denominator))),
         change: differences(&pair),
         alleles: in_time.then(|| wire::AlleleFates {
-            baseline: sums.alleles_from,
-            not_seen_again: sums.not_seen_again,
+            baseline: sums.fates.alleles(),
+            not_seen_again: sums.fates.not_seen(),
             expected_not_seen_again: None,
             expected_interval: None,
             faster_than_explained: None,
@@ -54,7 +54,7 @@ fn one(findings: &Findings, comparison: &Comparison, sums: &PairSums) -> wire::C
             expected_share_wrong: None,
             absent_because: Some(Absence::GenerationsUnknown.text().to_owned()),
         }),
-        loci_fixed_since: in_time.then_some(sums.loci_fixed),
+        loci_fixed_since: in_time.then_some(sums.fates.loci_fixed),
         outlier_loci: None,
     }
 }
