@@ -15,6 +15,14 @@ use genewane::locus::hardy_weinberg::{
     expected_homozygotes, heterozygote_distribution, test_many_alleles, test_two_alleles,
 };
 use genewane::locus::richness::{Rarefaction, absence, private_richness, richness};
+use genewane::merge::histogram::{PValueHistogram, Rejections};
+use genewane::model::SamplingPlan;
+use genewane::ne::interval::{block_jackknife, individual_variance_centred};
+use genewane::ne::temporal::{
+    TemporalSample, chi_square_limits, corrected_fs, drift_rate_fc, drift_rate_fk, drift_rate_fs,
+    drift_rate_fs_linear,
+};
+use genewane::ne::testing::benjamini_hochberg;
 use statrs::distribution::{ChiSquared, ContinuousCDF};
 
 #[track_caller]
@@ -734,5 +742,337 @@ fn biallelic(first: u32, both: u32, second: u32) -> Counts {
         heterozygotes: both,
         copies: vec![2 * first + both, 2 * second + both],
         heterozygous: vec![both; 2],
+    }
+}
+
+/// Busing, Meijer & van der Leeden (1999) in exact fractions; with equal weights it is the ordinary
+/// delete-one jackknife.
+#[test]
+fn weighted_block_jackknife() {
+    let blocks = [
+        (10.0, 0.12, 1.5),
+        (20.0, 0.31, 2.8),
+        (15.0, 0.1, 2.0),
+        (5.0, 0.09, 0.7),
+        (30.0, 0.45, 4.2),
+    ];
+    let numerator: f64 = blocks.iter().map(|block| block.1).sum();
+    let denominator: f64 = blocks.iter().map(|block| block.2).sum();
+    let estimate = numerator / denominator;
+    relatively_close(estimate, 0.09553571428571428, 1e-9);
+    let deletes = blocks.map(|(_, n, d)| (numerator - n) / (denominator - d));
+    let expected = [
+        0.0979381443298969,
+        0.09047619047619047,
+        0.10543478260869565,
+        0.09333333333333334,
+        0.08857142857142856,
+    ];
+    for (value, expected) in deletes.into_iter().zip(expected) {
+        relatively_close(value, expected, 1e-9);
+    }
+    let weighted = block_jackknife(estimate, &deletes, &blocks.map(|block| block.0)).unwrap();
+    assert_eq!(weighted.blocks, 5);
+    relatively_close(weighted.bias_corrected, 0.09560264855606071, 1e-9);
+    relatively_close(weighted.variance, 0.00013903385713960633, 1e-9);
+    relatively_close(weighted.variance.sqrt(), 0.01179126189767687, 1e-9);
+    let equal = block_jackknife(estimate, &deletes, &[1.0; 5]).unwrap();
+    relatively_close(equal.variance, 0.00014557829950887, 1e-9);
+    // The two are the same for blocks of one individual, as algebra has it.
+    relatively_close(
+        equal.variance,
+        individual_variance_centred(&deletes).unwrap(),
+        1e-9,
+    );
+}
+
+/// Sums over loci from which the multilocus estimates of change are taken.
+#[derive(Default)]
+struct TemporalSums {
+    weight: f64,
+    fc: f64,
+    fk: f64,
+    numerator: f64,
+    denominator: f64,
+    per_first: f64,
+    per_later: f64,
+}
+
+impl TemporalSums {
+    fn of(loci: &[[Counts; 2]]) -> Self {
+        let mut sums = TemporalSums::default();
+        for [first, later] in loci {
+            let terms = temporal_terms(first, later).unwrap();
+            let weight = f64::from(terms.weight());
+            sums.weight += weight;
+            sums.fc += weight * terms.fc;
+            sums.fk += weight * terms.fk;
+            sums.numerator += terms.fs_numerator;
+            sums.denominator += terms.fs_denominator;
+            sums.per_first += weight / f64::from(terms.first);
+            sums.per_later += weight / f64::from(terms.later);
+        }
+        sums
+    }
+
+    fn samples(&self, plan: SamplingPlan, census: Option<f64>) -> TemporalSample {
+        TemporalSample {
+            generations: 3.0,
+            first: self.weight / self.per_first,
+            later: self.weight / self.per_later,
+            plan,
+            census,
+        }
+    }
+}
+
+/// Exact fractions; the corrections of both plans by Waples (1989), Pollak (1983), Nei & Tajima
+/// (1981) and Jorde & Ryman (2007).
+#[test]
+fn temporal_effective_size() {
+    let size = |rate: Option<f64>| 0.5 / rate.unwrap();
+    let sums = TemporalSums::of(&two_visits());
+    let (fc, fk) = (sums.fc / sums.weight, sums.fk / sums.weight);
+    let fs = sums.numerator / sums.denominator;
+    let two = sums.samples(SamplingPlan::Two, None);
+    let one = sums.samples(SamplingPlan::One, Some(500.0));
+    assert_eq!(sums.weight, 7.0);
+    relatively_close(two.first, 19.558823529411764, 1e-8);
+    relatively_close(two.later, 19.6875, 1e-8);
+    relatively_close(fk, 0.07592687338659065, 1e-8);
+    relatively_close(fc, 0.07553487924247963, 1e-8);
+    relatively_close(fs, 65020.0 / 720033.0, 1e-8);
+    relatively_close(size(drift_rate_fk(fk, &two)), 60.08137850807069, 1e-8);
+    relatively_close(size(drift_rate_fk(fk, &one)), 55.62531750086894, 1e-8);
+    relatively_close(size(drift_rate_fc(fc, &two)), 61.03976584709772, 1e-8);
+    relatively_close(size(drift_rate_fc(fc, &one)), 56.445844350810766, 1e-8);
+    relatively_close(corrected_fs(fs, &two).unwrap(), 0.03832031524840231, 1e-8);
+    relatively_close(corrected_fs(fs, &one).unwrap(), 0.040281823494786, 1e-8);
+    relatively_close(
+        size(drift_rate_fs_linear(fs, &two)),
+        39.14372807939098,
+        1e-8,
+    );
+    relatively_close(
+        size(drift_rate_fs_linear(fs, &one)),
+        37.237638961258966,
+        1e-8,
+    );
+    relatively_close(size(drift_rate_fs(fs, &two)), 38.639386663048185, 1e-8);
+    // Fc with the weights K of some papers instead of K-1.
+    let (mut weighted, mut weights) = (0.0, 0.0);
+    for [first, later] in &two_visits() {
+        let terms = temporal_terms(first, later).unwrap();
+        weighted += f64::from(terms.alleles) * terms.fc;
+        weights += f64::from(terms.alleles);
+    }
+    relatively_close(weighted / weights, 0.08305755102493038, 1e-8);
+}
+
+/// Waples (1989): 7 F over the chi-square quantiles 16.012764274629326 and 1.689869180677355 with 7
+/// degrees of freedom, which a general statistics library gives.
+#[test]
+fn chi_square_interval() {
+    let sums = TemporalSums::of(&two_visits());
+    let fk = sums.fk / sums.weight;
+    let [low, high] = chi_square_limits(fk, sums.weight, 0.95).unwrap();
+    relatively_close(low, 0.03319152799546459, 1e-8);
+    relatively_close(high, 0.3145143540005249, 1e-8);
+    relatively_close(7.0 * fk / low, 16.012764274629326, 1e-8);
+    relatively_close(7.0 * fk / high, 1.689869180677355, 1e-8);
+    let samples = sums.samples(SamplingPlan::Two, None);
+    let rates = [low, high].map(|f| drift_rate_fk(f, &samples).unwrap());
+    // A negative rate: the upper limit of the size is unbounded.
+    close(0.5 / rates[0], -84.4157, 1e-3);
+    relatively_close(0.5 / rates[1], 5.691441486036802, 1e-8);
+}
+
+/// Exact enumeration of both samples of a Wright-Fisher population: what sampling adds is taken off
+/// to leave 1 - (1 - 1/(2N))^t.
+#[test]
+fn temporal_corrections_are_exact() {
+    // N, individuals sampled first and later, t, plan, E(numerator)/E(denominator) of Fs.
+    let expected = [
+        (
+            4.0,
+            2.0,
+            3.0,
+            1,
+            SamplingPlan::One,
+            0.33548387096774207,
+            0.125,
+        ),
+        (
+            4.0,
+            2.0,
+            3.0,
+            1,
+            SamplingPlan::Two,
+            0.5988023952095811,
+            0.125,
+        ),
+        (
+            4.0,
+            2.0,
+            3.0,
+            2,
+            SamplingPlan::One,
+            0.4614107883817427,
+            0.234375,
+        ),
+        (
+            4.0,
+            2.0,
+            3.0,
+            2,
+            SamplingPlan::Two,
+            0.7225211375864721,
+            0.234375,
+        ),
+        (
+            10.0,
+            5.0,
+            8.0,
+            3,
+            SamplingPlan::One,
+            0.21778293246040953,
+            0.142625,
+        ),
+        (
+            10.0,
+            5.0,
+            8.0,
+            3,
+            SamplingPlan::Two,
+            0.3199004397945516,
+            0.142625,
+        ),
+    ];
+    for (census, first, later, generations, plan, fs, corrected) in expected {
+        let samples = TemporalSample {
+            generations: f64::from(generations),
+            first,
+            later,
+            plan,
+            census: Some(census),
+        };
+        close(corrected_fs(fs, &samples).unwrap(), corrected, 1e-9);
+        close(
+            1.0 - (1.0 - 0.5 / census).powi(generations),
+            corrected,
+            1e-12,
+        );
+        close(drift_rate_fs(fs, &samples).unwrap(), 0.5 / census, 1e-9);
+    }
+}
+
+/// Exact fractions: Fs without each locus, weighted by K-1 and unweighted.
+#[test]
+fn temporal_jackknife_over_loci() {
+    let loci = two_visits();
+    let all = TemporalSums::of(&loci);
+    let mut deletes = Vec::new();
+    let mut weights = Vec::new();
+    for locus in &loci {
+        let one = TemporalSums::of(std::slice::from_ref(locus));
+        deletes.push((all.numerator - one.numerator) / (all.denominator - one.denominator));
+        weights.push(one.weight);
+    }
+    let expected = [
+        0.06279906245583466,
+        0.08367607847021169,
+        0.08997315787797505,
+        0.13245033112582782,
+    ];
+    for (&value, expected) in deletes.iter().zip(expected) {
+        relatively_close(value, expected, 1e-8);
+    }
+    let fs = all.numerator / all.denominator;
+    let weighted = block_jackknife(fs, &deletes, &weights).unwrap();
+    relatively_close(weighted.bias_corrected, 0.09480351855431102, 1e-8);
+    relatively_close(weighted.variance, 0.0017791759469511584, 1e-8);
+    let equal = block_jackknife(fs, &deletes, &[1.0; 4]).unwrap();
+    relatively_close(equal.bias_corrected, 0.08453169451509952, 1e-8);
+    relatively_close(equal.variance, 0.0019215884372485068, 1e-8);
+}
+
+/// The worked example of Benjamini & Hochberg (1995), which rejects four at 5 %; q from a general
+/// statistics library.
+#[test]
+fn false_discovery_rate() {
+    let p = [
+        0.0001, 0.0004, 0.0019, 0.0095, 0.0201, 0.0278, 0.0298, 0.0344, 0.0459, 0.324, 0.4262,
+        0.5719, 0.6528, 0.759, 1.0,
+    ];
+    let expected = [
+        0.0015,
+        0.003,
+        0.0095,
+        0.035625,
+        0.0603,
+        0.063857142857,
+        0.063857142857,
+        0.0645,
+        0.0765,
+        0.486,
+        0.581181818182,
+        0.714875,
+        0.753230769231,
+        0.813214285714,
+        1.0,
+    ];
+    let adjusted = benjamini_hochberg(&p.map(Some));
+    for (value, expected) in adjusted.iter().zip(expected) {
+        close(value.unwrap(), expected, 1e-9);
+    }
+    assert_eq!(adjusted.iter().filter(|q| q.unwrap() <= 0.05).count(), 4);
+    let mut histogram = PValueHistogram::default();
+    for (i, p) in p.into_iter().enumerate() {
+        histogram.add(
+            p,
+            if i == 2 {
+                Direction::Excess
+            } else {
+                Direction::Deficit
+            },
+        );
+    }
+    let rejections = histogram.rejections(0.05);
+    assert_eq!(
+        rejections,
+        Rejections {
+            tested: 15,
+            deficit: 3,
+            excess: 1
+        }
+    );
+}
+
+/// Arithmetic: ties share a q, and a missing p is no test.
+#[test]
+fn false_discovery_rate_with_ties() {
+    let p = [
+        Some(0.01),
+        Some(0.02),
+        Some(0.02),
+        Some(0.5),
+        None,
+        Some(0.04),
+        Some(1e-5),
+    ];
+    let expected = [
+        Some(0.03),
+        Some(0.03),
+        Some(0.03),
+        Some(0.5),
+        None,
+        Some(0.048),
+        Some(6e-5),
+    ];
+    for (value, expected) in benjamini_hochberg(&p).into_iter().zip(expected) {
+        assert_eq!(value.is_some(), expected.is_some());
+        if let (Some(value), Some(expected)) = (value, expected) {
+            close(value, expected, 1e-12);
+        }
     }
 }

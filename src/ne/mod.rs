@@ -3,7 +3,9 @@
 pub mod demographic;
 pub mod diffusion;
 pub mod estimate;
+pub mod interval;
 pub mod linkage;
 pub mod prior;
 pub mod temporal;
+pub mod testing;
 pub mod wright_fisher;
