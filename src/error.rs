@@ -73,7 +73,11 @@ impl Error {
 
     /// An I/O failure with its path and what was being done.
     pub fn io(path: impl Into<PathBuf>, doing: &'static str, source: io::Error) -> Self {
-        Error::Io { path: path.into(), doing, source }
+        Error::Io {
+            path: path.into(),
+            doing,
+            source,
+        }
     }
 }
 
@@ -104,7 +108,11 @@ impl fmt::Display for Place {
         match self {
             Place::Header => write!(f, "header"),
             Place::Record(n) => write!(f, "record {n}"),
-            Place::Locus { record, contig, position } => {
+            Place::Locus {
+                record,
+                contig,
+                position,
+            } => {
                 write!(f, "record {record} ({contig}:{position})")
             }
             Place::Byte(offset) => write!(f, "block at byte {offset}"),

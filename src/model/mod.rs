@@ -9,7 +9,9 @@ mod programme;
 mod strata;
 
 pub use comparisons::{Compared, comparisons};
-pub use locus::{CallTally, Genotypes, Locus, MISSING_ALLELE, MISSING_DOSAGE, Verdict};
+pub use locus::{
+    CallTally, Genotypes, Locus, MAX_ALLELES, MISSING_ALLELE, MISSING_DOSAGE, Verdict,
+};
 pub use matching::{Matched, UNUSED_COLUMN, match_samples};
 pub use notes::{Note, Problem, nearest, plain_letters, spell_out};
 pub use plan::{
