@@ -5,6 +5,9 @@ pub const MISSING_ALLELE: u16 = u16::MAX;
 /// The dosage code of a missing genotype of a biallelic locus.
 pub const MISSING_DOSAGE: u8 = 3;
 
+/// Most alleles of a locus, the reference included; a record that lists more is set aside.
+pub const MAX_ALLELES: usize = 4096;
+
 /// One record of the calls, owned by the caller and refilled: nothing is allocated per locus.
 #[derive(Debug, Clone, Default)]
 pub struct Locus {

@@ -4,7 +4,7 @@ mod locus;
 mod programme;
 mod strata;
 
-pub use locus::{CallTally, Genotypes, Locus, MISSING_ALLELE, MISSING_DOSAGE, Verdict};
+pub use locus::{CallTally, Genotypes, Locus, MAX_ALLELES, MISSING_ALLELE, MISSING_DOSAGE, Verdict};
 pub use programme::{LifeHistory, PopulationSettings, Programme, SamplingPlan};
 pub use strata::{Comparison, ComparisonKind, Individual, Sex, SheetRow, Strata, Stratum};
 
