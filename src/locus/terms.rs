@@ -3,7 +3,7 @@
 
 use super::change::temporal_terms;
 use super::diversity::{expected_heterozygosity, heterozygote_excess, observed_heterozygosity};
-use super::fstatistics::{hudson, nei, weir_cockerham};
+use super::fstatistics::{hudson, nei, weir_cockerham_pair};
 use super::richness::{Rarefaction, private_richness, richness};
 use super::Counts;
 use crate::terms;
@@ -118,7 +118,7 @@ pub fn stratum_terms(counts: &Counts, rarefaction: &mut Rarefaction) -> StratumT
         richness: richness.unwrap_or_default(),
         richness_loci: present(&richness),
         excess: excess.sum,
-        excess_alleles: excess.alleles,
+        excess_alleles: f64::from(excess.alleles),
     }
 }
 
@@ -131,7 +131,7 @@ pub fn pair_terms(from: &Counts, to: &Counts, rarefaction: &mut Rarefaction) -> 
         return PairTerms::default();
     };
     let richness = richness(from, rarefaction).zip(richness(to, rarefaction));
-    let variance = weir_cockerham(&[from, to]);
+    let variance = weir_cockerham_pair(from, to);
     let hudson = hudson(from, to).unwrap_or_default();
     let nei = nei(&[from, to]);
     let change = temporal_terms(from, to);
@@ -149,8 +149,8 @@ pub fn pair_terms(from: &Counts, to: &Counts, rarefaction: &mut Rarefaction) -> 
         wc_between,
         wc_total,
         wc_loci: present(&variance),
-        hudson_numerator: hudson.0,
-        hudson_denominator: hudson.1,
+        hudson_numerator: hudson.numerator,
+        hudson_denominator: hudson.denominator,
         nei_loci: present(&nei),
         ..PairTerms::default()
     };
@@ -160,7 +160,7 @@ pub fn pair_terms(from: &Counts, to: &Counts, rarefaction: &mut Rarefaction) -> 
         terms.nei_total = n.total;
     }
     if let Some(c) = change {
-        let weight = c.independent_alleles;
+        let weight = f64::from(c.weight());
         terms.fc = weight * c.fc;
         terms.fk = weight * c.fk;
         terms.fs_numerator = c.fs_numerator;
@@ -173,9 +173,15 @@ pub fn pair_terms(from: &Counts, to: &Counts, rarefaction: &mut Rarefaction) -> 
     terms
 }
 
-/// The private richness of stratum `which` among the strata of one visit.
-pub fn private_terms(which: usize, visit: &[&Counts], rarefaction: &mut Rarefaction) -> PrivateTerms {
-    let value = private_richness(which, visit, rarefaction);
+/// The private richness of the stratum at `visit[which]` among the strata of one visit.
+pub fn private_terms(
+    which: usize,
+    visit: &[usize],
+    counts: &[Counts],
+    rarefaction: &mut Rarefaction,
+) -> PrivateTerms {
+    let members: Vec<&Counts> = visit.iter().map(|&s| &counts[s]).collect();
+    let value = private_richness(which, &members, rarefaction);
     PrivateTerms { private_richness: value.unwrap_or_default(), loci: present(&value) }
 }
 

@@ -51,6 +51,8 @@ pub struct Sums {
     pub private: Vec<Vec<TwoWay<PrivateTerms>>>,
     /// Genotypes at a sample of loci.
     pub panel: Panel,
+    /// Records added.
+    pub kept: u64,
     /// Records that vary among all individuals in use.
     pub polymorphic: u64,
     scratch: Scratch,
@@ -124,7 +126,7 @@ impl Sums {
             fixed: vec![0; 64],
             rows: Vec::new(),
         };
-        Sums { strata, pairs, private, panel: Panel::default(), polymorphic: 0, scratch, scheme }
+        Sums { strata, pairs, private, panel: Panel::default(), kept: 0, polymorphic: 0, scratch, scheme }
     }
 
     /// The scheme these sums follow.
@@ -135,6 +137,7 @@ impl Sums {
     /// Adds one locus.
     pub fn add(&mut self, locus: &Locus) -> LocusView<'_> {
         let scheme = Arc::clone(&self.scheme);
+        self.kept += 1;
         for (s, slots) in scheme.strata.iter().enumerate() {
             self.scratch.counts[s].recount(&locus.genotypes, slots.clone());
             let typed = self.scratch.counts[s].typed;
@@ -169,6 +172,7 @@ impl Sums {
             a.merge(b);
         }
         self.panel.merge(other.panel);
+        self.kept += other.kept;
         self.polymorphic += other.polymorphic;
     }
 

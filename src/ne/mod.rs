@@ -2,6 +2,7 @@
 
 pub mod demographic;
 pub mod diffusion;
+pub mod estimate;
 pub mod linkage;
 pub mod prior;
 pub mod temporal;
