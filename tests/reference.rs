@@ -33,7 +33,10 @@ fn number(value: &Value, field: &str) -> f64 {
 #[test]
 fn diversity_within_strata() {
     let (report, expected) = (report(), expected());
-    let (sites, variable) = (number(&expected, "sites"), number(&expected, "variable_sites"));
+    let (sites, variable) = (
+        number(&expected, "sites"),
+        number(&expected, "variable_sites"),
+    );
     assert_eq!(report["loci"]["read"].as_f64(), Some(sites));
     assert_eq!(report["loci"]["polymorphic"].as_f64(), Some(variable));
     for want in expected["strata"].as_array().expect("strata") {
@@ -41,19 +44,37 @@ fn diversity_within_strata() {
         let got = stratum(&report, name);
         let sums = [
             ("expected_heterozygosity", number(want, "diversity_sum")),
-            ("observed_heterozygosity", number(want, "heterozygosity_sum")),
+            (
+                "observed_heterozygosity",
+                number(want, "heterozygosity_sum"),
+            ),
             ("allelic_richness", number(want, "richness_sum")),
         ];
         for (field, sum) in sums {
-            close(&format!("{name} {field}"), estimate(got, field), sum / variable, EXACT);
+            close(
+                &format!("{name} {field}"),
+                estimate(got, field),
+                sum / variable,
+                EXACT,
+            );
             if field != "allelic_richness" {
                 let per_site = estimate(&got["per_site"], field);
-                close(&format!("{name} {field} per site"), per_site, sum / sites, EXACT);
+                close(
+                    &format!("{name} {field} per site"),
+                    per_site,
+                    sum / sites,
+                    EXACT,
+                );
             }
         }
         let coefficient = 1.0 - sums[1].1 / sums[0].1;
         let got_coefficient = estimate(got, "inbreeding_coefficient");
-        close(&format!("{name} inbreeding"), got_coefficient, coefficient, EXACT);
+        close(
+            &format!("{name} inbreeding"),
+            got_coefficient,
+            coefficient,
+            EXACT,
+        );
         assert_eq!(got["individuals"], want["individuals"], "{name}");
         assert_eq!(got["typed_loci"].as_f64(), Some(variable), "{name}");
         assert_eq!(got["polymorphic_loci"], want["polymorphic_sites"], "{name}");
@@ -68,7 +89,10 @@ fn hardy_weinberg_rejections() {
     let (report, expected) = (report(), expected());
     for want in expected["strata"].as_array().expect("strata") {
         let name = want["stratum"].as_str().expect("a name");
-        let (got, want) = (&stratum(&report, name)["hardy_weinberg"], &want["hardy_weinberg"]);
+        let (got, want) = (
+            &stratum(&report, name)["hardy_weinberg"],
+            &want["hardy_weinberg"],
+        );
         assert_eq!(got["tested"], want["tested"], "{name}");
         assert_eq!(got["rejected"], want["rejected_mid_p"], "{name}");
         assert_eq!(got["deficit"], want["rejected_mid_p"], "{name}");
