@@ -1,4 +1,4 @@
 //! Bytes to genotypes. The only place that knows the formats.
 
-pub mod sheet;
 pub mod programme;
+pub mod sheet;

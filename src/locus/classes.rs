@@ -26,11 +26,14 @@ impl GenotypeClasses {
             for &dosage in &genotypes.dosages()[slots] {
                 n[usize::from(dosage & 3)] += 1;
             }
-            self.classes.extend([([0, 0], n[0]), ([0, 1], n[1]), ([1, 1], n[2])]);
+            self.classes
+                .extend([([0, 0], n[0]), ([0, 1], n[1]), ([1, 1], n[2])]);
             return;
         }
         self.order.clear();
-        let present = slots.clone().filter_map(|slot| genotypes.pair(slot).map(|g| (g, slot as u32)));
+        let present = slots
+            .clone()
+            .filter_map(|slot| genotypes.pair(slot).map(|g| (g, slot as u32)));
         self.order.extend(present);
         self.order.sort_unstable();
         for &(genotype, _) in &self.order {
@@ -39,7 +42,8 @@ impl GenotypeClasses {
                 _ => self.classes.push((genotype, 1)),
             }
         }
-        self.of_individual.resize(slots.len(), self.classes.len() as u16);
+        self.of_individual
+            .resize(slots.len(), self.classes.len() as u16);
         let mut class = 0u16;
         for (i, &(genotype, slot)) in self.order.iter().enumerate() {
             if i > 0 && genotype != self.order[i - 1].0 {

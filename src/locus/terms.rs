@@ -1,11 +1,11 @@
 //! What one locus adds to the sums: one set of terms for a stratum, one for a pair of strata, one
 //! for the strata of a visit together. Every multilocus statistic is a function of these sums.
 
+use super::Counts;
 use super::change::temporal_terms;
 use super::diversity::{expected_heterozygosity, heterozygote_excess, observed_heterozygosity};
 use super::fstatistics::{hudson, nei, weir_cockerham_pair};
 use super::richness::{Rarefaction, private_richness, richness};
-use super::Counts;
 use crate::terms;
 
 terms! {
@@ -102,9 +102,10 @@ terms! {
 
 /// The terms of a stratum at a locus that varies among all individuals in use.
 pub fn stratum_terms(counts: &Counts, rarefaction: &mut Rarefaction) -> StratumTerms {
-    let (Some(observed), Some(expected)) =
-        (observed_heterozygosity(counts), expected_heterozygosity(counts))
-    else {
+    let (Some(observed), Some(expected)) = (
+        observed_heterozygosity(counts),
+        expected_heterozygosity(counts),
+    ) else {
         return StratumTerms::default();
     };
     let richness = richness(counts, rarefaction);
@@ -182,7 +183,10 @@ pub fn private_terms(
 ) -> PrivateTerms {
     let members: Vec<&Counts> = visit.iter().map(|&s| &counts[s]).collect();
     let value = private_richness(which, &members, rarefaction);
-    PrivateTerms { private_richness: value.unwrap_or_default(), loci: present(&value) }
+    PrivateTerms {
+        private_richness: value.unwrap_or_default(),
+        loci: present(&value),
+    }
 }
 
 fn present<T>(value: &Option<T>) -> f64 {

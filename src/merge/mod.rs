@@ -2,6 +2,7 @@
 
 mod fixed;
 pub mod gram;
+pub mod histogram;
 pub mod panel;
 mod scheme;
 mod sums;

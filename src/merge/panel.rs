@@ -49,7 +49,12 @@ impl Panel {
         self.offered += 1;
         let priority = priority(locus);
         let full = self.loci.len() >= PANEL_LOCI;
-        if full && self.loci.last().is_some_and(|last| priority > last.priority) {
+        if full
+            && self
+                .loci
+                .last()
+                .is_some_and(|last| priority > last.priority)
+        {
             return;
         }
         let genotypes: &Genotypes = &locus.genotypes;
@@ -60,7 +65,9 @@ impl Panel {
             contig_hash: locus.contig_hash,
             position: locus.position,
             allele_count: genotypes.allele_count(),
-            codes: (0..genotypes.len()).map(|s| genotypes.pair(s).unwrap_or(missing)).collect(),
+            codes: (0..genotypes.len())
+                .map(|s| genotypes.pair(s).unwrap_or(missing))
+                .collect(),
         });
         self.trim();
     }

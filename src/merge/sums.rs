@@ -115,7 +115,11 @@ impl Sums {
         let private = scheme
             .visits
             .iter()
-            .map(|v| v.iter().map(|_| TwoWay::new(side_by_side(v), most)).collect())
+            .map(|v| {
+                v.iter()
+                    .map(|_| TwoWay::new(side_by_side(v), most))
+                    .collect()
+            })
             .collect();
         let scratch = Scratch {
             counts: vec![Counts::default(); strata.len()],
@@ -126,7 +130,16 @@ impl Sums {
             fixed: vec![0; 64],
             rows: Vec::new(),
         };
-        Sums { strata, pairs, private, panel: Panel::default(), kept: 0, polymorphic: 0, scratch, scheme }
+        Sums {
+            strata,
+            pairs,
+            private,
+            panel: Panel::default(),
+            kept: 0,
+            polymorphic: 0,
+            scratch,
+            scheme,
+        }
     }
 
     /// The scheme these sums follow.
@@ -152,7 +165,11 @@ impl Sums {
         } else {
             self.add_site(locus);
         }
-        LocusView { counts: &self.scratch.counts, usable: &self.scratch.usable, polymorphic }
+        LocusView {
+            counts: &self.scratch.counts,
+            usable: &self.scratch.usable,
+            polymorphic,
+        }
     }
 
     /// Adds the sums of another worker or shard of the same scheme.
@@ -168,7 +185,12 @@ impl Sums {
             a.not_seen_again += b.not_seen_again;
             a.loci_fixed += b.loci_fixed;
         }
-        for (a, b) in self.private.iter_mut().flatten().zip(other.private.into_iter().flatten()) {
+        for (a, b) in self
+            .private
+            .iter_mut()
+            .flatten()
+            .zip(other.private.into_iter().flatten())
+        {
             a.merge(b);
         }
         self.panel.merge(other.panel);
@@ -185,25 +207,49 @@ impl Sums {
 
     /// A record without variation counts as a site and nothing else.
     fn add_site(&mut self, locus: &Locus) {
-        let site = StratumTerms { sites: 1.0, ..StratumTerms::default() };
+        let site = StratumTerms {
+            sites: 1.0,
+            ..StratumTerms::default()
+        };
         for (s, sums) in self.strata.iter_mut().enumerate() {
             if self.scratch.usable[s] {
                 let fixed = &mut self.scratch.fixed[..StratumTerms::LEN];
-                sums.diversity.add(locus.contig_hash, locus.position, &site, fixed);
+                sums.diversity
+                    .add(locus.contig_hash, locus.position, &site, fixed);
             }
         }
     }
 
     fn add_polymorphic(&mut self, locus: &Locus, scheme: &Scheme) {
-        let Scratch { counts, classes, usable, rarefaction, hardy_weinberg, fixed, rows } =
-            &mut self.scratch;
+        let Scratch {
+            counts,
+            classes,
+            usable,
+            rarefaction,
+            hardy_weinberg,
+            fixed,
+            rows,
+        } = &mut self.scratch;
         for (s, slots) in scheme.strata.iter().enumerate() {
             classes[s].refill(&locus.genotypes, slots.clone());
         }
         let seed = locus.contig_hash ^ locus.position;
-        let mut at = Place { locus, scheme, classes, fixed, rows };
-        for (s, sums) in self.strata.iter_mut().enumerate().filter(|(s, _)| usable[*s]) {
-            at.add(&mut sums.diversity, counts, &[s], |c| stratum_terms(&c[s], rarefaction));
+        let mut at = Place {
+            locus,
+            scheme,
+            classes,
+            fixed,
+            rows,
+        };
+        for (s, sums) in self
+            .strata
+            .iter_mut()
+            .enumerate()
+            .filter(|(s, _)| usable[*s])
+        {
+            at.add(&mut sums.diversity, counts, &[s], |c| {
+                stratum_terms(&c[s], rarefaction)
+            });
             if counts[s].alleles_seen() > 1 {
                 let HardyWeinbergOutcome { mid_p, excess } =
                     hardy_weinberg.test(&counts[s], &at.classes[s].classes, seed);
@@ -224,7 +270,9 @@ impl Sums {
         for (members, visit) in self.private.iter_mut().zip(&scheme.visits) {
             if visit.iter().all(|&s| usable[s]) {
                 for (which, sums) in members.iter_mut().enumerate() {
-                    at.add(sums, counts, visit, |c| private_terms(which, visit, c, rarefaction));
+                    at.add(sums, counts, visit, |c| {
+                        private_terms(which, visit, c, rarefaction)
+                    });
                 }
             }
         }
@@ -251,7 +299,12 @@ impl Place<'_> {
         mut terms: impl FnMut(&[Counts]) -> T,
     ) {
         let fixed = &mut self.fixed[..T::LEN];
-        sums.add(self.locus.contig_hash, self.locus.position, &terms(counts), fixed);
+        sums.add(
+            self.locus.contig_hash,
+            self.locus.position,
+            &terms(counts),
+            fixed,
+        );
         let mut first = 0;
         for &s in members {
             let classes = &self.classes[s].classes;

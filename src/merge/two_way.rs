@@ -52,7 +52,10 @@ impl<T: Terms> TwoWay<T> {
     pub fn add(&mut self, contig_hash: u64, position: u64, terms: &T, fixed: &mut [i64]) {
         write_fixed(terms, fixed);
         let key = self.windows.key(contig_hash, position);
-        let same_window = self.batch.place.is_some_and(|(c, p)| self.windows.key(c, p) == key);
+        let same_window = self
+            .batch
+            .place
+            .is_some_and(|(c, p)| self.windows.key(c, p) == key);
         if !same_window {
             self.flush_window();
             self.batch.place = Some((contig_hash, position));
@@ -80,7 +83,12 @@ impl<T: Terms> TwoWay<T> {
     ///
     /// `rows` holds one row of [`Terms::LEN`] numbers a class. The sums stay inside i64 by the bound
     /// of [`BATCH_LOCI`], so plain wrapping addition is exact.
-    pub fn add_absences<C: Copy + Into<usize>>(&mut self, first: usize, classes: &[C], rows: &[i64]) {
+    pub fn add_absences<C: Copy + Into<usize>>(
+        &mut self,
+        first: usize,
+        classes: &[C],
+        rows: &[i64],
+    ) {
         let width = T::LEN;
         let sums = &mut self.batch.absences[first * width..(first + classes.len()) * width];
         for (sum, &class) in sums.chunks_exact_mut(width).zip(classes) {
@@ -135,15 +143,30 @@ impl<T: Terms> TwoWay<T> {
 
     /// For each jackknife block, the sums of its own loci and the sums without them.
     pub fn blocks(&self) -> Vec<(T, T)> {
-        let without =
-            |block: &[i128]| read_fixed(self.total.iter().zip(block).map(|(total, part)| total - part));
-        self.windows.blocks().iter().map(|b| (read_fixed(b.iter().copied()), without(b))).collect()
+        let without = |block: &[i128]| {
+            read_fixed(
+                self.total
+                    .iter()
+                    .zip(block)
+                    .map(|(total, part)| total - part),
+            )
+        };
+        self.windows
+            .blocks()
+            .iter()
+            .map(|b| (read_fixed(b.iter().copied()), without(b)))
+            .collect()
     }
 
     /// The sums without one individual: exactly what a recount without it would give.
     pub fn without_individual(&self, individual: usize) -> T {
         let change = &self.absences[individual * T::LEN..(individual + 1) * T::LEN];
-        read_fixed(self.total.iter().zip(change).map(|(total, change)| total + change))
+        read_fixed(
+            self.total
+                .iter()
+                .zip(change)
+                .map(|(total, change)| total + change),
+        )
     }
 }
 

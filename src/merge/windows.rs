@@ -29,7 +29,12 @@ pub struct Windows {
 impl Windows {
     /// No window yet, each to hold `terms` sums; at most `most` windows (at least 32) are kept.
     pub fn new(terms: usize, most: usize) -> Self {
-        Windows { terms, most: most.max(32), level: 0, sums: BTreeMap::new() }
+        Windows {
+            terms,
+            most: most.max(32),
+            level: 0,
+            sums: BTreeMap::new(),
+        }
     }
 
     /// The window of a position at the present level.
@@ -82,8 +87,11 @@ impl Windows {
     }
 
     fn count_at(&self, level: u32) -> usize {
-        let keys: std::collections::BTreeSet<_> =
-            self.sums.keys().map(|&key| lift(key, self.level, level)).collect();
+        let keys: std::collections::BTreeSet<_> = self
+            .sums
+            .keys()
+            .map(|&key| lift(key, self.level, level))
+            .collect();
         keys.len()
     }
 
@@ -128,7 +136,11 @@ fn lift((contig, window): (u64, u64), from: u32, to: u32) -> (u64, u64) {
         return (contig, window >> (to - from));
     }
     let folds = (to - CONTIG_LEVEL).min(FOLD_BITS);
-    let contig = if folds == 0 { contig } else { contig & ((1 << (FOLD_BITS - folds)) - 1) };
+    let contig = if folds == 0 {
+        contig
+    } else {
+        contig & ((1 << (FOLD_BITS - folds)) - 1)
+    };
     (contig, 0)
 }
 
@@ -140,7 +152,11 @@ mod tests {
     fn filled(loci: &[(u64, u64)], most: usize) -> Windows {
         let mut windows = Windows::new(1, most);
         for &(contig, position) in loci {
-            windows.add(crate::model::stable_hash(&contig.to_le_bytes()), position, &[1]);
+            windows.add(
+                crate::model::stable_hash(&contig.to_le_bytes()),
+                position,
+                &[1],
+            );
         }
         windows
     }
@@ -166,14 +182,22 @@ mod tests {
 
     #[test]
     fn many_contigs_become_blocks_themselves() {
-        let loci: Vec<_> = (0..30).flat_map(|c| (0..50).map(move |p| (c, p * 1_000_000))).collect();
+        let loci: Vec<_> = (0..30)
+            .flat_map(|c| (0..50).map(move |p| (c, p * 1_000_000)))
+            .collect();
         assert_eq!(filled(&loci, 4096).blocks().len(), 30);
     }
 
     #[test]
     fn few_contigs_are_cut_into_equal_windows() {
-        let loci: Vec<_> = (0..2).flat_map(|c| (0..100).map(move |p| (c, p * 1_000_000))).collect();
+        let loci: Vec<_> = (0..2)
+            .flat_map(|c| (0..100).map(move |p| (c, p * 1_000_000)))
+            .collect();
         let blocks = filled(&loci, 4096).blocks();
-        assert!((ENOUGH_BLOCKS..2 * ENOUGH_BLOCKS + 2).contains(&blocks.len()), "{}", blocks.len());
+        assert!(
+            (ENOUGH_BLOCKS..2 * ENOUGH_BLOCKS + 2).contains(&blocks.len()),
+            "{}",
+            blocks.len()
+        );
     }
 }

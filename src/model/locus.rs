@@ -48,7 +48,11 @@ impl Locus {
     /// The text of allele `i` (0 is the reference), or `None` beyond the list.
     pub fn allele(&self, i: usize) -> Option<&[u8]> {
         let end = *self.allele_ends.get(i)? as usize;
-        let start = if i == 0 { 0 } else { self.allele_ends[i - 1] as usize };
+        let start = if i == 0 {
+            0
+        } else {
+            self.allele_ends[i - 1] as usize
+        };
         Some(&self.allele_text[start..end])
     }
 }

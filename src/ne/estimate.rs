@@ -140,7 +140,10 @@ pub fn two_way_estimate<T: Terms>(
         return Estimate::absent(when_no_loci);
     }
     let Some(value) = statistic(&total) else {
-        return Estimate { loci: count as u64, ..Estimate::absent(Absence::Undefined) };
+        return Estimate {
+            loci: count as u64,
+            ..Estimate::absent(Absence::Undefined)
+        };
     };
     let (variance_loci, blocks) = loci_variance(sums, &statistic, &loci, value);
     let groups = individual_variances(sums, &statistic, value);
@@ -178,7 +181,10 @@ fn loci_variance<T: Terms>(
     let Some(without) = without.into_iter().collect::<Option<Vec<f64>>>() else {
         return (None, blocks);
     };
-    (block_jackknife(value, &without, &weights).map(|j| j.variance), blocks)
+    (
+        block_jackknife(value, &without, &weights).map(|j| j.variance),
+        blocks,
+    )
 }
 
 /// Variance and degrees of freedom of each independent sample of individuals; `None` when some
@@ -194,7 +200,10 @@ fn individual_variances<T: Terms>(
             .clone()
             .map(|i| statistic(&sums.without_individual(i)))
             .collect::<Option<_>>()?;
-        groups.push((individual_variance(value, &without)?, group.len() as f64 - 1.0));
+        groups.push((
+            individual_variance(value, &without)?,
+            group.len() as f64 - 1.0,
+        ));
     }
     Some(groups)
 }

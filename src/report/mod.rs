@@ -2,6 +2,10 @@
 
 pub mod assemble;
 mod json;
+pub mod table;
+pub mod warnings;
 pub mod wire;
+mod words;
 
-pub use json::{WholeFile, write_json, write_whole};
+pub use json::{Output, WholeFile};
+pub use words::{CAUTIONS, methods};

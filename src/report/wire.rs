@@ -394,7 +394,9 @@ pub struct EffectiveSize {
 }
 
 /// How the sample was taken (Nei & Tajima 1981; Waples 1989).
-#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize, JsonSchema)]
+#[derive(
+    Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize, JsonSchema,
+)]
 pub enum Plan {
     /// After reproduction or with replacement.
     I,

@@ -54,7 +54,9 @@ pub struct Places {
 impl Places {
     /// Takes note of the next batch in file order.
     pub fn follow(&mut self, batch: BatchPlaces) {
-        let (Some(first), Some(last)) = (batch.first, batch.last) else { return };
+        let (Some(first), Some(last)) = (batch.first, batch.last) else {
+            return;
+        };
         self.backwards += batch.backwards;
         self.repeated += batch.repeated;
         let goes_on = self.last.is_some_and(|before| before.0 == first.0);
@@ -78,14 +80,27 @@ mod tests {
     fn batch(places: &[(u64, u64)]) -> BatchPlaces {
         let mut batch = BatchPlaces::default();
         for &(contig_hash, position) in places {
-            batch.visit(&Locus { contig_hash, position, ..Locus::default() });
+            batch.visit(&Locus {
+                contig_hash,
+                position,
+                ..Locus::default()
+            });
         }
         batch
     }
 
     #[test]
     fn splitting_into_batches_changes_nothing() {
-        let records = [(1, 5), (1, 5), (1, 9), (1, 7), (2, 1), (1, 3), (1, 2), (3, 1)];
+        let records = [
+            (1, 5),
+            (1, 5),
+            (1, 9),
+            (1, 7),
+            (2, 1),
+            (1, 3),
+            (1, 2),
+            (3, 1),
+        ];
         for cut in 0..=records.len() {
             let mut places = Places::default();
             places.follow(batch(&records[..cut]));

@@ -67,8 +67,10 @@ pub fn collect(
     progress: &(dyn Fn(u64) + Sync),
 ) -> Result<Collected> {
     let workers = threads.max(1);
-    let decoders: Vec<Decoder> =
-        sources.iter().map(|s| Decoder::new(&s.reader, s.selection.clone())).collect();
+    let decoders: Vec<Decoder> = sources
+        .iter()
+        .map(|s| Decoder::new(&s.reader, s.selection.clone()))
+        .collect();
     let row = table.as_ref().map(|t| t.row);
     let stop = AtomicBool::new(false);
     let (work_out, work_in) = bounded::<Work>(workers * BATCHES_A_WORKER);
@@ -102,7 +104,11 @@ pub fn collect(
         }
         let mut parts = Vec::new();
         for handle in handles {
-            parts.push(handle.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)));
+            parts.push(
+                handle
+                    .join()
+                    .unwrap_or_else(|panic| std::panic::resume_unwind(panic)),
+            );
         }
         let places = outcome?;
         Ok(add_up(scheme, parts, places))
@@ -140,14 +146,24 @@ fn read_all(
             match reader.next_batch(&mut batch) {
                 Ok(true) => {
                     progress(before + reader.bytes_read());
-                    if work.send(Work { index, source, batch }).is_err() {
+                    if work
+                        .send(Work {
+                            index,
+                            source,
+                            batch,
+                        })
+                        .is_err()
+                    {
                         return;
                     }
                     index += 1;
                 }
                 Ok(false) => break,
                 Err(error) => {
-                    let _ = done.send(Done { index, outcome: Err(error) });
+                    let _ = done.send(Done {
+                        index,
+                        outcome: Err(error),
+                    });
                     return;
                 }
             }
@@ -197,11 +213,19 @@ impl<'a> Worker<'a> {
             verdicts: BTreeMap::new(),
             tally: CallTally::default(),
         };
-        Worker { decoders, row, locus: Locus::default(), part }
+        Worker {
+            decoders,
+            row,
+            locus: Locus::default(),
+            part,
+        }
     }
 
     fn process(&mut self, work: &Work) -> Done {
-        Done { index: work.index, outcome: self.records(work) }
+        Done {
+            index: work.index,
+            outcome: self.records(work),
+        }
     }
 
     fn records(&mut self, work: &Work) -> Result<(Vec<u8>, BatchPlaces)> {

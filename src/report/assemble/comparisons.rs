@@ -11,13 +11,17 @@ use crate::report::wire;
 /// One entry a comparison, in the order of the comparisons.
 pub fn comparisons(findings: &Findings) -> Vec<wire::Comparison> {
     let all = findings.comparisons.iter().zip(&findings.sums.pairs);
-    all.map(|(comparison, sums)| one(findings, comparison, sums)).collect()
+    all.map(|(comparison, sums)| one(findings, comparison, sums))
+        .collect()
 }
 
 fn one(findings: &Findings, comparison: &Comparison, sums: &PairSums) -> wire::Comparison {
     let name = |s: usize| findings.strata.strata[s].name.clone();
     let in_time = comparison.kind != ComparisonKind::BetweenPopulations;
-    let pair = Pair { findings, sums: &sums.change };
+    let pair = Pair {
+        findings,
+        sums: &sums.change,
+    };
     wire::Comparison {
         from: name(comparison.from),
         to: name(comparison.to),
@@ -58,9 +62,15 @@ fn one(findings: &Findings, comparison: &Comparison, sums: &PairSums) -> wire::C
 fn differences(pair: &Pair) -> wire::Change {
     let over_loci = |range, f: fn(&PairTerms) -> Option<f64>| pair.estimate(range, f, |t| t.loci);
     wire::Change {
-        observed_heterozygosity: over_loci([-1.0, 1.0], |t| ratio(t.observed_to - t.observed_from, t.loci)),
-        expected_heterozygosity: over_loci([-1.0, 1.0], |t| ratio(t.expected_to - t.expected_from, t.loci)),
-        expected_heterozygosity_kept: over_loci(POSITIVE, |t| ratio(t.expected_to, t.expected_from)),
+        observed_heterozygosity: over_loci([-1.0, 1.0], |t| {
+            ratio(t.observed_to - t.observed_from, t.loci)
+        }),
+        expected_heterozygosity: over_loci([-1.0, 1.0], |t| {
+            ratio(t.expected_to - t.expected_from, t.loci)
+        }),
+        expected_heterozygosity_kept: over_loci(POSITIVE, |t| {
+            ratio(t.expected_to, t.expected_from)
+        }),
         allelic_richness: wire::Estimate {
             gene_copies: Some(pair.findings.sums.scheme().gene_copies),
             ..pair.estimate(
@@ -84,7 +94,10 @@ impl Pair<'_> {
         statistic: impl Fn(&PairTerms) -> Option<f64>,
         loci: impl Fn(&PairTerms) -> f64,
     ) -> wire::Estimate {
-        self.findings.wire(&two_way_estimate(self.sums, statistic, loci, Absence::NoLoci), range)
+        self.findings.wire(
+            &two_way_estimate(self.sums, statistic, loci, Absence::NoLoci),
+            range,
+        )
     }
 
     /// A standardised change of frequency: over loci with at least two alleles between the two.
@@ -101,4 +114,3 @@ fn nei(t: &PairTerms) -> Option<NeiDiversity> {
         total: ratio(t.nei_total, t.nei_loci)?,
     })
 }
-

@@ -1,9 +1,11 @@
 //! Sums to report: asks the estimators, words the answers.
 
 mod comparisons;
+mod effective_size;
 mod strata;
 
 pub use comparisons::comparisons;
+pub use effective_size::effective_size;
 pub use strata::strata;
 
 use super::wire;
@@ -35,7 +37,9 @@ impl Findings<'_> {
         wire::Estimate {
             estimate: estimate.value.ok(),
             standard_error: estimate.standard_error(),
-            interval: estimate.interval(self.level).map(|[low, high]| [held(low), held(high)]),
+            interval: estimate
+                .interval(self.level)
+                .map(|[low, high]| [held(low), held(high)]),
             level: self.level,
             loci: estimate.loci,
             gene_copies: None,
@@ -44,7 +48,10 @@ impl Findings<'_> {
                 VarianceParts::Loci => wire::IntervalCounts::Loci,
                 VarianceParts::Individuals => wire::IntervalCounts::Individuals,
             }),
-            absent_because: estimate.value.err().map(|why: Absence| why.text().to_owned()),
+            absent_because: estimate
+                .value
+                .err()
+                .map(|why: Absence| why.text().to_owned()),
         }
     }
 }

@@ -10,8 +10,14 @@ use crate::report::wire;
 
 /// One entry a stratum, in the order of the strata.
 pub fn strata(findings: &Findings) -> Vec<wire::Stratum> {
-    let all = findings.strata.strata.iter().zip(&findings.sums.strata).enumerate();
-    all.map(|(s, (stratum, sums))| one(findings, s, stratum, sums)).collect()
+    let all = findings
+        .strata
+        .strata
+        .iter()
+        .zip(&findings.sums.strata)
+        .enumerate();
+    all.map(|(s, (stratum, sums))| one(findings, s, stratum, sums))
+        .collect()
 }
 
 fn one(findings: &Findings, s: usize, stratum: &Stratum, sums: &StratumSums) -> wire::Stratum {
@@ -37,10 +43,14 @@ fn one(findings: &Findings, s: usize, stratum: &Stratum, sums: &StratumSums) -> 
         polymorphic_loci: total.polymorphic as u64,
         polymorphic_share: findings.wire(&over_loci(|t| ratio(t.polymorphic, t.loci)), SHARE),
         call_rate: call_rate(findings, sums, individuals),
-        observed_heterozygosity: findings
-            .wire(&over_loci(|t| ratio(t.observed_heterozygosity, t.loci)), SHARE),
-        expected_heterozygosity: findings
-            .wire(&over_loci(|t| ratio(t.expected_heterozygosity, t.loci)), SHARE),
+        observed_heterozygosity: findings.wire(
+            &over_loci(|t| ratio(t.observed_heterozygosity, t.loci)),
+            SHARE,
+        ),
+        expected_heterozygosity: findings.wire(
+            &over_loci(|t| ratio(t.expected_heterozygosity, t.loci)),
+            SHARE,
+        ),
         inbreeding_coefficient: findings.wire(
             &over_loci(|t| inbreeding(t.observed_heterozygosity, t.expected_heterozygosity)),
             [-1.0, 1.0],
@@ -64,7 +74,10 @@ fn call_rate(findings: &Findings, sums: &StratumSums, individuals: usize) -> f64
 
 fn per_site(findings: &Findings, diversity: &TwoWay<StratumTerms>) -> wire::PerSite {
     let over_sites = |f: fn(&StratumTerms) -> Option<f64>| {
-        findings.wire(&two_way_estimate(diversity, f, |t| t.sites, Absence::NoLoci), SHARE)
+        findings.wire(
+            &two_way_estimate(diversity, f, |t| t.sites, Absence::NoLoci),
+            SHARE,
+        )
     };
     wire::PerSite {
         sites: diversity.total().sites as u64,
@@ -97,7 +110,9 @@ fn private_richness(findings: &Findings, s: usize) -> (Estimate, Vec<String>) {
                 Absence::TooFewGeneCopies,
             );
             let others = visit.iter().filter(|&&other| other != s);
-            let names = others.map(|&other| findings.strata.strata[other].name.clone()).collect();
+            let names = others
+                .map(|&other| findings.strata.strata[other].name.clone())
+                .collect();
             return (estimate, names);
         }
     }
@@ -106,6 +121,8 @@ fn private_richness(findings: &Findings, s: usize) -> (Estimate, Vec<String>) {
 
 fn with_copies(findings: &Findings, estimate: &Estimate) -> wire::Estimate {
     let gene_copies = Some(findings.sums.scheme().gene_copies);
-    wire::Estimate { gene_copies, ..findings.wire(estimate, POSITIVE) }
+    wire::Estimate {
+        gene_copies,
+        ..findings.wire(estimate, POSITIVE)
+    }
 }
-
