@@ -10,7 +10,7 @@ fn main() -> ExitCode {
         Ok(work) => work,
         Err(told) => told.exit(),
     };
-    match run::run(work) {
+    match run::run(work, &arguments) {
         Ok(()) => ExitCode::SUCCESS,
         Err(error) if error.is_broken_pipe() => ExitCode::SUCCESS,
         Err(error) => {

@@ -5,12 +5,12 @@ use crate::locus::PairTerms;
 use crate::merge::PairSums;
 use crate::model::{Comparison, ComparisonKind, SamplingPlan};
 use crate::ne::estimate::{Absence, Estimate, two_way_estimate};
-use crate::ne::temporal::{NoRate, TwoSamples};
+use crate::ne::temporal::{TemporalSample, drift_rate_fc, drift_rate_fk, drift_rate_fs};
 use crate::report::assemble::{Findings, ratio};
 use crate::report::wire;
 
 /// 1/(2Ne) from F and the sample.
-type Inversion = fn(&TwoSamples, f64) -> Result<f64, NoRate>;
+type Inversion = fn(f64, &TemporalSample) -> Option<f64>;
 
 /// The estimators: name, F from the sums, 1/(2Ne) from F. The first is the one to quote: in 72
 /// simulated designs its ratio of truth to estimate was 0.98 to 1.04, that of Fc 0.63 to 0.89.
@@ -18,17 +18,17 @@ const ESTIMATORS: [(&str, fn(&PairTerms) -> Option<f64>, Inversion); 3] = [
     (
         "temporal_fs",
         |t| ratio(t.fs_numerator, t.fs_denominator),
-        TwoSamples::drift_rate_fs,
+        drift_rate_fs,
     ),
     (
         "temporal_fc",
         |t| ratio(t.fc, t.independent_alleles),
-        TwoSamples::drift_rate,
+        drift_rate_fc,
     ),
     (
         "temporal_fk",
         |t| ratio(t.fk, t.independent_alleles),
-        TwoSamples::drift_rate,
+        drift_rate_fk,
     ),
 ];
 
@@ -141,14 +141,14 @@ impl Estimator {
         let rate = |t: &PairTerms| {
             let (first, later) = harmonic_sizes(t)?;
             let plan = self.plan;
-            let samples = TwoSamples {
+            let sample = TemporalSample {
                 generations,
                 first,
                 later,
                 plan,
                 census,
             };
-            (self.invert)(&samples, (self.f)(t)?).ok()
+            (self.invert)((self.f)(t)?, &sample)
         };
         two_way_estimate(&sums.change, rate, |t| t.temporal_loci, Absence::NoLoci)
     }
