@@ -18,8 +18,6 @@
 //! gzip cut exactly between two members, and a flipped bit that makes one valid field of an
 //! uncompressed file into another.
 
-pub mod programme;
-pub mod sheet;
 mod alleles;
 mod batch;
 mod binary;
@@ -33,9 +31,11 @@ mod header;
 mod inflate;
 pub mod limits;
 mod order;
+pub mod programme;
 mod reader;
 mod remarks;
 mod scan;
+pub mod sheet;
 mod source;
 mod text;
 
