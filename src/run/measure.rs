@@ -4,7 +4,6 @@ use std::collections::BTreeMap;
 use std::path::Path;
 use std::sync::Arc;
 
-use super::order::Places;
 use super::pipeline::{Collected, LocusTable, Source, collect};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
@@ -226,13 +225,15 @@ impl Inputs {
             .chain(&self.matched.notes)
             .chain(&self.compared.notes);
         let mut warnings: Vec<_> = notes.map(warning).collect();
-        for source in &self.sources {
+        for (source, remarks) in self.sources.iter().zip(&all.remarks) {
             let file = source.reader.path().display().to_string();
-            for text in source.reader.warnings() {
-                warnings.push(warning(&Note::new("calls", file.clone(), text.clone())));
-            }
+            let told = source
+                .reader
+                .warnings()
+                .into_iter()
+                .chain(remarks.messages());
+            warnings.extend(told.map(|text| warning(&Note::new("calls", file.clone(), text))));
         }
-        warnings.extend(of_order(&all.places).iter().map(warning));
         warnings
     }
 }
@@ -307,30 +308,6 @@ fn loci(all: &Collected) -> Loci {
         genotypes: genotypes.map(|(name, n)| (name.to_owned(), n)).into(),
         panel: all.sums.panel.loci().len() as u64,
     }
-}
-
-/// What the order of the records showed, as notes.
-fn of_order(places: &Places) -> Vec<Note> {
-    let told = [
-        (
-            places.backwards,
-            "unsorted",
-            "record(s) come before the one ahead of them; windows of the genome do not mind, but check how the file was made",
-        ),
-        (
-            places.repeated,
-            "repeated_position",
-            "record(s) stand at the place of the one ahead of them; each counts as a locus: join them, or remove duplicates",
-        ),
-        (
-            places.contigs_again,
-            "contig_again",
-            "time(s) a contig comes back after another; if a part was given twice, every locus in it counts twice",
-        ),
-    ];
-    let told = told.into_iter().filter(|(n, ..)| *n > 0);
-    told.map(|(n, code, text)| Note::new(code, "calls", format!("{n} {text}")))
-        .collect()
 }
 
 fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String) -> InputFile {
