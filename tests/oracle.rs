@@ -267,6 +267,11 @@ proptest! {
         close(fast.observed, observed);
         close(fast.within, within);
         close(fast.total, total);
+        let mut padded = counted.clone();
+        padded.push(Counts::empty(ALLELES));
+        let padded = nei(&padded).unwrap();
+        close(padded.within, within);
+        close(padded.total, total);
     }
 
     /// Hardy-Weinberg tests of any number of alleles, by pairing labelled gene copies in every way.
@@ -382,6 +387,12 @@ proptest! {
             samples.iter().map(|s| Counts::of(alleles, s.iter().copied().map(Some))).collect()
         };
         let (two, four) = (weir_cockerham(&listed(2)), weir_cockerham(&listed(4)));
+        let change = |l: &[Counts]| temporal_terms(&l[0], &l[1]).map(|t| [t.fc, t.fk, t.fs_numerator, t.fs_denominator]);
+        let (short, long) = (change(&listed(2)), change(&listed(4)));
+        prop_assert_eq!(short.is_some(), long.is_some());
+        for (one, other) in short.into_iter().flatten().zip(long.into_iter().flatten()) {
+            close(one, other);
+        }
         prop_assert_eq!(two.is_some(), four.is_some());
         if let (Some(two), Some(four)) = (two, four) {
             close(two.a, four.a);
