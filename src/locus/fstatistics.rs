@@ -42,11 +42,16 @@ impl AddAssign for Components {
     }
 }
 
-/// Sample sizes of one locus as Weir & Cockerham combine them.
+/// Sample sizes of one locus as Weir & Cockerham combine them, divided once for all alleles.
 struct Sizes {
-    samples: f64,
+    /// Mean number of individuals.
     mean: f64,
-    corrected: f64,
+    /// 1/(mean - 1).
+    inverse: f64,
+    /// Mean over corrected mean, nbar/n_c.
+    lift: f64,
+    /// (r - 1)/r of r samples.
+    shrink: f64,
 }
 
 impl Sizes {
@@ -56,28 +61,26 @@ impl Sizes {
         if samples < 2 || sum <= u64::from(samples) {
             return None;
         }
-        let (samples, sum) = (f64::from(samples), sum as f64);
-        let corrected = (sum - squares as f64 / sum) / (samples - 1.0);
+        let (samples, sum, squares) = (f64::from(samples), sum as f64, squares as f64);
+        let mean = sum / samples;
+        let lift = mean * sum * (samples - 1.0) / (sum * sum - squares);
+        let inverse = 1.0 / (mean - 1.0);
         Some(Sizes {
-            samples,
-            mean: sum / samples,
-            corrected,
+            mean,
+            inverse,
+            lift,
+            shrink: (samples - 1.0) / samples,
         })
     }
 
     /// Components of one allele: `p` its mean frequency, `variance` of frequencies between samples
     /// (s^2), `h` the share of individuals heterozygous for it.
     fn components(&self, p: f64, variance: f64, h: f64) -> Components {
-        let Sizes {
-            samples,
-            mean,
-            corrected,
-        } = *self;
-        let within = p * (1.0 - p) - (samples - 1.0) / samples * variance;
+        let within = p * (1.0 - p) - self.shrink * variance;
         Components {
-            a: mean / corrected * (variance - (within - h / 4.0) / (mean - 1.0)),
-            b: mean / (mean - 1.0) * (within - (2.0 * mean - 1.0) / (4.0 * mean) * h),
-            c: h / 2.0,
+            a: self.lift * (variance - self.inverse * (within - 0.25 * h)),
+            b: self.inverse * (self.mean * within - 0.25 * (2.0 * self.mean - 1.0) * h),
+            c: 0.5 * h,
         }
     }
 }
@@ -117,7 +120,7 @@ pub fn weir_cockerham<C: Borrow<Counts>>(samples: &[C]) -> Option<Components> {
             let distance = f64::from(sample.copies[allele]) / (2.0 * n) - mean;
             variance += n * distance * distance;
         }
-        variance /= (sizes.samples - 1.0) * sizes.mean;
+        variance /= f64::from(number - 1) * sizes.mean;
         components += sizes.components(mean, variance, heterozygous as f64 / total);
     }
     Some(scaled(components, times))
@@ -131,9 +134,10 @@ pub fn weir_cockerham_pair(first: &Counts, second: &Counts) -> Option<Components
     }
     let sizes = Sizes::of(2, n1 + n2, n1 * n1 + n2 * n2)?;
     let (n1, n2) = (n1 as f64, n2 as f64);
-    let (half1, half2, per_individual) = (0.5 / n1, 0.5 / n2, 1.0 / (n1 + n2));
-    // sum n_i (p_i - p)^2 of two samples is n1 n2/(n1 + n2) times their squared distance.
-    let spread = n1 * n2 * per_individual / sizes.mean;
+    let (all1, all2, all) = (2.0 * n1, 2.0 * n2, 2.0 * (n1 + n2));
+    // sum n_i (p_i - p)^2 of two samples is n1 n2/(n1 + n2) times their squared distance, here
+    // over the mean size (n1 + n2)/2.
+    let spread = 2.0 * all1 * all2 / (all * all);
     let (skipped, times) = alleles_to_visit(first);
     let mut components = Components::default();
     for allele in skipped..first.copies.len() {
@@ -143,12 +147,10 @@ pub fn weir_cockerham_pair(first: &Counts, second: &Counts) -> Option<Components
         );
         let heterozygous =
             f64::from(first.heterozygous[allele]) + f64::from(second.heterozygous[allele]);
-        let distance = c1 * half1 - c2 * half2;
-        components += sizes.components(
-            0.5 * (c1 + c2) * per_individual,
-            spread * distance * distance,
-            heterozygous * per_individual,
-        );
+        // Divided, not multiplied by a reciprocal: a fixed allele has exactly 1.
+        let distance = c1 / all1 - c2 / all2;
+        let variance = spread * distance * distance;
+        components += sizes.components((c1 + c2) / all, variance, 2.0 * heterozygous / all);
     }
     Some(scaled(components, times))
 }
@@ -236,6 +238,21 @@ pub struct NeiDiversity {
 }
 
 impl NeiDiversity {
+    /// From the number of samples, their harmonic mean size (above 1), their mean observed
+    /// heterozygosity, the mean over samples of sum p^2, and the sum of squared mean frequencies.
+    fn of(samples: u32, size: f64, observed: f64, squares: f64, squared_means: f64) -> Self {
+        let s = f64::from(samples);
+        let sampled = 0.5 * observed / size;
+        let within = size / (size - 1.0) * (1.0 - squares - sampled);
+        let total = 1.0 - squared_means + within / (size * s) - sampled / s;
+        NeiDiversity {
+            samples,
+            observed,
+            within,
+            total,
+        }
+    }
+
     /// GST = (Ht - Hs)/Ht (Nei 1973); `None` without diversity.
     pub fn gst(&self) -> Option<f64> {
         ratio(self.total - self.within, self.total)
@@ -288,6 +305,9 @@ impl NeiDiversity {
 /// All samples list the same alleles. Take means of all three over loci with the same number of
 /// samples, then the ratios.
 pub fn nei<C: Borrow<Counts>>(samples: &[C]) -> Option<NeiDiversity> {
+    if let [first, second] = samples {
+        return nei_pair(first.borrow(), second.borrow());
+    }
     let typed = || samples.iter().map(|s| s.borrow()).filter(|s| s.typed > 0);
     let (mut number, mut reciprocals, mut observed, mut squares) = (0u32, 0.0, 0.0, 0.0);
     for sample in typed() {
@@ -311,14 +331,38 @@ pub fn nei<C: Borrow<Counts>>(samples: &[C]) -> Option<NeiDiversity> {
             .sum();
         squared_means += sum * sum;
     }
-    let within = size / (size - 1.0) * (1.0 - squares / s - observed / (2.0 * size));
-    let total = 1.0 - squared_means / (s * s) + within / (size * s) - observed / (2.0 * size * s);
-    Some(NeiDiversity {
-        samples: number,
+    Some(NeiDiversity::of(
+        number,
+        size,
         observed,
-        within,
-        total,
-    })
+        squares / s,
+        squared_means / (s * s),
+    ))
+}
+
+/// [`nei`] of two samples, which is what comparisons ask for by the million.
+pub fn nei_pair(first: &Counts, second: &Counts) -> Option<NeiDiversity> {
+    let (n1, n2) = (f64::from(first.typed), f64::from(second.typed));
+    if first.typed == 0 || second.typed == 0 || first.typed + second.typed == 2 {
+        return None;
+    }
+    let size = 2.0 * n1 * n2 / (n1 + n2);
+    let (all1, all2) = (2.0 * n1, 2.0 * n2);
+    let observed = f64::from(first.heterozygotes) / all1 + f64::from(second.heterozygotes) / all2;
+    let (mut squares, mut squared_sums) = (0.0, 0.0);
+    for (&copies1, &copies2) in first.copies.iter().zip(&second.copies) {
+        // Divided, not multiplied by a reciprocal: a fixed allele has exactly 1.
+        let (p1, p2) = (f64::from(copies1) / all1, f64::from(copies2) / all2);
+        squares += p1 * p1 + p2 * p2;
+        squared_sums += (p1 + p2) * (p1 + p2);
+    }
+    Some(NeiDiversity::of(
+        2,
+        size,
+        observed,
+        0.5 * squares,
+        0.25 * squared_sums,
+    ))
 }
 
 fn ratio(numerator: f64, denominator: f64) -> Option<f64> {
@@ -345,11 +389,20 @@ mod tests {
 
     #[test]
     fn a_fixed_locus_has_no_ratio() {
-        let fixed = Counts::of(2, [Some([0, 0]), Some([0, 0])]);
-        let components = weir_cockerham(&[&fixed, &fixed]).unwrap();
-        assert_eq!(components, Components::default());
-        assert_eq!(components.theta(), None);
-        assert_eq!(hudson(&fixed, &fixed).unwrap().ratio(), None);
-        assert_eq!(nei(&[&fixed, &fixed]).unwrap().gst_hedrick(), None);
+        for (n1, n2) in (2..120).zip([3, 7, 49, 50, 98].into_iter().cycle()) {
+            for allele in [0, 1] {
+                for alleles in [2, 3] {
+                    let fixed = [n1, n2].map(|n| Counts::of(alleles, vec![Some([allele; 2]); n]));
+                    let components = weir_cockerham(&fixed).unwrap();
+                    assert_eq!(components, Components::default());
+                    assert_eq!(components.theta(), None);
+                    assert_eq!(hudson(&fixed[0], &fixed[1]).unwrap().ratio(), None);
+                    assert_eq!(nei(&fixed).unwrap().gst_hedrick(), None);
+                    let [first, second] = &fixed;
+                    let three = nei(&[first, second, first]).unwrap();
+                    assert_eq!((three.within, three.gst()), (0.0, None));
+                }
+            }
+        }
     }
 }

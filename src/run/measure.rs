@@ -227,11 +227,10 @@ impl Inputs {
         let mut warnings: Vec<_> = notes.map(warning).collect();
         for (source, remarks) in self.sources.iter().zip(&all.remarks) {
             let file = source.reader.path().display().to_string();
-            let told = source
-                .reader
-                .warnings()
-                .into_iter()
-                .chain(remarks.messages());
+            let mut remarks = remarks.clone();
+            remarks.merge(source.reader.remarks());
+            let told = source.reader.warnings().iter().cloned();
+            let told = told.chain(remarks.messages());
             warnings.extend(told.map(|text| warning(&Note::new("calls", file.clone(), text))));
         }
         warnings
