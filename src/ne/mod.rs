@@ -2,6 +2,7 @@
 
 pub mod demographic;
 pub mod diffusion;
+pub mod heterozygote_excess;
 pub mod linkage;
 pub mod prior;
 pub mod temporal;
