@@ -112,6 +112,9 @@ impl Inputs {
         });
         let threads = plan.threads.unwrap_or_else(available_threads);
         let collected = collect(&mut self.sources, &scheme, threads, table, &|_| ())?;
+        if collected.sums.kept == 0 {
+            return Err(nothing_kept(plan, &collected));
+        }
         Ok((self.report(plan, arguments, &collected), file))
     }
 
@@ -318,6 +321,29 @@ fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String)
         format: format.to_owned(),
         bytes,
         sha256,
+    }
+}
+
+/// Calls from which nothing can be said are a failure: an empty report would pass for a result.
+fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
+    let records: u64 = all.verdicts.values().sum();
+    let reasons: Vec<String> = all
+        .verdicts
+        .iter()
+        .map(|(verdict, n)| format!("{} {n}", verdict.name()))
+        .collect();
+    let problem = match records {
+        0 => "there is no record".to_owned(),
+        n => format!(
+            "none of the {n} records has a diploid genotype of an individual in use ({})",
+            reasons.join(", ")
+        ),
+    };
+    Error::Calls {
+        path: plan.calls[0].clone(),
+        place: crate::error::Place::End,
+        problem,
+        cure: "give calls with a GT field for the samples of the sheet".to_owned(),
     }
 }
 
