@@ -179,12 +179,15 @@ fn a_sheet_with_a_header_alone() {
 #[test]
 fn all_problems_of_a_sheet_are_told_at_once() {
     let case = Case::new();
+    let spoilt = SHEET.replace("otter_2,Withy,2011", "otter_2,Withy,x");
+    case.sheet(&spoilt.replace("otter_4", "otter_1"));
+    case.fails(2, &["row 3", "row 5", "otter_1"]);
     case.sheet(
         &SHEET
             .replace("otter_3", "stoat_3")
-            .replace("otter_2,Withy,2011", "otter_2,Withy,x"),
+            .replace("otter_2", "stoat_2"),
     );
-    case.fails(2, &["row 3", "row 4", "stoat_3"]);
+    case.fails(2, &["row 3", "stoat_2", "row 4", "stoat_3"]);
 }
 
 // Calls: exit code 1, with the record.

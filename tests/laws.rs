@@ -48,13 +48,12 @@ fn locus(record: &Record) -> Locus {
             genotypes.set(slot, *a, *b);
         }
     }
-    Locus {
-        contig_hash: stable_hash(contig.as_bytes()),
-        contig,
-        position: record.position,
-        genotypes,
-        ..Locus::default()
-    }
+    let mut locus = Locus::default();
+    locus.contig_hash = stable_hash(contig.as_bytes());
+    locus.contig = contig;
+    locus.position = record.position;
+    locus.genotypes = genotypes;
+    locus
 }
 
 fn sums<'a>(scheme: &Arc<Scheme>, records: impl IntoIterator<Item = &'a Record>) -> Sums {

@@ -48,7 +48,7 @@ struct Inputs {
 impl Inputs {
     fn open(plan: &MeasurePlan) -> Result<Inputs> {
         let sheet = read_sheet(&plan.sheet)?;
-        let (programme, programme_file) = match &plan.programme {
+        let (mut programme, programme_file) = match &plan.programme {
             Some(path) => {
                 let read = read_programme(path)?;
                 let file = input_file("programme", path, "TOML", read.bytes, read.digest);
@@ -56,7 +56,7 @@ impl Inputs {
             }
             None => (Programme::default(), None),
         };
-        let programme = programme.with_flags(&plan.flags);
+        programme.overrule(&plan.flags);
         let (sources, matched) = open_calls(plan, &sheet)?;
         let compared =
             comparisons(&matched.strata, &programme).map_err(|problems| Error::Sheet {
