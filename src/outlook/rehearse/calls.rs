@@ -30,10 +30,17 @@ impl SampleQuality {
     /// Draws the factors of `samples` samples.
     pub fn draw(genotyping: &Genotyping, samples: usize, seed: u64) -> Self {
         let mut dice = Dice::new(seed, Purpose::SampleQuality, 0, 0);
-        let mut quality = SampleQuality { missing: Vec::new(), depth: Vec::new() };
+        let mut quality = SampleQuality {
+            missing: Vec::new(),
+            depth: Vec::new(),
+        };
         for _ in 0..samples {
-            quality.missing.push(dice.factor(genotyping.missing_spread_samples));
-            quality.depth.push(dice.factor(genotyping.depth_spread_samples));
+            quality
+                .missing
+                .push(dice.factor(genotyping.missing_spread_samples));
+            quality
+                .depth
+                .push(dice.factor(genotyping.depth_spread_samples));
         }
         quality
     }
@@ -55,21 +62,33 @@ pub fn genotype(
         if place.shadow {
             continue;
         }
-        let twin = unit.sites.get(site + 1).filter(|next| next.shadow).map(|_| site + 1);
+        let twin = unit
+            .sites
+            .get(site + 1)
+            .filter(|next| next.shadow)
+            .map(|_| site + 1);
         let alleles = transmission.layout.alleles[site];
         let missing_here = genotyping.missing_rate * dice.factor(genotyping.missing_spread_loci);
-        let depth_here = genotyping.depth.map(|d| d * dice.factor(genotyping.depth_spread_loci));
-        let mut row = CallRow { site, calls: Vec::with_capacity(samples), reads: Vec::new() };
+        let depth_here = genotyping
+            .depth
+            .map(|d| d * dice.factor(genotyping.depth_spread_loci));
+        let mut row = CallRow {
+            site,
+            calls: Vec::with_capacity(samples),
+            reads: Vec::new(),
+        };
         for sample in 0..samples {
             let mut genotype = true_genotype(transmission, sample, site, twin);
             disturb(&mut genotype, alleles, genotyping, &mut dice);
             if dice.chance((missing_here * quality.missing[sample]).min(0.99)) {
                 row.calls.push(MISSING);
-                row.reads.extend(depth_here.iter().flat_map(|_| vec![0; alleles as usize]));
+                row.reads
+                    .extend(depth_here.iter().flat_map(|_| vec![0; alleles as usize]));
             } else if let Some(depth) = depth_here {
                 let reads = dice.poisson(depth * quality.depth[sample]);
                 let counts = draw_reads(genotype, alleles, reads, genotyping, &mut dice);
-                row.calls.push(likeliest(&counts, genotyping.read_error_rate));
+                row.calls
+                    .push(likeliest(&counts, genotyping.read_error_rate));
                 row.reads.extend(counts);
             } else {
                 genotype.sort_unstable();
@@ -84,9 +103,7 @@ pub fn genotype(
 /// The two alleles that an individual shows; with a twin, two different ones of its four gene
 /// copies where there are such.
 fn true_genotype(t: &Transmission, sample: usize, site: usize, twin: Option<usize>) -> [u8; 2] {
-    let code = |side: usize, locus: usize| {
-        t.layout.code(t.samples.get(sample, side), locus) as u8
-    };
+    let code = |side: usize, locus: usize| t.layout.code(t.samples.get(sample, side), locus) as u8;
     let own = [code(0, site), code(1, site)];
     match twin {
         Some(twin) if own[0] == own[1] => {
@@ -105,7 +122,11 @@ fn disturb(genotype: &mut [u8; 2], alleles: u16, genotyping: &Genotyping, dice: 
         let rate = genotyping.dropout_rate;
         let (first, second) = (dice.chance(rate), dice.chance(rate));
         if first != second {
-            *genotype = if first { [genotype[1]; 2] } else { [genotype[0]; 2] };
+            *genotype = if first {
+                [genotype[1]; 2]
+            } else {
+                [genotype[0]; 2]
+            };
         }
     }
     for allele in genotype {
@@ -166,7 +187,11 @@ pub fn phred_likelihoods(reads: &[u16], error: f64) -> Vec<u32> {
     let alleles = reads.len();
     let error = error.clamp(1e-6, 0.5);
     let (right, wrong) = (1.0 - error, error / (alleles as f64 - 1.0));
-    let (both, one, none) = (right.log10(), ((right + wrong) / 2.0).log10(), wrong.log10());
+    let (both, one, none) = (
+        right.log10(),
+        ((right + wrong) / 2.0).log10(),
+        wrong.log10(),
+    );
     let total: f64 = reads.iter().map(|&n| f64::from(n)).sum();
     let mut logs = Vec::with_capacity(alleles * (alleles + 1) / 2);
     for high in 0..alleles {
@@ -180,7 +205,9 @@ pub fn phred_likelihoods(reads: &[u16], error: f64) -> Vec<u32> {
         }
     }
     let best = logs.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-    logs.iter().map(|&l| (-10.0 * (l - best)).round() as u32).collect()
+    logs.iter()
+        .map(|&l| (-10.0 * (l - best)).round() as u32)
+        .collect()
 }
 
 #[cfg(test)]
@@ -190,8 +217,12 @@ mod tests {
     /// Two reads of each of two alleles, error 0.01: log10 of 0.99^2 0.01^2 against 0.5^4, by hand.
     #[test]
     fn likelihoods_of_a_clear_heterozygote() {
-        let homozygote = -10.0 * (2.0 * 0.99f64.log10() + 2.0 * 0.01f64.log10() - 4.0 * 0.5f64.log10());
-        assert_eq!(phred_likelihoods(&[2, 2], 0.01), [homozygote.round() as u32, 0, 28]);
+        let homozygote =
+            -10.0 * (2.0 * 0.99f64.log10() + 2.0 * 0.01f64.log10() - 4.0 * 0.5f64.log10());
+        assert_eq!(
+            phred_likelihoods(&[2, 2], 0.01),
+            [homozygote.round() as u32, 0, 28]
+        );
         assert_eq!(likeliest(&[2, 2], 0.01), [0, 1]);
         assert_eq!(likeliest(&[0, 0, 7], 0.01), [2, 2]);
         assert_eq!(likeliest(&[0, 4, 7], 0.01), [1, 2]);

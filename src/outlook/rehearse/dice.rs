@@ -40,7 +40,9 @@ impl Dice {
     /// are the key, so different streams never overlap.
     pub fn new(seed: u64, purpose: Purpose, unit: u64, generation: u64) -> Self {
         let mut key = [0u8; 32];
-        for (part, number) in key.chunks_exact_mut(8).zip([seed, purpose as u64, unit, generation])
+        for (part, number) in key
+            .chunks_exact_mut(8)
+            .zip([seed, purpose as u64, unit, generation])
         {
             part.copy_from_slice(&number.to_le_bytes());
         }
@@ -98,9 +100,7 @@ impl Dice {
         loop {
             let x = self.normal();
             let v = (1.0 + c * x).powi(3);
-            if v > 0.0
-                && self.uniform_above_zero().ln() < 0.5 * x * x + d - d * v + d * v.ln()
-            {
+            if v > 0.0 && self.uniform_above_zero().ln() < 0.5 * x * x + d - d * v + d * v.ln() {
                 return d * v;
             }
         }
@@ -189,7 +189,10 @@ mod tests {
     }
 
     fn close(got: f64, want: f64, tolerance: f64) {
-        assert!((got - want).abs() < tolerance, "{got} is not {want} within {tolerance}");
+        assert!(
+            (got - want).abs() < tolerance,
+            "{got} is not {want} within {tolerance}"
+        );
     }
 
     /// Textbook moments of each distribution; tolerances are 5 standard errors or more.
@@ -238,7 +241,9 @@ mod tests {
     #[test]
     fn tiny_shapes_give_one_allele_everything() {
         let mut dice = Dice::new(1, Purpose::Places, 0, 0);
-        let first = (0..2000).filter(|_| dice.dirichlet(&[1e-9, 3e-9])[0] > 0.5).count();
+        let first = (0..2000)
+            .filter(|_| dice.dirichlet(&[1e-9, 3e-9])[0] > 0.5)
+            .count();
         assert!((400..600).contains(&first), "{first} of 2000, 500 expected");
     }
 }

@@ -24,7 +24,9 @@ impl Scheme {
     /// chance alone, which is a variance of 2(1 - 1/N).
     pub fn for_variance(variance: Option<f64>, parents: u32) -> Self {
         let n = f64::from(parents);
-        let (Some(variance), true) = (variance, parents > 1) else { return Scheme::Chance };
+        let (Some(variance), true) = (variance, parents > 1) else {
+            return Scheme::Chance;
+        };
         let by_chance = 2.0 * (1.0 - 1.0 / n);
         if variance <= by_chance {
             Scheme::Equalised(1.0 - variance / by_chance)
@@ -43,8 +45,13 @@ impl Scheme {
             Scheme::Equalised(both_kept) => {
                 let (each, more) = (gametes / parents, gametes % parents);
                 let pairs = |k: u32| f64::from(k) * (f64::from(k) - 1.0);
-                let same = f64::from(more) * pairs(each + 1) + f64::from(parents - more) * pairs(each);
-                let equal = if gametes > 1 { same / pairs(gametes) } else { 0.0 };
+                let same =
+                    f64::from(more) * pairs(each + 1) + f64::from(parents - more) * pairs(each);
+                let equal = if gametes > 1 {
+                    same / pairs(gametes)
+                } else {
+                    0.0
+                };
                 both_kept * equal + (1.0 - both_kept) / n
             }
         }
@@ -71,7 +78,11 @@ impl Brood {
                 cumulative.push(sum);
             }
         }
-        Brood { parents, scheme, cumulative }
+        Brood {
+            parents,
+            scheme,
+            cumulative,
+        }
     }
 
     /// The parent of one gamete among as many as one likes (before families are made equal).
@@ -92,7 +103,12 @@ impl Brood {
         let redrawn = 1.0 - both_kept.sqrt();
         let mut order: Vec<u32> = (0..self.parents).collect();
         dice.shuffle(&mut order);
-        let mut list: Vec<u32> = order.iter().copied().cycle().take(gametes as usize).collect();
+        let mut list: Vec<u32> = order
+            .iter()
+            .copied()
+            .cycle()
+            .take(gametes as usize)
+            .collect();
         for parent in &mut list {
             if dice.chance(redrawn) {
                 *parent = dice.below(self.parents);
@@ -107,7 +123,10 @@ impl Brood {
 /// its inverse is the effective size (Crow & Denniston 1988). `None` with fewer than two gametes.
 pub fn realised_same_parent(family_sizes: &[u32]) -> Option<f64> {
     let total: f64 = family_sizes.iter().map(|&k| f64::from(k)).sum();
-    let same: f64 = family_sizes.iter().map(|&k| f64::from(k) * (f64::from(k) - 1.0)).sum();
+    let same: f64 = family_sizes
+        .iter()
+        .map(|&k| f64::from(k) * (f64::from(k) - 1.0))
+        .sum();
     (total > 1.0).then(|| same / (total * (total - 1.0)))
 }
 
@@ -130,9 +149,19 @@ mod tests {
     /// METHODS 7 check [7.3]: algebra of (4N - 2)/(Vk + 2) for N = 10.
     #[test]
     fn schemes_give_the_effective_size_of_their_variance() {
-        for (variance, want) in [(0.0, 19.0), (1.8, 10.0), (2.0, 9.5), (0.9, 38.0 / 2.9), (6.0, 4.75)] {
+        for (variance, want) in [
+            (0.0, 19.0),
+            (1.8, 10.0),
+            (2.0, 9.5),
+            (0.9, 38.0 / 2.9),
+            (6.0, 4.75),
+        ] {
             let p = Scheme::for_variance(Some(variance), 10).same_parent(10, 20);
-            assert!((1.0 / p - want).abs() < 1e-9, "Vk {variance}: {} for {want}", 1.0 / p);
+            assert!(
+                (1.0 / p - want).abs() < 1e-9,
+                "Vk {variance}: {} for {want}",
+                1.0 / p
+            );
         }
         assert_eq!(Scheme::for_variance(None, 10).same_parent(10, 20), 0.1);
     }
@@ -159,7 +188,10 @@ mod tests {
                 let mean = sum / runs as f64;
                 let error = ((squares / runs as f64 - mean * mean).max(0.0) / runs as f64).sqrt();
                 let want = scheme.same_parent(20, gametes as u32);
-                assert!((mean - want).abs() <= 5.0 * error + 1e-12, "Vk {variance}: {mean} {want}");
+                assert!(
+                    (mean - want).abs() <= 5.0 * error + 1e-12,
+                    "Vk {variance}: {mean} {want}"
+                );
             }
         }
     }

@@ -72,7 +72,11 @@ impl Genome {
                 }
                 let last = room(&contigs[carriers[which]]) - 1;
                 let position = (along as u64).min(last) as u32 + 1;
-                sites[carriers[which]].push(Site { position, set: index as u32, shadow: false });
+                sites[carriers[which]].push(Site {
+                    position,
+                    set: index as u32,
+                    shadow: false,
+                });
             }
         }
         let mut units = Vec::new();
@@ -85,7 +89,11 @@ impl Genome {
                 None => FREE_LOCI_IN_A_UNIT,
             };
             for part in list.chunks(size) {
-                units.push(Unit { number: units.len() as u64, contig, sites: part.to_vec() });
+                units.push(Unit {
+                    number: units.len() as u64,
+                    contig,
+                    sites: part.to_vec(),
+                });
             }
         }
         Genome { contigs, units }
@@ -101,7 +109,9 @@ fn room(contig: &Contig) -> u64 {
 pub fn contigs(scenario: &Scenario) -> Vec<Contig> {
     let mut contigs = Vec::new();
     for chromosome in &scenario.chromosome {
-        let map_cm = chromosome.map_length_cm.unwrap_or(chromosome.length_bp as f64 / 1e6);
+        let map_cm = chromosome
+            .map_length_cm
+            .unwrap_or(chromosome.length_bp as f64 / 1e6);
         for copy in 1..=chromosome.copies {
             let name = if chromosome.copies == 1 {
                 chromosome.name.clone()
@@ -109,7 +119,11 @@ pub fn contigs(scenario: &Scenario) -> Vec<Contig> {
                 format!("{}_{copy}", chromosome.name)
             };
             let map_morgans = (!chromosome.unlinked).then_some(map_cm / 100.0);
-            contigs.push(Contig { name, length_bp: chromosome.length_bp, map_morgans });
+            contigs.push(Contig {
+                name,
+                length_bp: chromosome.length_bp,
+                map_morgans,
+            });
         }
     }
     contigs
@@ -122,7 +136,12 @@ pub fn carriers(contigs: &[Contig], names: &[String], scenario: &Scenario) -> Ve
         origin.extend((0..chromosome.copies).map(|_| chromosome.name.as_str()));
     }
     (0..contigs.len())
-        .filter(|&c| names.is_empty() || names.iter().any(|n| *n == contigs[c].name || n == origin[c]))
+        .filter(|&c| {
+            names.is_empty()
+                || names
+                    .iter()
+                    .any(|n| *n == contigs[c].name || n == origin[c])
+        })
         .collect()
 }
 
@@ -143,7 +162,10 @@ fn with_shadows(sites: Vec<Site>, scenario: &Scenario) -> Vec<Site> {
     for site in sites {
         all.push(site);
         if scenario.loci[site.set as usize].duplicated {
-            all.push(Site { shadow: true, ..site });
+            all.push(Site {
+                shadow: true,
+                ..site
+            });
         }
     }
     all
@@ -157,7 +179,11 @@ pub fn common_frequencies(frequencies: &Frequencies, alleles: usize, dice: &mut 
         Frequencies::List(list) => list.clone(),
         Frequencies::Minor([low, high]) => {
             let minor = low + (high - low) * dice.uniform();
-            if dice.word() & 1 == 0 { vec![1.0 - minor, minor] } else { vec![minor, 1.0 - minor] }
+            if dice.word() & 1 == 0 {
+                vec![1.0 - minor, minor]
+            } else {
+                vec![minor, 1.0 - minor]
+            }
         }
     }
 }
@@ -191,7 +217,10 @@ pub fn allele_texts(alleles: usize, dice: &mut Dice) -> Vec<String> {
     let mut repeats: Vec<usize> = (shortest..shortest + alleles).collect();
     repeats.swap(0, alleles / 2);
     let unit: String = [BASES[first], BASES[second]].iter().collect();
-    repeats.iter().map(|&n| format!("{anchor}{}", unit.repeat(n))).collect()
+    repeats
+        .iter()
+        .map(|&n| format!("{anchor}{}", unit.repeat(n)))
+        .collect()
 }
 
 #[cfg(test)]
@@ -200,8 +229,13 @@ mod tests {
 
     #[test]
     fn equal_places_move_apart_and_stay_inside() {
-        let mut sites: Vec<Site> =
-            [5, 5, 5, 9, 10, 10].map(|position| Site { position, set: 0, shadow: false }).to_vec();
+        let mut sites: Vec<Site> = [5, 5, 5, 9, 10, 10]
+            .map(|position| Site {
+                position,
+                set: 0,
+                shadow: false,
+            })
+            .to_vec();
         spread_out(&mut sites, 10);
         let places: Vec<u32> = sites.iter().map(|s| s.position).collect();
         assert_eq!(places, [5, 6, 7, 8, 9, 10]);
@@ -223,7 +257,9 @@ mod tests {
     fn divergence_has_its_variance() {
         let mut dice = Dice::new(9, Purpose::Frequencies, 0, 0);
         let n = 100_000;
-        let draws: Vec<f64> = (0..n).map(|_| diverged(&[0.7, 0.3], 0.1, &mut dice)[1]).collect();
+        let draws: Vec<f64> = (0..n)
+            .map(|_| diverged(&[0.7, 0.3], 0.1, &mut dice)[1])
+            .collect();
         let mean = draws.iter().sum::<f64>() / n as f64;
         let variance = draws.iter().map(|d| (d - mean).powi(2)).sum::<f64>() / n as f64;
         assert!((mean - 0.3).abs() < 0.003 && (variance - 0.021).abs() < 0.0006);

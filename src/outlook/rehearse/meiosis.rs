@@ -45,17 +45,28 @@ pub struct Transmission {
 impl Layout {
     /// The layout of a unit, with its map in proportion to base pairs.
     pub fn new(scenario: &Scenario, unit: &Unit, length_bp: u64, map_morgans: Option<f64>) -> Self {
-        let alleles: Vec<u16> =
-            unit.sites.iter().map(|s| scenario.loci[s.set as usize].alleles as u16).collect();
+        let alleles: Vec<u16> = unit
+            .sites
+            .iter()
+            .map(|s| scenario.loci[s.set as usize].alleles as u16)
+            .collect();
         let mut offsets = vec![0];
         for word in alleles.chunks(64) {
             let most = word.iter().copied().max().unwrap_or(2).max(2);
             offsets.push(offsets[offsets.len() - 1] + (16 - (most - 1).leading_zeros()) as usize);
         }
         let map = map_morgans.map_or(Vec::new(), |length| {
-            unit.sites.iter().map(|s| f64::from(s.position) / length_bp as f64 * length).collect()
+            unit.sites
+                .iter()
+                .map(|s| f64::from(s.position) / length_bp as f64 * length)
+                .collect()
         });
-        Layout { offsets, alleles, map, map_length: map_morgans.unwrap_or(0.0) }
+        Layout {
+            offsets,
+            alleles,
+            map,
+            map_length: map_morgans.unwrap_or(0.0),
+        }
     }
 
     /// Words of a haplotype.
@@ -72,14 +83,21 @@ impl Layout {
     pub fn matches(&self, haplotype: &[u64], block: usize, code: u16) -> u64 {
         let planes = &haplotype[self.offsets[block]..self.offsets[block + 1]];
         let bit = |p: usize, w: u64| if code >> p & 1 == 1 { w } else { !w };
-        planes.iter().enumerate().fold(self.used(block), |found, (p, &w)| found & bit(p, w))
+        planes
+            .iter()
+            .enumerate()
+            .fold(self.used(block), |found, (p, &w)| found & bit(p, w))
     }
 
     /// Allele code of a locus in a haplotype.
     pub fn code(&self, haplotype: &[u64], locus: usize) -> u16 {
         let (word, bit) = (locus / 64, locus % 64);
         let planes = &haplotype[self.offsets[word]..self.offsets[word + 1]];
-        planes.iter().enumerate().map(|(p, w)| ((w >> bit & 1) as u16) << p).sum()
+        planes
+            .iter()
+            .enumerate()
+            .map(|(p, w)| ((w >> bit & 1) as u16) << p)
+            .sum()
     }
 
     fn set(&self, haplotype: &mut [u64], locus: usize, code: u16) {
@@ -99,13 +117,20 @@ impl Layout {
     /// Bits of a word that hold loci.
     pub fn used(&self, block: usize) -> u64 {
         let loci = self.alleles.len().min(64 * block + 64) - 64 * block;
-        if loci == 64 { u64::MAX } else { (1 << loci) - 1 }
+        if loci == 64 {
+            u64::MAX
+        } else {
+            (1 << loci) - 1
+        }
     }
 }
 
 impl Haplotypes {
     fn new(individuals: usize, stride: usize) -> Self {
-        Haplotypes { stride, words: vec![0; 2 * individuals * stride] }
+        Haplotypes {
+            stride,
+            words: vec![0; 2 * individuals * stride],
+        }
     }
 
     /// One of the two haplotypes (0 from the mother, 1 from the father) of an individual.
@@ -167,7 +192,12 @@ pub fn transmit(
         count_strata(history, index, generation, &layout, &adults, &mut copies);
         watch.look(&layout, index, generation, &adults);
     }
-    Transmission { layout, samples, copies, gone: watch.finish() }
+    Transmission {
+        layout,
+        samples,
+        copies,
+        gone: watch.finish(),
+    }
 }
 
 /// Running sums of first frequencies: by population and locus, as 32-bit limits of each allele but
@@ -212,13 +242,16 @@ fn draw_founder(layout: &Layout, limits: &[Vec<u64>], haplotype: &mut [u64], dic
         } else {
             (word >> 32) as u32
         };
-        let code = limits.iter().filter(|&&limit| u64::from(number) >= limit).count() as u16;
+        let code = limits
+            .iter()
+            .filter(|&&limit| u64::from(number) >= limit)
+            .count() as u16;
         layout.set(haplotype, locus, code);
     }
 }
 
 /// Makes a gamete of a parent's two haplotypes.
-fn gamete(layout: &Layout, parent: [&[u64]; 2], child: &mut [u64], dice: &mut Dice) {
+pub fn gamete(layout: &Layout, parent: [&[u64]; 2], child: &mut [u64], dice: &mut Dice) {
     if layout.map.is_empty() {
         for block in 0..layout.blocks() {
             let mask = dice.word();
@@ -271,13 +304,16 @@ fn keep_samples(
     for (sample, taken) in history.samples.iter().enumerate() {
         let (from, individual) = match taken.source {
             Source::Adult { generation, adult } if generation == index => (adults, adult),
-            Source::Juvenile { generation, juvenile } if generation == index => {
-                (juveniles, juvenile)
-            }
+            Source::Juvenile {
+                generation,
+                juvenile,
+            } if generation == index => (juveniles, juvenile),
             _ => continue,
         };
         for side in 0..2 {
-            samples.get_mut(sample, side).copy_from_slice(from.get(individual, side));
+            samples
+                .get_mut(sample, side)
+                .copy_from_slice(from.get(individual, side));
         }
     }
 }
@@ -294,7 +330,11 @@ fn count_strata(
         if history.index(stratum.generation) != index {
             continue;
         }
-        *copies = layout.alleles.iter().map(|&a| vec![0; a as usize]).collect();
+        *copies = layout
+            .alleles
+            .iter()
+            .map(|&a| vec![0; a as usize])
+            .collect();
         for adult in generation.ranges[stratum.population].clone() {
             for side in 0..2 {
                 let haplotype = adults.get(adult as usize, side);

@@ -13,10 +13,13 @@ mod dice;
 mod families;
 mod genome;
 mod meiosis;
+mod numbers;
 mod population;
 mod sampling;
 mod scenario;
 mod simulation;
+#[cfg(test)]
+mod theory;
 mod truth;
 mod watch;
 mod write;

@@ -4,8 +4,9 @@ use std::ops::Range;
 
 use super::dice::{Dice, Purpose};
 use super::families::{Brood, Scheme, realised_same_parent};
+use super::numbers::{adults, expected_same_parent, father_variance, females, migrants, released};
 use super::sampling::{self, Sample, SampledStratum};
-use super::scenario::{Mating, Population, Scenario};
+use super::scenario::{Mating, Scenario};
 
 /// Where an individual comes from.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -79,11 +80,23 @@ impl History {
     /// Draws the pedigree of a checked scenario.
     pub fn draw(scenario: &Scenario, seed: u64) -> History {
         let settling = scenario.settling_generations as usize;
-        let last = scenario.visit.iter().map(|v| v.generation).max().unwrap_or(0);
+        let last = scenario
+            .visit
+            .iter()
+            .map(|v| v.generation)
+            .max()
+            .unwrap_or(0);
         let mut generations = vec![founders(scenario)];
         let mut samples = Vec::new();
         let mut strata = sampling::strata(scenario);
-        sampling::take(scenario, seed, &mut generations, None, &mut strata, &mut samples);
+        sampling::take(
+            scenario,
+            seed,
+            &mut generations,
+            None,
+            &mut strata,
+            &mut samples,
+        );
         for index in 1..=settling + last as usize {
             let now = index.checked_sub(settling).map(|g| g as u32);
             let mut dice = Dice::new(seed, Purpose::Pedigree, 0, index as u64);
@@ -95,10 +108,22 @@ impl History {
             generations[index - 1].same_parent = same_parent;
             generations.push(next);
             let born = Some((&offered[..], &sources[..]));
-            sampling::take(scenario, seed, &mut generations, born, &mut strata, &mut samples);
+            sampling::take(
+                scenario,
+                seed,
+                &mut generations,
+                born,
+                &mut strata,
+                &mut samples,
+            );
         }
         sampling::finish(scenario, &mut strata, &mut samples);
-        History { settling, generations, strata, samples }
+        History {
+            settling,
+            generations,
+            strata,
+            samples,
+        }
     }
 
     /// Position of a generation of the scenario in `generations`.
@@ -133,25 +158,31 @@ impl Parents {
                 females.min(adults - females),
                 dice,
             )),
-            Mating::Selfing => Broods::Hermaphrodites(brood(settings.family_variance, adults, dice)),
+            Mating::Selfing => {
+                Broods::Hermaphrodites(brood(settings.family_variance, adults, dice))
+            }
         };
-        Some(Parents { start: range.start, adults, females, broods })
+        Some(Parents {
+            start: range.start,
+            adults,
+            females,
+            broods,
+        })
     }
 
     /// Mother and father of one of as many offspring as one likes.
     pub fn one(&self, dice: &mut Dice) -> [u32; 2] {
         let fathers_start = self.start + self.females;
         match &self.broods {
-            Broods::TwoSexes { mothers, fathers } => {
-                [self.start + mothers.one(dice), fathers_start + fathers.one(dice)]
-            }
+            Broods::TwoSexes { mothers, fathers } => [
+                self.start + mothers.one(dice),
+                fathers_start + fathers.one(dice),
+            ],
             Broods::Pairs(pairs) => {
                 let pair = pairs.one(dice);
                 [self.start + pair, fathers_start + pair]
             }
-            Broods::Hermaphrodites(all) => {
-                [self.start + all.one(dice), self.start + all.one(dice)]
-            }
+            Broods::Hermaphrodites(all) => [self.start + all.one(dice), self.start + all.one(dice)],
         }
     }
 
@@ -163,7 +194,9 @@ impl Parents {
                 let mothers = mothers.all(offspring, dice);
                 let fathers = fathers.all(offspring, dice);
                 let pairs = mothers.into_iter().zip(fathers);
-                pairs.map(|(m, f)| [self.start + m, fathers_start + f]).collect()
+                pairs
+                    .map(|(m, f)| [self.start + m, fathers_start + f])
+                    .collect()
             }
             Broods::Pairs(pairs) => {
                 let pairs = pairs.all(offspring, dice).into_iter();
@@ -171,79 +204,23 @@ impl Parents {
             }
             Broods::Hermaphrodites(all) => {
                 let gametes = all.all(2 * offspring, dice);
-                gametes.chunks_exact(2).map(|g| [self.start + g[0], self.start + g[1]]).collect()
+                gametes
+                    .chunks_exact(2)
+                    .map(|g| [self.start + g[0], self.start + g[1]])
+                    .collect()
             }
         }
     }
-}
-
-/// Variance of family size of fathers.
-pub fn father_variance(population: &Population) -> Option<f64> {
-    population.male_family_variance.or(population.family_variance)
-}
-
-/// Number of adults of a population in a generation; 0 before it starts.
-pub fn adults(scenario: &Scenario, population: usize, generation: u32) -> u32 {
-    let settings = &scenario.population[population];
-    let Some(age) = generation.checked_sub(settings.starts_at) else { return 0 };
-    if age == 0 && settings.starts_at > 0 {
-        return released(scenario, population, generation).map(|(_, n)| n).sum();
-    }
-    let inside = |b: &&super::scenario::Bottleneck| (b.from..=b.to).contains(&generation);
-    if let Some(bottleneck) = settings.bottleneck.iter().find(inside) {
-        return bottleneck.size;
-    }
-    if let Some(&size) = settings.sizes.get(age as usize).or(settings.sizes.last()) {
-        return size;
-    }
-    let grown = f64::from(settings.size.unwrap_or(0)) * (1.0 + settings.growth_rate).powi(age as i32);
-    let limit = f64::from(settings.largest_size.unwrap_or(u32::MAX / 4));
-    grown.round().min(limit).max(2.0) as u32
-}
-
-/// Females among so many adults: at least one of each sex.
-pub fn females(scenario: &Scenario, population: usize, adults: u32) -> u32 {
-    if scenario.mating == Mating::Selfing || adults < 2 {
-        return 0;
-    }
-    let share = scenario.population[population].female_share;
-    ((f64::from(adults) * share).round() as u32).clamp(1, adults - 1)
-}
-
-/// Individuals released into a population in a generation, by population of birth.
-pub fn released<'a>(
-    scenario: &'a Scenario,
-    population: usize,
-    generation: u32,
-) -> impl Iterator<Item = (usize, u32)> + 'a {
-    let name = &scenario.population[population].name;
-    let here = move |r: &&super::scenario::Release| r.to == *name && r.generation == generation;
-    scenario.release.iter().filter(here).filter_map(|r| {
-        scenario.population.iter().position(|p| p.name == r.from).map(|from| (from, r.number))
-    })
-}
-
-/// Expected share of migrants among the adults of a population, by population of birth, with the
-/// number where it is fixed.
-fn migrants(
-    scenario: &Scenario,
-    population: usize,
-    generation: u32,
-) -> impl Iterator<Item = (usize, Option<f64>, u32)> + '_ {
-    let name = &scenario.population[population].name;
-    scenario.migration.iter().filter_map(move |m| {
-        let now = generation >= m.first_generation
-            && m.last_generation.is_none_or(|last| generation <= last);
-        let from = scenario.population.iter().position(|p| p.name == m.from)?;
-        (now && m.to == *name).then_some((from, m.rate, m.number.unwrap_or(0)))
-    })
 }
 
 fn founders(scenario: &Scenario) -> Generation {
     let mut generation = Generation::empty();
     for population in 0..scenario.population.len() {
         let n = adults(scenario, population, 0);
-        generation.add(females(scenario, population, n), vec![Origin::Founder(population as u32); n as usize]);
+        generation.add(
+            females(scenario, population, n),
+            vec![Origin::Founder(population as u32); n as usize],
+        );
     }
     generation
 }
@@ -278,9 +255,15 @@ fn draw_sources(
 ) -> Sources {
     let mut local = adults(scenario, population, generation.unwrap_or(0));
     let mut others = Vec::new();
-    let Some(generation) = generation else { return Sources { local, others } };
+    let Some(generation) = generation else {
+        return Sources { local, others };
+    };
     let mut send = |from: usize, wanted: u32, local: &mut u32| {
-        let number = if offered[from].is_some() { wanted.min(*local) } else { 0 };
+        let number = if offered[from].is_some() {
+            wanted.min(*local)
+        } else {
+            0
+        };
         if number > 0 {
             *local -= number;
             others.push((from, number));
@@ -295,43 +278,6 @@ fn draw_sources(
         send(from, number, &mut local);
     }
     Sources { local, others }
-}
-
-/// Chance of the same parent for two local gametes by the scenario's numbers, migrants taken off
-/// at their expected number.
-fn expected_same_parent(
-    scenario: &Scenario,
-    population: usize,
-    generation: Option<u32>,
-    parents: (u32, u32),
-) -> f64 {
-    let mut local = f64::from(adults(scenario, population, generation.unwrap_or(0)));
-    if let Some(generation) = generation {
-        local -= released(scenario, population, generation).map(|(_, n)| f64::from(n)).sum::<f64>();
-        let before = local;
-        for (_, rate, number) in migrants(scenario, population, generation) {
-            local -= rate.map_or(f64::from(number), |rate| before * rate);
-        }
-    }
-    let offspring = local.round().max(1.0) as u32;
-    let settings = &scenario.population[population];
-    let (adults, females) = parents;
-    let chance = |variance, parents, gametes| {
-        Scheme::for_variance(variance, parents).same_parent(parents, gametes)
-    };
-    // Gametes of one sex only can share a parent: (n - 1) of the (2n - 1) others.
-    let same_sex = f64::from(offspring - 1) / f64::from(2 * offspring - 1);
-    match scenario.mating {
-        Mating::Selfing => chance(settings.family_variance, adults, 2 * offspring),
-        Mating::Pairs => {
-            same_sex * chance(settings.family_variance, females.min(adults - females), offspring)
-        }
-        Mating::Random => {
-            let mothers = chance(settings.family_variance, females, offspring);
-            let fathers = chance(father_variance(settings), adults - females, offspring);
-            same_sex * (mothers + fathers) / 2.0
-        }
-    }
 }
 
 /// Draws the next generation: its adults, the drift by population, and where they were born.

@@ -1,7 +1,8 @@
 //! Who is sampled at each visit.
 
 use super::dice::{Dice, Purpose};
-use super::population::{Generation, Origin, Parents, Sources, adults};
+use super::numbers::adults;
+use super::population::{Generation, Origin, Parents, Sources};
 use super::scenario::{Mating, Plan, Scenario, Visit};
 use crate::model::Sex;
 
@@ -61,7 +62,11 @@ pub struct Sample {
 /// The strata of a scenario, by name of population, then generation, without samples so far.
 pub fn strata(scenario: &Scenario) -> Vec<SampledStratum> {
     let mut populations: Vec<usize> = (0..scenario.population.len()).collect();
-    populations.sort_by(|&a, &b| scenario.population[a].name.cmp(&scenario.population[b].name));
+    populations.sort_by(|&a, &b| {
+        scenario.population[a]
+            .name
+            .cmp(&scenario.population[b].name)
+    });
     let mut visits: Vec<usize> = (0..scenario.visit.len()).collect();
     visits.sort_by_key(|&v| scenario.visit[v].generation);
     let mut strata = Vec::new();
@@ -105,7 +110,9 @@ pub fn take(
     samples: &mut Vec<Sample>,
 ) {
     let index = generations.len() - 1;
-    let Some(now) = index.checked_sub(scenario.settling_generations as usize) else { return };
+    let Some(now) = index.checked_sub(scenario.settling_generations as usize) else {
+        return;
+    };
     let generation = &mut generations[index];
     for stratum in 0..strata.len() {
         if strata[stratum].generation as usize != now {
@@ -115,7 +122,12 @@ pub fn take(
         let visit = &scenario.visit[strata[stratum].visit];
         let mut taken = recaptures(visit, stratum, strata, samples, &mut dice);
         let wanted = visit.individuals.saturating_sub(taken.len() as u32);
-        let place = Place { scenario, population: strata[stratum].population, stratum, index };
+        let place = Place {
+            scenario,
+            population: strata[stratum].population,
+            stratum,
+            index,
+        };
         match visit.plan {
             Plan::I => place.adults(generation, wanted, &mut dice, &mut taken),
             Plan::II => place.juveniles(generation, visit, wanted, birth, &mut dice, &mut taken),
@@ -144,16 +156,25 @@ fn recaptures(
     samples: &[Sample],
     dice: &mut Dice,
 ) -> Vec<Sample> {
-    let Some(before) = stratum.checked_sub(1).map(|b| &strata[b]) else { return Vec::new() };
+    let Some(before) = stratum.checked_sub(1).map(|b| &strata[b]) else {
+        return Vec::new();
+    };
     if before.population != strata[stratum].population {
         return Vec::new();
     }
     let range = before.samples.clone();
-    let known: Vec<usize> = range.filter(|&s| samples[s].replicate_of.is_none()).collect();
+    let known: Vec<usize> = range
+        .filter(|&s| samples[s].replicate_of.is_none())
+        .collect();
     let chosen = dice.choose(known.len() as u32, visit.recaptured.min(visit.individuals));
     let again = chosen.into_iter().map(|which| {
         let first = known[which as usize];
-        Sample { stratum, recapture_of: Some(first), family: None, ..samples[first].clone() }
+        Sample {
+            stratum,
+            recapture_of: Some(first),
+            family: None,
+            ..samples[first].clone()
+        }
     });
     again.collect()
 }
@@ -178,14 +199,31 @@ impl Place<'_> {
         }
     }
 
-    fn adults(&self, generation: &Generation, wanted: u32, dice: &mut Dice, taken: &mut Vec<Sample>) {
+    fn adults(
+        &self,
+        generation: &Generation,
+        wanted: u32,
+        dice: &mut Dice,
+        taken: &mut Vec<Sample>,
+    ) {
         let range = generation.ranges[self.population].clone();
         for which in dice.choose(range.end - range.start, wanted) {
             let sex = (self.scenario.mating != Mating::Selfing).then(|| {
-                if which < generation.females[self.population] { Sex::Female } else { Sex::Male }
+                if which < generation.females[self.population] {
+                    Sex::Female
+                } else {
+                    Sex::Male
+                }
             });
             let adult = (range.start + which) as usize;
-            taken.push(self.sample(sex, Source::Adult { generation: self.index, adult }, None));
+            taken.push(self.sample(
+                sex,
+                Source::Adult {
+                    generation: self.index,
+                    adult,
+                },
+                None,
+            ));
         }
     }
 
@@ -202,7 +240,10 @@ impl Place<'_> {
             let sex = self.any_sex(dice);
             let juvenile = generation.juveniles.len();
             generation.juveniles.push(origin);
-            let source = Source::Juvenile { generation: self.index, juvenile };
+            let source = Source::Juvenile {
+                generation: self.index,
+                juvenile,
+            };
             taken.push(self.sample(sex, source, family));
         };
         let mut left = wanted;
@@ -247,8 +288,11 @@ impl Place<'_> {
     fn any_sex(&self, dice: &mut Dice) -> Option<Sex> {
         let share = self.scenario.population[self.population].female_share;
         let female = dice.uniform() < share;
-        (self.scenario.mating != Mating::Selfing)
-            .then_some(if female { Sex::Female } else { Sex::Male })
+        (self.scenario.mating != Mating::Selfing).then_some(if female {
+            Sex::Female
+        } else {
+            Sex::Male
+        })
     }
 }
 
@@ -285,5 +329,8 @@ pub fn finish(scenario: &Scenario, strata: &mut [SampledStratum], samples: &mut 
 /// A population's name as it begins the names of its samples.
 pub fn slug(name: &str) -> String {
     let keep = |c: char| c.is_ascii_alphanumeric();
-    name.chars().filter(|&c| keep(c)).collect::<String>().to_lowercase()
+    name.chars()
+        .filter(|&c| keep(c))
+        .collect::<String>()
+        .to_lowercase()
 }

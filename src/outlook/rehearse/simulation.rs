@@ -77,7 +77,12 @@ pub(super) struct Outcome {
 /// [`Error::Sheet`] with every problem of the scenario.
 pub fn simulate(scenario: &Scenario, seed: u64) -> Result<Simulation> {
     let stage = Stage::new(scenario, seed)?;
-    let outcomes: Vec<Outcome> = stage.genome.units.iter().map(|unit| stage.run(unit)).collect();
+    let outcomes: Vec<Outcome> = stage
+        .genome
+        .units
+        .iter()
+        .map(|unit| stage.run(unit))
+        .collect();
     Ok(stage.gather(outcomes))
 }
 
@@ -88,7 +93,12 @@ pub fn simulate(scenario: &Scenario, seed: u64) -> Result<Simulation> {
 /// [`Error::Sheet`] with every problem of the scenario.
 pub fn simulate_with_threads(scenario: &Scenario, seed: u64) -> Result<Simulation> {
     let stage = Stage::new(scenario, seed)?;
-    let outcomes = stage.genome.units.par_iter().map(|unit| stage.run(unit)).collect();
+    let outcomes = stage
+        .genome
+        .units
+        .par_iter()
+        .map(|unit| stage.run(unit))
+        .collect();
     Ok(stage.gather(outcomes))
 }
 
@@ -97,12 +107,21 @@ impl<'a> Stage<'a> {
     pub fn new(scenario: &'a Scenario, seed: u64) -> Result<Self> {
         let problems = check::problems(scenario);
         if !problems.is_empty() {
-            return Err(Error::Sheet { path: "scenario".into(), problems });
+            return Err(Error::Sheet {
+                path: "scenario".into(),
+                problems,
+            });
         }
         let genome = Genome::place(scenario, seed);
         let history = History::draw(scenario, seed);
         let quality = SampleQuality::draw(&scenario.genotyping, history.samples.len(), seed);
-        Ok(Stage { scenario, seed, genome, history, quality })
+        Ok(Stage {
+            scenario,
+            seed,
+            genome,
+            history,
+            quality,
+        })
     }
 
     /// Simulates one unit.
@@ -115,20 +134,31 @@ impl<'a> Stage<'a> {
         let (mut loci, mut truth) = (Vec::new(), Vec::new());
         for row in &rows {
             let position = u64::from(unit.sites[row.site].position);
-            let alleles =
-                allele_texts(transmission.layout.alleles[row.site] as usize, &mut dice);
+            let alleles = allele_texts(transmission.layout.alleles[row.site] as usize, &mut dice);
             truth.push(LocusTruth {
                 contig: contig.name.clone(),
                 position,
                 alleles: alleles.clone(),
                 duplicated: unit.sites.get(row.site + 1).is_some_and(|next| next.shadow),
-                copies: transmission.copies.iter().map(|c| c[row.site].clone()).collect(),
+                copies: transmission
+                    .copies
+                    .iter()
+                    .map(|c| c[row.site].clone())
+                    .collect(),
             });
-            loci.push(SimulatedLocus { contig: unit.contig, position, alleles });
+            loci.push(SimulatedLocus {
+                contig: unit.contig,
+                position,
+                alleles,
+            });
         }
         let mut gone = Vec::new();
         for (population, list) in transmission.gone.iter().enumerate() {
-            let first = self.history.strata.iter().position(|s| s.population == population);
+            let first = self
+                .history
+                .strata
+                .iter()
+                .position(|s| s.population == population);
             for lost in list.iter().filter(|g| !unit.sites[g.locus].shadow) {
                 let Some(first) = first else { continue };
                 let baseline = &transmission.copies[first][lost.locus];
@@ -143,7 +173,12 @@ impl<'a> Stage<'a> {
                 });
             }
         }
-        Outcome { loci, rows, truth, gone }
+        Outcome {
+            loci,
+            rows,
+            truth,
+            gone,
+        }
     }
 
     /// The truth without loci.
@@ -161,8 +196,17 @@ impl<'a> Stage<'a> {
             truth.gone.extend(outcome.gone);
         }
         truth.finish();
-        let History { strata, samples, .. } = self.history;
-        Simulation { contigs: self.genome.contigs, strata, samples, loci, truth, calls }
+        let History {
+            strata, samples, ..
+        } = self.history;
+        Simulation {
+            contigs: self.genome.contigs,
+            strata,
+            samples,
+            loci,
+            truth,
+            calls,
+        }
     }
 }
 
@@ -171,15 +215,21 @@ impl Simulation {
     pub fn genotypes(&self, locus: usize) -> impl Iterator<Item = Option<[u16; 2]>> + '_ {
         let n = self.samples.len();
         let row = &self.calls[locus * n..(locus + 1) * n];
-        row.iter().map(|&[a, b]| ([a, b] != MISSING).then(|| [u16::from(a), u16::from(b)]))
+        row.iter()
+            .map(|&[a, b]| ([a, b] != MISSING).then(|| [u16::from(a), u16::from(b)]))
     }
 
     /// Dosages of a stratum (with one population: of a visit) at its biallelic loci, replicates
     /// left out.
     pub fn dosages(&self, stratum: usize) -> Dosages {
-        let chosen: Vec<usize> = self.strata[stratum].samples.clone().filter(|&s| self.first(s)).collect();
-        let loci: Vec<usize> =
-            (0..self.loci.len()).filter(|&l| self.loci[l].alleles.len() == 2).collect();
+        let chosen: Vec<usize> = self.strata[stratum]
+            .samples
+            .clone()
+            .filter(|&s| self.first(s))
+            .collect();
+        let loci: Vec<usize> = (0..self.loci.len())
+            .filter(|&l| self.loci[l].alleles.len() == 2)
+            .collect();
         let mut values = Vec::with_capacity(loci.len() * chosen.len());
         for &locus in &loci {
             let row = &self.calls[locus * self.samples.len()..];
@@ -188,7 +238,11 @@ impl Simulation {
                 [a, b] => a + b,
             }));
         }
-        Dosages { individuals: chosen.len(), loci, values }
+        Dosages {
+            individuals: chosen.len(),
+            loci,
+            values,
+        }
     }
 
     /// The strata and individuals as the estimators know them, replicates left out.
@@ -231,7 +285,10 @@ impl Simulation {
         }
         let slots = (0..self.samples.len()).filter(|&s| self.first(s)).count();
         locus.genotypes.reset(slots, simulated.alleles.len());
-        let calls = self.genotypes(index).enumerate().filter(|&(s, _)| self.first(s));
+        let calls = self
+            .genotypes(index)
+            .enumerate()
+            .filter(|&(s, _)| self.first(s));
         for (slot, (_, call)) in calls.enumerate() {
             if let Some([a, b]) = call {
                 locus.genotypes.set(slot, a, b);

@@ -152,7 +152,10 @@ impl Truth {
     /// The truth of a history, loci still to be added.
     pub fn new(scenario: &Scenario, seed: u64, history: &History) -> Self {
         let names = |pair: (usize, usize)| {
-            [history.samples[pair.0].name.clone(), history.samples[pair.1].name.clone()]
+            [
+                history.samples[pair.0].name.clone(),
+                history.samples[pair.1].name.clone(),
+            ]
         };
         let all = || history.samples.iter().enumerate();
         Truth {
@@ -160,12 +163,21 @@ impl Truth {
             format_version: TRUTH_VERSION,
             title: scenario.title.clone(),
             seed,
-            scenario: Scenario { seed, ..scenario.clone() },
-            strata: (0..history.strata.len()).map(|s| stratum(scenario, history, s)).collect(),
+            scenario: Scenario {
+                seed,
+                ..scenario.clone()
+            },
+            strata: (0..history.strata.len())
+                .map(|s| stratum(scenario, history, s))
+                .collect(),
             intervals: intervals(scenario, history),
             generations: generations(scenario, history),
-            recaptures: all().filter_map(|(i, s)| Some(names((s.recapture_of?, i)))).collect(),
-            replicates: all().filter_map(|(i, s)| Some(names((s.replicate_of?, i)))).collect(),
+            recaptures: all()
+                .filter_map(|(i, s)| Some(names((s.recapture_of?, i))))
+                .collect(),
+            replicates: all()
+                .filter_map(|(i, s)| Some(names((s.replicate_of?, i))))
+                .collect(),
             full_siblings: full_siblings(history),
             loci: Vec::new(),
             gone: Vec::new(),
@@ -175,7 +187,10 @@ impl Truth {
     /// Fills in what follows from all loci.
     pub fn finish(&mut self) {
         for (s, stratum) in self.strata.iter_mut().enumerate() {
-            let values = self.loci.iter().filter_map(|l| heterozygosity(&l.copies[s]));
+            let values = self
+                .loci
+                .iter()
+                .filter_map(|l| heterozygosity(&l.copies[s]));
             let (sum, count) = values.fold((0.0, 0u32), |(sum, n), h| (sum + h, n + 1));
             stratum.expected_heterozygosity = (count > 0).then(|| sum / f64::from(count));
         }
@@ -185,7 +200,10 @@ impl Truth {
 /// Chance that two different gene copies differ; `None` with fewer than two.
 fn heterozygosity(copies: &[u32]) -> Option<f64> {
     let n: f64 = copies.iter().map(|&c| f64::from(c)).sum();
-    let same: f64 = copies.iter().map(|&c| f64::from(c) * (f64::from(c) - 1.0)).sum();
+    let same: f64 = copies
+        .iter()
+        .map(|&c| f64::from(c) * (f64::from(c) - 1.0))
+        .sum();
     (n > 1.0).then(|| 1.0 - same / (n * (n - 1.0)))
 }
 
@@ -199,7 +217,11 @@ pub fn visit_label(scenario: &Scenario, visit: usize) -> String {
 /// Name of a stratum: `population@visit`.
 pub fn stratum_name(scenario: &Scenario, history: &History, stratum: usize) -> String {
     let s = &history.strata[stratum];
-    format!("{}@{}", scenario.population[s.population].name, visit_label(scenario, s.visit))
+    format!(
+        "{}@{}",
+        scenario.population[s.population].name,
+        visit_label(scenario, s.visit)
+    )
 }
 
 fn stratum(scenario: &Scenario, history: &History, index: usize) -> StratumTruth {
@@ -224,13 +246,21 @@ fn intervals(scenario: &Scenario, history: &History) -> Vec<IntervalTruth> {
     let mut start = 0;
     while start < strata.len() {
         let population = strata[start].population;
-        let count = strata[start..].iter().take_while(|s| s.population == population).count();
-        let mut pairs: Vec<(usize, usize)> =
-            (start + 1..start + count).map(|later| (later - 1, later)).collect();
+        let count = strata[start..]
+            .iter()
+            .take_while(|s| s.population == population)
+            .count();
+        let mut pairs: Vec<(usize, usize)> = (start + 1..start + count)
+            .map(|later| (later - 1, later))
+            .collect();
         if count > 2 {
             pairs.push((start, start + count - 1));
         }
-        intervals.extend(pairs.into_iter().map(|pair| interval(scenario, history, pair)));
+        intervals.extend(
+            pairs
+                .into_iter()
+                .map(|pair| interval(scenario, history, pair)),
+        );
         start += count;
     }
     intervals
@@ -238,7 +268,10 @@ fn intervals(scenario: &Scenario, history: &History) -> Vec<IntervalTruth> {
 
 fn interval(scenario: &Scenario, history: &History, (from, to): (usize, usize)) -> IntervalTruth {
     let population = history.strata[from].population;
-    let (first, last) = (history.strata[from].generation, history.strata[to].generation);
+    let (first, last) = (
+        history.strata[from].generation,
+        history.strata[to].generation,
+    );
     let steps: Vec<Option<SameParent>> = (first..last)
         .map(|g| history.generations[history.index(g)].same_parent[population])
         .collect();
@@ -254,7 +287,10 @@ fn interval(scenario: &Scenario, history: &History, (from, to): (usize, usize)) 
 
 fn drift(chances: Option<Vec<f64>>) -> Drift {
     let Some(chances) = chances.filter(|c| !c.is_empty()) else {
-        return Drift { effective_size: None, heterozygosity_kept: None };
+        return Drift {
+            effective_size: None,
+            heterozygosity_kept: None,
+        };
     };
     let sum: f64 = chances.iter().sum();
     Drift {
@@ -287,7 +323,10 @@ fn full_siblings(history: &History) -> Vec<Vec<String>> {
     let mut families: std::collections::BTreeMap<(usize, u32), Vec<String>> = Default::default();
     for sample in history.samples.iter().filter(|s| s.replicate_of.is_none()) {
         if let Some(family) = sample.family {
-            families.entry((sample.stratum, family)).or_default().push(sample.name.clone());
+            families
+                .entry((sample.stratum, family))
+                .or_default()
+                .push(sample.name.clone());
         }
     }
     families.into_values().filter(|f| f.len() > 1).collect()

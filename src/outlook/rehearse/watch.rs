@@ -45,11 +45,20 @@ impl Watch {
             let span = spans[stratum.population].get_or_insert((index, index));
             *span = (span.0.min(index), span.1.max(index));
         }
-        let size = (0..layout.blocks()).map(|b| layout.most_alleles(b) as usize).sum();
-        let nothing =
-            Missing { baseline: vec![0; size], absent: vec![0; size], since: BTreeMap::new() };
+        let size = (0..layout.blocks())
+            .map(|b| layout.most_alleles(b) as usize)
+            .sum();
+        let nothing = Missing {
+            baseline: vec![0; size],
+            absent: vec![0; size],
+            since: BTreeMap::new(),
+        };
         let populations = vec![nothing; spans.len()];
-        Watch { spans, settling: history.settling, populations }
+        Watch {
+            spans,
+            settling: history.settling,
+            populations,
+        }
     }
 
     /// Looks at the adults of the generation at `index` of the history.
@@ -61,7 +70,9 @@ impl Watch {
         adults: &Haplotypes,
     ) {
         for (population, missing) in self.populations.iter_mut().enumerate() {
-            let Some((first, last)) = self.spans[population] else { continue };
+            let Some((first, last)) = self.spans[population] else {
+                continue;
+            };
             if !(first..=last).contains(&index) {
                 continue;
             }
@@ -81,7 +92,12 @@ impl Watch {
                     if index == first {
                         missing.baseline[place] = present;
                     }
-                    missing.note(place, (block, code), present, (index - self.settling) as u32);
+                    missing.note(
+                        place,
+                        (block, code),
+                        present,
+                        (index - self.settling) as u32,
+                    );
                     place += 1;
                 }
             }
@@ -92,7 +108,12 @@ impl Watch {
     pub fn finish(self) -> Vec<Vec<Gone>> {
         let list = |missing: Missing| {
             let gone = missing.since.into_iter();
-            gone.map(|((locus, allele), generation)| Gone { locus, allele, generation }).collect()
+            gone.map(|((locus, allele), generation)| Gone {
+                locus,
+                allele,
+                generation,
+            })
+            .collect()
         };
         self.populations.into_iter().map(list).collect()
     }

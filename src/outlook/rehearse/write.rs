@@ -89,7 +89,8 @@ pub fn rehearse(scenario: &Path, out: &Path, seed: Option<u64>, threads: usize) 
         files: files.iter().map(|(_, path)| path.clone()).collect(),
     };
     for (file, path) in files {
-        file.persist(&path).map_err(|e| Error::io(&path, "rename into place", e.error))?;
+        file.persist(&path)
+            .map_err(|e| Error::io(&path, "rename into place", e.error))?;
     }
     Ok(summary)
 }
@@ -103,7 +104,9 @@ fn temporary(path: &Path) -> Result<NamedTempFile> {
     let permissions = std::os::unix::fs::PermissionsExt::from_mode(0o666);
     #[cfg(unix)]
     builder.permissions(permissions);
-    builder.tempfile_in(directory).map_err(|e| Error::io(path, "create", e))
+    builder
+        .tempfile_in(directory)
+        .map_err(|e| Error::io(path, "create", e))
 }
 
 /// One record, formatted.
@@ -128,12 +131,17 @@ impl CallsFile {
             .map_err(|e| Error::io(path, "write", e))?;
         let mut indexer = tabix::index::Indexer::default();
         indexer.set_header(IndexHeader::vcf().build());
-        Ok(CallsFile { path: path.into(), writer, indexer })
+        Ok(CallsFile {
+            path: path.into(),
+            writer,
+            indexer,
+        })
     }
 
     fn write(&mut self, lines: &[Line]) -> Result<()> {
         for line in lines {
-            self.write_line(line).map_err(|e| Error::io(&self.path, "write", e))?;
+            self.write_line(line)
+                .map_err(|e| Error::io(&self.path, "write", e))?;
         }
         Ok(())
     }
@@ -143,19 +151,25 @@ impl CallsFile {
         self.writer.write_all(&line.text)?;
         let chunk = Chunk::new(start, self.writer.virtual_position());
         let place = |n: usize| Position::try_from(n).map_err(std::io::Error::other);
-        self.indexer.add_record(&line.contig, place(line.start)?, place(line.end)?, chunk)
+        self.indexer
+            .add_record(&line.contig, place(line.start)?, place(line.end)?, chunk)
     }
 
     fn finish(self) -> Result<(NamedTempFile, NamedTempFile)> {
         let path = self.path;
-        let calls = self.writer.finish().map_err(|e| Error::io(&path, "write", e))?;
+        let calls = self
+            .writer
+            .finish()
+            .map_err(|e| Error::io(&path, "write", e))?;
         let index_path = path.with_extension("gz.tbi");
         let mut index = tabix::io::Writer::new(temporary(&index_path)?);
         index
             .write_index(&self.indexer.build())
             .map_err(|e| Error::io(&index_path, "write", e))?;
-        let index =
-            index.into_inner().finish().map_err(|e| Error::io(&index_path, "write", e))?;
+        let index = index
+            .into_inner()
+            .finish()
+            .map_err(|e| Error::io(&index_path, "write", e))?;
         Ok((calls, index))
     }
 }
@@ -163,7 +177,10 @@ impl CallsFile {
 fn header(stage: &Stage) -> String {
     let mut text = String::from("##fileformat=VCFv4.3\n##source=genewane rehearse\n");
     text.push_str("##FILTER=<ID=PASS,Description=\"All filters passed\">\n");
-    for Contig { name, length_bp, .. } in &stage.genome.contigs {
+    for Contig {
+        name, length_bp, ..
+    } in &stage.genome.contigs
+    {
         text.push_str(&format!("##contig=<ID={name},length={length_bp}>\n"));
     }
     text.push_str("##FORMAT=<ID=GT,Number=1,Type=String,Description=\"Genotype\">\n");
@@ -191,7 +208,12 @@ fn format_unit(stage: &Stage, outcome: &Outcome) -> Vec<Line> {
         let start = locus.position as usize;
         let end = start + locus.alleles[0].len() - 1;
         let text = format_record(&contig, locus, row, genotyping);
-        Line { contig, start, end, text }
+        Line {
+            contig,
+            start,
+            end,
+            text,
+        }
     });
     lines.collect()
 }
@@ -203,9 +225,11 @@ fn format_record(
     genotyping: &Genotyping,
 ) -> Vec<u8> {
     let (reference, alternates) = (&locus.alleles[0], locus.alleles[1..].join(","));
-    let mut text =
-        format!("{contig}\t{}\t.\t{reference}\t{alternates}\t.\tPASS\t.\tGT", locus.position)
-            .into_bytes();
+    let mut text = format!(
+        "{contig}\t{}\t.\t{reference}\t{alternates}\t.\tPASS\t.\tGT",
+        locus.position
+    )
+    .into_bytes();
     for field in &genotyping.fields {
         text.extend_from_slice(format!(":{field:?}").as_bytes());
     }
@@ -271,7 +295,8 @@ fn write_sheet(stage: &Stage, out: &Path) -> Result<(NamedTempFile, PathBuf)> {
     let path = out.join("samples.tsv");
     let text = sheet(stage.scenario, stage);
     let mut file = temporary(&path)?;
-    file.write_all(text.as_bytes()).map_err(|e| Error::io(&path, "write", e))?;
+    file.write_all(text.as_bytes())
+        .map_err(|e| Error::io(&path, "write", e))?;
     Ok((file, path))
 }
 
@@ -297,7 +322,9 @@ fn sheet(scenario: &Scenario, stage: &Stage) -> String {
             sample.sex.map_or(BLANK, word).to_string()
         }));
         row.extend(with_replicates.then(|| {
-            sample.replicate_of.map_or(BLANK.to_string(), |s| samples[s].name.clone())
+            sample
+                .replicate_of
+                .map_or(BLANK.to_string(), |s| samples[s].name.clone())
         }));
         text.push_str(&(row.join("\t") + "\n"));
     }
@@ -311,6 +338,8 @@ fn write_truth(truth: &Truth, out: &Path) -> Result<(NamedTempFile, PathBuf)> {
         .map_err(std::io::Error::from)
         .and_then(|()| file.write_all(b"\n"))
         .map_err(|e| Error::io(&path, "write", e))?;
-    let file = file.into_inner().map_err(|e| Error::io(&path, "write", e.into_error()))?;
+    let file = file
+        .into_inner()
+        .map_err(|e| Error::io(&path, "write", e.into_error()))?;
     Ok((file, path))
 }
