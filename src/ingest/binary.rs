@@ -172,7 +172,7 @@ impl GenotypeBlock<'_> {
         dosages.clear();
         dosages.resize(self.values.len() / 2, 0);
         let mut good = true;
-        for (out, cell) in dosages.iter_mut().zip(self.values.chunks_exact(2)) {
+        for (out, cell) in dosages.iter_mut().zip(self.values.as_chunks::<2>().0) {
             // Twice the allele plus two, plus one when phased; 0 and 1 are missing.
             let (a, b) = (cell[0] >> 1, cell[1] >> 1);
             let absent = (a | b) == 0;

@@ -1,9 +1,44 @@
 //! One genotype as it was called, and the row of a locus that takes them.
 
-use crate::model::{CallTally, Genotypes, Verdict};
+use crate::model::{CallTally, Genotypes, MISSING_DOSAGE, Verdict};
 
 /// In [`crate::ingest::Selection::slot_of_column`]: this sample is not in use.
 pub(super) const UNUSED: u32 = u32::MAX;
+
+/// Columns in use that stand side by side, and whose slots do so too.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) struct Run {
+    /// First column.
+    pub column: usize,
+    /// Its slot.
+    pub slot: usize,
+    /// Number of columns.
+    pub length: usize,
+}
+
+impl Run {
+    /// The runs of a selection, in column order.
+    pub fn all(slot_of_column: &[u32]) -> Vec<Run> {
+        let mut runs: Vec<Run> = Vec::new();
+        for (column, &slot) in slot_of_column.iter().enumerate() {
+            let slot = match slot {
+                UNUSED => continue,
+                slot => slot as usize,
+            };
+            match runs.last_mut() {
+                Some(run) if (run.column + run.length, run.slot + run.length) == (column, slot) => {
+                    run.length += 1;
+                }
+                _ => runs.push(Run {
+                    column,
+                    slot,
+                    length: 1,
+                }),
+            }
+        }
+        runs
+    }
+}
 
 /// What one sample column says.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -129,14 +164,23 @@ impl<'a> Row<'a> {
     }
 
     /// Keeps a whole row of dosages, by column, of a record with two ordinary alleles.
-    pub fn put_dosages(&mut self, by_column: &[u8], used: &[(u32, u32)]) {
+    pub fn put_dosages(&mut self, by_column: &[u8], runs: &[Run]) {
         let dosages = self.genotypes.dosages_mut();
-        for &(column, slot) in used {
-            dosages[slot as usize] = by_column[column as usize];
+        let mut columns = 0;
+        for run in runs {
+            columns += run.length;
+            match run.length {
+                1 => dosages[run.slot] = by_column[run.column],
+                length => dosages[run.slot..run.slot + length]
+                    .copy_from_slice(&by_column[run.column..run.column + length]),
+            }
         }
-        let called = dosages.iter().filter(|&&d| d < 3).count() as u64;
+        let called: u64 = dosages
+            .chunks(BYTE_SUMS)
+            .map(|part| u64::from(called(part)))
+            .sum();
         self.tally.diploid += called;
-        self.tally.missing += used.len() as u64 - called;
+        self.tally.missing += columns as u64 - called;
     }
 
     /// The fate of the record. Where some calls are haploid and others of higher ploidy, the latter
@@ -151,5 +195,61 @@ impl<'a> Row<'a> {
         } else {
             Verdict::NothingCalled
         }
+    }
+}
+
+/// Bytes that can be counted in one byte.
+const BYTE_SUMS: usize = 255;
+
+/// Called genotypes among at most [`BYTE_SUMS`]; adding in single bytes lets sixteen and more be
+/// added at a time.
+fn called(dosages: &[u8]) -> u8 {
+    dosages
+        .iter()
+        .fold(0, |sum, &d| sum.wrapping_add(u8::from(d < MISSING_DOSAGE)))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn counts_called_bytes() {
+        for length in [0, 1, 254, 255, 256, 1000] {
+            let dosages: Vec<u8> = (0..length).map(|i| (i % 7 % 4) as u8).collect();
+            let mut genotypes = Genotypes::default();
+            genotypes.reset(length, 2);
+            let mut row = Row::new(&mut genotypes, &[]);
+            row.put_dosages(
+                &dosages,
+                &[Run {
+                    column: 0,
+                    slot: 0,
+                    length,
+                }],
+            );
+            let plain = dosages.iter().filter(|&&d| d != 3).count() as u64;
+            assert_eq!(
+                (row.tally.diploid, row.tally.missing),
+                (plain, length as u64 - plain)
+            );
+        }
+    }
+
+    #[test]
+    fn runs_of_columns() {
+        let run = |column, slot, length| Run {
+            column,
+            slot,
+            length,
+        };
+        let of = |slots: &[u32]| Run::all(slots);
+        assert_eq!(of(&[0, 1, 2]), [run(0, 0, 3)]);
+        assert_eq!(of(&[2, UNUSED, 0, 1]), [run(0, 2, 1), run(2, 0, 2)]);
+        assert_eq!(
+            of(&[0, UNUSED, 1, 3]),
+            [run(0, 0, 1), run(2, 1, 1), run(3, 3, 1)]
+        );
+        assert_eq!(of(&[UNUSED]), []);
     }
 }

@@ -6,7 +6,7 @@ use std::sync::Arc;
 use super::alleles::{self, is_contig_name};
 use super::batch::RecordBatch;
 use super::binary::{GenotypeBlock, Site};
-use super::call::{AlleleKind, Flaw, Row, UNUSED};
+use super::call::{AlleleKind, Flaw, Row, Run};
 use super::fault::{Fault, WRITE_AGAIN, quote};
 use super::header::CallsHeader;
 use super::limits::MAX_ALLELES;
@@ -47,8 +47,7 @@ pub struct Decoder {
     header: Arc<CallsHeader>,
     genotype_key: Option<u32>,
     selection: Selection,
-    /// Columns in use with their slots.
-    used: Vec<(u32, u32)>,
+    runs: Vec<Run>,
     tally: CallTally,
     remarks: Remarks,
     contig: Contig,
@@ -77,22 +76,15 @@ impl Decoder {
             header.samples.len(),
             "one entry a column"
         );
-        let used: Vec<(u32, u32)> = (0u32..)
-            .zip(&selection.slot_of_column)
-            .filter(|&(_, &slot)| slot != UNUSED)
-            .map(|(column, &slot)| (column, slot))
-            .collect();
-        assert!(
-            used.iter()
-                .all(|&(_, slot)| (slot as usize) < selection.slots),
-            "slots in range"
-        );
+        let runs = Run::all(&selection.slot_of_column);
+        let fits = |run: &Run| run.slot + run.length <= selection.slots;
+        assert!(runs.iter().all(fits), "slots in range");
         Decoder {
             path: reader.path().into(),
             genotype_key: header.keys.number("GT"),
             header,
             selection,
-            used,
+            runs,
             tally: CallTally::default(),
             remarks: Remarks::default(),
             contig: Contig::default(),
@@ -230,7 +222,7 @@ impl Decoder {
         let mut row = Row::new(&mut locus.genotypes, &self.kinds);
         let scanned = match values {
             _ if packed => {
-                row.put_dosages(&self.dosages, &self.used);
+                row.put_dosages(&self.dosages, &self.runs);
                 Ok(())
             }
             Values::Text { samples, key, keys } => {

@@ -149,14 +149,13 @@ pub(super) fn packed_row(samples: &[u8], columns: usize, dosages: &mut Vec<u8>) 
     if samples.len() + 1 != 4 * columns {
         return false;
     }
-    let (head, tail) = samples.split_at(4 * (columns - 1));
+    let (cells, tail) = samples.as_chunks::<4>();
     let &[a, sign, b] = tail else { return false };
     dosages.clear();
     dosages.resize(columns, 0);
     let mut good = true;
-    for (out, cell) in dosages.iter_mut().zip(head.chunks_exact(4)) {
-        let word = u32::from_le_bytes([cell[0], cell[1], cell[2], cell[3]]);
-        let (dosage, fine) = packed_cell(word);
+    for (out, cell) in dosages.iter_mut().zip(cells) {
+        let (dosage, fine) = packed_cell(u32::from_le_bytes(*cell));
         *out = dosage as u8;
         good &= fine;
     }

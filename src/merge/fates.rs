@@ -162,7 +162,7 @@ impl Fates {
 }
 
 /// The number itself if small, else the middle of its step of at most 1/32 of its size.
-fn rounded(n: u32) -> u32 {
+pub(super) fn rounded(n: u32) -> u32 {
     if n <= EXACT_UP_TO {
         return n;
     }

@@ -29,6 +29,7 @@
 //! loci pass, at most 7 and in practice 3. Independent of the number of loci.
 
 mod batch;
+mod pairs;
 mod sums;
 #[cfg(test)]
 mod tests;
@@ -40,9 +41,11 @@ use std::ops::Range;
 use crate::locus::Counts;
 use crate::model::Genotypes;
 
-use batch::Workbench;
-use sums::ContigSums;
-pub use sums::{ContigPairs, PairSums};
+use batch::{
+    LocusWeights, Product, TERM_BITS, TypedRow, VECTOR_BITS, WEIGHT_BITS, Workbench, power_of_two,
+};
+pub use pairs::{ContigPairs, PairSums};
+use sums::{BinSums, ContigSums, MissingSums, Triangle, TypedTally};
 
 /// The most individuals of one stratum for which matrices are kept: beyond, time and memory grow
 /// with the square while the precision gained is small beside that of the loci.
@@ -310,7 +313,7 @@ impl LocusRows<'_> {
 
 /// The sets of alleles of a locus that pass the cutoffs. Cutoffs with the same set share one entry,
 /// so common loci are added once; a mask of cutoff bits says which.
-pub(crate) struct AlleleSets {
+struct AlleleSets {
     masks: [u8; 3],
     ends: [usize; 3],
     alleles: Vec<u16>,
@@ -318,22 +321,14 @@ pub(crate) struct AlleleSets {
 
 impl AlleleSets {
     /// The sets of a locus; empty sets are left out.
-    pub(crate) fn of(counts: &Counts) -> Self {
+    fn of(counts: &Counts) -> Self {
         let mut sets = AlleleSets {
             masks: [0; 3],
             ends: [0; 3],
             alleles: Vec::new(),
         };
-        let seen = counts.alleles_seen();
         for (i, cutoff) in FrequencyCutoff::ALL.into_iter().enumerate() {
-            let start = sets.alleles.len();
-            sets.alleles.extend(kept_alleles(counts, cutoff));
-            let kept = sets.alleles.len() - start;
-            if seen == 2 && kept == 2 {
-                sets.alleles.truncate(start + 1);
-            } else if kept < 2 {
-                sets.alleles.truncate(start);
-            }
+            push_row_alleles(counts, cutoff, &mut sets.alleles);
             sets.ends[i] = sets.alleles.len();
             sets.masks[i] = cutoff.bit();
             sets.share_with_earlier(i);
@@ -361,25 +356,32 @@ impl AlleleSets {
     }
 
     /// Mask of cutoffs and allele codes of every set that is not empty.
-    pub(crate) fn sets(&self) -> impl Iterator<Item = (u8, &[u16])> {
+    fn sets(&self) -> impl Iterator<Item = (u8, &[u16])> {
         (0..3)
             .map(|i| (self.masks[i], &self.alleles[self.range(i)]))
             .filter(|(mask, alleles)| *mask != 0 && !alleles.is_empty())
     }
 }
 
-/// Codes of the alleles that pass a cutoff and vary: an allele that all typed individuals carry
-/// once correlates with nothing.
-pub(crate) fn kept_alleles(counts: &Counts, cutoff: FrequencyCutoff) -> impl Iterator<Item = u16> {
-    (0..counts.copies.len() as u16).filter(move |&a| {
+/// Appends the codes of the alleles that make a row: those that pass the cutoff and vary (an allele
+/// that all typed individuals carry once correlates with nothing), where there are two and more; at
+/// a locus of two alleles one stands for both.
+pub(crate) fn push_row_alleles(counts: &Counts, cutoff: FrequencyCutoff, rows: &mut Vec<u16>) {
+    let start = rows.len();
+    rows.extend((0..counts.copies.len() as u16).filter(|&a| {
         cutoff.keeps(counts.copies[a as usize], counts.gene_copies())
             && squared_length(counts, a) > 0
-    })
+    }));
+    match (counts.alleles_seen(), rows.len() - start) {
+        (_, 0 | 1) => rows.truncate(start),
+        (2, 2) => rows.truncate(start + 1),
+        _ => {}
+    }
 }
 
-/// n x sum over the typed of (n x - sum of x)^2 / n, x copies of the allele: the squared length of
-/// the centred dosages times n, an integer.
-pub(crate) fn squared_length(counts: &Counts, allele: u16) -> u64 {
+/// n sum x^2 - (sum x)^2 over the typed, x copies of the allele: n times the squared length of the
+/// centred dosages, an integer.
+fn squared_length(counts: &Counts, allele: u16) -> u64 {
     let n = u64::from(counts.typed);
     let copies = u64::from(counts.copies[allele as usize]);
     let squares = 2 * copies - u64::from(counts.heterozygous[allele as usize]);

@@ -139,7 +139,9 @@ impl Inputs {
             effective_size,
             effective_size_summary: Vec::new(),
             losses: Vec::new(),
-            at_risk: Vec::new(),
+            at_risk: assemble::at_risk(&findings),
+            carriers: assemble::carriers(&findings),
+            allele_spectra: assemble::allele_spectra(&findings),
             warnings: self.warnings(all),
             cautions: CAUTIONS.iter().map(|&text| text.to_owned()).collect(),
         }

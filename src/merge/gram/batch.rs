@@ -3,8 +3,7 @@
 use ndarray::linalg::general_mat_mul;
 use ndarray::{Array2, ArrayView1, ArrayView2, ArrayViewMut1, Axis, Slice};
 
-use super::sums::{BinSums, ContigSums};
-use super::{LocusRows, squared_length};
+use super::{BinSums, ContigSums, LocusRows, squared_length};
 
 /// Rows of a batch. A million loci of 100 individuals took 1.4 to 2.1 s of one core with 128 rows and
 /// 0.7 to 1.2 s with 256 and with 512 (complete data; shared two-core machine, three runs each).
