@@ -39,7 +39,7 @@ pub fn figure(subjects: &[Subject]) -> Option<Figure> {
              Upright lines are published rules of thumb, not law: 50 against inbreeding in the short \
              term and 500 to keep the power to adapt (Franklin 1980; full lines), 100 and 1000 for the \
              same (Frankham et al. 2014; dashed lines).",
-            numbers::percent(level)
+            numbers::level(level)
         ),
         panels: with_sizes.map(|s| panel(s, &x)).collect(),
         specification: specification::effective_size(&table, &LIMITS),

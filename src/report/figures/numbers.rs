@@ -53,6 +53,11 @@ pub fn percent(share: f64) -> String {
     decimals(value, usize::from(value.abs() < 1.95))
 }
 
+/// A level or rate that was chosen, in percent with all its digits. Without the sign.
+pub fn level(share: f64) -> String {
+    plain((1e6 * share).round() / 1e4)
+}
+
 /// Percents of a value and its interval with the same decimals: `11 % (6 to 16)`.
 pub fn percent_with_interval(value: f64, interval: Option<[f64; 2]>) -> String {
     let smallest = interval
