@@ -29,13 +29,13 @@ use std::fmt::Write as _;
 
 use serde_json::Value;
 
-use drawing::{escaped, length};
+use drawing::length;
 use subject::Subject;
 use table::Table;
 
 use super::wire::Report;
 
-pub use drawing::{is_forbidden, isolated};
+pub use drawing::{escaped, is_forbidden, isolated};
 
 /// Width of a panel in pixels: a phone of 360 with margins.
 pub const PANEL_WIDTH: f64 = 320.0;
