@@ -179,12 +179,15 @@ fn a_sheet_with_a_header_alone() {
 #[test]
 fn all_problems_of_a_sheet_are_told_at_once() {
     let case = Case::new();
+    let spoilt = SHEET.replace("otter_2,Withy,2011", "otter_2,Withy,x");
+    case.sheet(&spoilt.replace("otter_4", "otter_1"));
+    case.fails(2, &["row 3", "row 5", "otter_1"]);
     case.sheet(
         &SHEET
             .replace("otter_3", "stoat_3")
-            .replace("otter_2,Withy,2011", "otter_2,Withy,x"),
+            .replace("otter_2", "stoat_2"),
     );
-    case.fails(2, &["row 3", "row 4", "stoat_3"]);
+    case.fails(2, &["row 3", "stoat_2", "row 4", "stoat_3"]);
 }
 
 // Calls: exit code 1, with the record.
@@ -230,7 +233,7 @@ fn calls_without_any_genotype_field() {
     let case = Case::new();
     let record = "reed_1\t10\t.\tA\tG\t.\t.\t.\tDP\t4\t5\t6\t7";
     case.calls(&calls_of(&[record]));
-    case.fails(1, &["calls.vcf"]);
+    case.fails(1, &["calls.vcf", "no_genotype_field 1"]);
 }
 
 #[test]
@@ -238,6 +241,13 @@ fn empty_calls() {
     let case = Case::new();
     case.calls("");
     case.fails(1, &["calls.vcf"]);
+}
+
+#[test]
+fn calls_with_a_header_alone() {
+    let case = Case::new();
+    case.calls(calls_of(&[]).trim_end_matches('\n'));
+    case.fails(1, &["calls.vcf", "no record"]);
 }
 
 #[test]
@@ -291,6 +301,29 @@ fn block_gzip_that_ends_too_early() {
         std::fs::write(case.path("calls.vcf"), &whole[..length]).expect("a scratch file");
         case.fails(1, &["calls.vcf"]);
     }
+}
+
+// Output: whole or not at all.
+
+#[test]
+fn a_failure_leaves_the_report_of_before_alone() {
+    let case = Case::new();
+    std::fs::write(case.path("report.json"), "the report of last year").expect("a scratch file");
+    case.calls(&calls_of(&[RECORDS[0], "reed_1\t20"]));
+    let report = path_text(&case.path("report.json"));
+    assert_eq!(case.measure(&["-o", &report, "--quiet"]).code, Some(1));
+    let kept = std::fs::read_to_string(case.path("report.json")).expect("it is still there");
+    assert_eq!(kept, "the report of last year");
+    assert_eq!(case.files(), ["calls.vcf", "report.json", "sheet.csv"]);
+}
+
+#[test]
+fn a_folder_that_is_not_there_to_write_into() {
+    let case = Case::new();
+    let report = path_text(&case.path("no_such_folder").join("report.json"));
+    let got = case.measure(&["-o", &report, "--quiet"]);
+    assert_eq!(got.code, Some(1), "{}", got.stderr);
+    assert!(got.stderr.contains("no_such_folder"), "{}", got.stderr);
 }
 
 // Usage: exit code 2.

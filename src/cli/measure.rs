@@ -66,7 +66,7 @@ pub(super) struct Flags {
 
     /// Most lost alleles listed by name in the report [default: 1000]
     ///
-    /// The most certainly lost come first. All are counted, listed or not.
+    /// All are counted, listed or not.
     #[arg(long, value_name = "N", help_heading = "Output")]
     list_losses: Option<u32>,
 
@@ -80,9 +80,9 @@ pub(super) struct Flags {
 
 /// What is known beside the genotypes.
 #[derive(Debug, Clone, Args)]
-#[command(next_help_heading = "Programme (flags hold for every population and win over the file)")]
+#[command(next_help_heading = "Programme")]
 struct ProgrammeFlags {
-    /// Programme file: the settings below, for all populations and for each
+    /// Programme file: the settings below by population; flags hold for all and win over it
     ///
     /// TOML. Keys: baseline, generation_years, census, sampling_plan, chromosomes, breeding_males,
     /// breeding_females, family_sizes, and the table life_history with age_at_maturity,
@@ -112,7 +112,7 @@ struct ProgrammeFlags {
     #[arg(long, value_name = "1|2", value_enum)]
     sampling_plan: Option<Plan>,
 
-    /// Haploid number of chromosomes, for linkage estimates without a map
+    /// Haploid number of chromosomes, to correct linkage estimates for linked loci
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(1..=1000))]
     chromosomes: Option<u32>,
 }

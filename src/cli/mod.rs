@@ -59,8 +59,9 @@ pub struct RehearsePlan {
     version,
     subcommand_required = true,
     arg_required_else_help = true,
+    subcommand_value_name = "COMMAND",
     max_term_width = 100,
-    after_long_help = EXIT_CODES,
+    after_long_help = EXIT_STATUS,
     after_help = "'genewane help COMMAND' explains a command with an example."
 )]
 struct Flags {
@@ -68,12 +69,11 @@ struct Flags {
     command: Command,
 }
 
-const EXIT_CODES: &str = "\
-Exit codes:
+const EXIT_STATUS: &str = "\
+Exit status:
   0  done
   1  the work failed: a file that cannot be read, written or trusted
-  2  wrong usage, or an input sheet or settings file with problems
-  3  a verdict found a breach";
+  2  wrong usage, or an input sheet or settings file with problems";
 
 #[derive(Subcommand)]
 enum Command {

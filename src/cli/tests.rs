@@ -204,3 +204,23 @@ fn examples_of_the_help_are_accepted() {
     }
     assert!(seen >= 5, "{seen}");
 }
+
+/// The defaults that the help states are those of the plan.
+#[test]
+fn stated_defaults_are_the_defaults_of_the_plan() {
+    use crate::model::{
+        DEFAULT_LIST_LOSSES, DEFAULT_MIN_CALL_RATE, DEFAULT_SAMPLING_PLAN, SamplingPlan,
+    };
+    let help = parse("help measure").unwrap_err().to_string();
+    let plan = match DEFAULT_SAMPLING_PLAN {
+        SamplingPlan::One => "1",
+        SamplingPlan::Two => "2",
+    };
+    for stated in [
+        format!("in the report [default: {DEFAULT_LIST_LOSSES}]"),
+        format!("to count [default: {DEFAULT_MIN_CALL_RATE}, every typed locus]"),
+        format!("were taken [default: {plan}]"),
+    ] {
+        assert!(help.contains(&stated), "{stated}\n{help}");
+    }
+}

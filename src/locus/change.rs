@@ -35,8 +35,18 @@ pub fn temporal_terms(first: &Counts, later: &Counts) -> Option<TemporalTerms> {
     if first.typed == 0 || later.typed == 0 {
         return None;
     }
-    let per_first = 1.0 / f64::from(first.gene_copies());
-    let per_later = 1.0 / f64::from(later.gene_copies());
+    // Divided by, not multiplied as a reciprocal: a fixed allele has exactly 1.
+    let (all_first, all_later) = (
+        f64::from(first.gene_copies()),
+        f64::from(later.gene_copies()),
+    );
+    if let (&[_, first_copies], &[_, later_copies]) = (&first.copies[..], &later.copies[..]) {
+        let frequencies = [
+            f64::from(first_copies) / all_first,
+            f64::from(later_copies) / all_later,
+        ];
+        return two_alleles([first.typed, later.typed], frequencies);
+    }
     let mut alleles = 0;
     let (mut fc, mut fk, mut squares, mut spread) = (0.0, 0.0, 0.0, 0.0);
     for (&copies_first, &copies_later) in first.copies.iter().zip(&later.copies) {
@@ -47,8 +57,8 @@ pub fn temporal_terms(first: &Counts, later: &Counts) -> Option<TemporalTerms> {
             return None;
         }
         let (x, y) = (
-            f64::from(copies_first) * per_first,
-            f64::from(copies_later) * per_later,
+            f64::from(copies_first) / all_first,
+            f64::from(copies_later) / all_later,
         );
         let z = 0.5 * (x + y);
         let square = (x - y) * (x - y);
@@ -66,6 +76,24 @@ pub fn temporal_terms(first: &Counts, later: &Counts) -> Option<TemporalTerms> {
         fk: fk / f64::from(alleles - 1),
         fs_numerator: squares,
         fs_denominator: spread,
+    })
+}
+
+/// The terms of two alleles: (x-y)^2, z - xy and z(1-z) are the same for both, so each sum is one
+/// term or twice one.
+fn two_alleles([first, later]: [u32; 2], [x, y]: [f64; 2]) -> Option<TemporalTerms> {
+    let z = 0.5 * (x + y);
+    let spread = z * (1.0 - z);
+    let square = (x - y) * (x - y);
+    // Without spread both samples are fixed for the same allele.
+    (spread > 0.0).then(|| TemporalTerms {
+        alleles: 2,
+        first,
+        later,
+        fc: square / (z - x * y),
+        fk: square / spread,
+        fs_numerator: 2.0 * square,
+        fs_denominator: 2.0 * spread,
     })
 }
 
@@ -108,6 +136,12 @@ mod tests {
 
     #[test]
     fn without_change_to_see_there_are_no_terms() {
+        for n in 1..100 {
+            let (fixed, other) = (Counts::of(2, vec![Some([1, 1]); n]), sample(&[0, 98]));
+            assert_eq!(temporal_terms(&fixed, &other), None);
+            let (fixed, other) = (Counts::of(3, vec![Some([1, 1]); n]), sample(&[0, 98, 0]));
+            assert_eq!(temporal_terms(&fixed, &other), None);
+        }
         let fixed = sample(&[8, 0]);
         assert_eq!(temporal_terms(&fixed, &sample(&[6, 0])), None);
         assert_eq!(temporal_terms(&fixed, &Counts::empty(2)), None);

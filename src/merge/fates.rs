@@ -162,7 +162,7 @@ impl Fates {
 }
 
 /// The number itself if small, else the middle of its step of at most 1/32 of its size.
-fn rounded(n: u32) -> u32 {
+pub(super) fn rounded(n: u32) -> u32 {
     if n <= EXACT_UP_TO {
         return n;
     }
@@ -189,14 +189,9 @@ mod tests {
         let rare = Counts::of(2, [Some([0, 0]), Some([0, 0]), Some([0, 1])]);
         let common = Counts::of(2, [Some([0, 0]), Some([0, 1]), Some([0, 1])]);
         for (position, first) in [(1, &rare), (2, &common), (3, &rare)] {
-            fates.add(
-                &Locus {
-                    position,
-                    ..Locus::default()
-                },
-                first,
-                &second,
-            );
+            let mut locus = Locus::default();
+            locus.position = position;
+            fates.add(&locus, first, &second);
         }
         assert_eq!(
             (fates.alleles(), fates.not_seen(), fates.loci_fixed),

@@ -5,9 +5,11 @@ use std::sync::Arc;
 use super::carriers::Carriers;
 use super::fates::Fates;
 use super::fixed::Terms;
+use super::gram::{GramAbsent, GramStratum};
 use super::histogram::PValueHistogram;
 use super::panel::Panel;
 use super::scheme::{Pair, Scheme};
+use super::spectrum::Spectrum;
 use super::two_way::TwoWay;
 use crate::locus::hardy_weinberg::{HardyWeinbergCache, test_many_alleles};
 use crate::locus::richness::Rarefaction;
@@ -24,7 +26,7 @@ const TABLE_BUDGET: u64 = 20_000;
 const SHUFFLES: u32 = 10_000;
 
 /// Sums of one stratum.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone)]
 pub struct StratumSums {
     /// Diversity.
     pub diversity: TwoWay<StratumTerms>,
@@ -32,6 +34,8 @@ pub struct StratumSums {
     pub typed_genotypes: u64,
     /// Exact Hardy-Weinberg tests of the loci that vary in the stratum.
     pub hardy_weinberg: PValueHistogram,
+    /// What linkage between all pairs of loci follows from, or why it is not kept.
+    pub linkage: Result<GramStratum, GramAbsent>,
 }
 
 /// Sums of one pair of strata.
@@ -53,6 +57,8 @@ pub struct Sums {
     pub pairs: Vec<PairSums>,
     /// By visit of the scheme, then stratum of that visit.
     pub private: Vec<Vec<TwoWay<PrivateTerms>>>,
+    /// Frequency spectra, by latest stratum of the scheme.
+    pub spectra: Vec<Spectrum>,
     /// Alleles in few carriers, by latest stratum of the scheme.
     pub carriers: Vec<Carriers>,
     /// Genotypes at a sample of loci.
@@ -99,6 +105,7 @@ impl Sums {
                 diversity: TwoWay::new(vec![0..range(s).len()], most),
                 typed_genotypes: 0,
                 hardy_weinberg: PValueHistogram::default(),
+                linkage: GramStratum::new(range(s).len()),
             })
             .collect::<Vec<_>>();
         let side_by_side = |members: &[usize]| {
@@ -127,7 +134,7 @@ impl Sums {
                     .collect()
             })
             .collect();
-        let carriers = scheme
+        let carriers: Vec<Carriers> = scheme
             .latest
             .iter()
             .map(|&s| Carriers::new(range(s), scheme.most_listed))
@@ -145,6 +152,7 @@ impl Sums {
             strata,
             pairs,
             private,
+            spectra: vec![Spectrum::default(); carriers.len()],
             carriers,
             panel: Panel::default(),
             typed_records: vec![0; scheme.slots()],
@@ -192,6 +200,10 @@ impl Sums {
             a.diversity.merge(b.diversity);
             a.typed_genotypes += b.typed_genotypes;
             a.hardy_weinberg.merge(&b.hardy_weinberg);
+            // Both sides have the same individuals, so both have matrices or neither has.
+            if let (Ok(a), Ok(b)) = (&mut a.linkage, b.linkage) {
+                a.merge(b);
+            }
         }
         for (a, b) in self.pairs.iter_mut().zip(other.pairs) {
             a.change.merge(b.change);
@@ -203,6 +215,9 @@ impl Sums {
             .flatten()
             .zip(other.private.into_iter().flatten())
         {
+            a.merge(b);
+        }
+        for (a, b) in self.spectra.iter_mut().zip(other.spectra) {
             a.merge(b);
         }
         for (a, b) in self.carriers.iter_mut().zip(other.carriers) {
@@ -268,6 +283,10 @@ impl Sums {
             at.add(&mut sums.diversity, counts, &[s], |c| {
                 stratum_terms(&c[s], rarefaction)
             });
+            if let Ok(linkage) = &mut sums.linkage {
+                let slots = scheme.strata[s].clone();
+                linkage.add(locus.contig_hash, &locus.genotypes, slots, &counts[s]);
+            }
             let test = match counts[s].alleles_seen() {
                 0 | 1 => None,
                 2 => hardy_weinberg
@@ -290,8 +309,16 @@ impl Sums {
                 }
             }
         }
-        for (carriers, &s) in self.carriers.iter_mut().zip(&scheme.latest) {
+        let latest = self
+            .carriers
+            .iter_mut()
+            .zip(&mut self.spectra)
+            .zip(&scheme.latest);
+        for ((carriers, spectrum), &s) in latest {
             carriers.add(locus, &counts[s]);
+            if usable[s] {
+                spectrum.add(&counts[s]);
+            }
         }
         for (members, visit) in self.private.iter_mut().zip(&scheme.visits) {
             if visit.iter().all(|&s| usable[s]) {

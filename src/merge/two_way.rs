@@ -4,7 +4,7 @@ use std::marker::PhantomData;
 use std::ops::Range;
 
 use super::fixed::{BATCH_LOCI, Terms, from_fixed, to_fixed};
-use super::windows::Windows;
+use super::windows::{Blocking, Windows};
 
 /// Sums of the terms `T` over loci: in all, by genome window, and what each individual's absence
 /// would change. Merging is associative and commutative; an empty one is the identity.
@@ -139,6 +139,11 @@ impl<T: Terms> TwoWay<T> {
     /// The sums over all loci.
     pub fn total(&self) -> T {
         read_fixed(self.total.iter().copied())
+    }
+
+    /// The cut of the genome into the blocks of [`TwoWay::blocks`].
+    pub fn blocking(&self) -> Blocking {
+        self.windows.blocking()
     }
 
     /// For each jackknife block, the sums of its own loci and the sums without them.

@@ -77,13 +77,28 @@ impl Windows {
     /// Sums by jackknife block: whole contigs where at least [`ENOUGH_BLOCKS`] carry loci, else the
     /// longest windows of which there are that many, else the finest windows kept.
     pub fn blocks(&self) -> Vec<Vec<i128>> {
+        let mut coarse = self.clone();
+        coarse.rise_to(self.block_level());
+        coarse.sums.into_values().collect()
+    }
+
+    /// The cut of the genome into jackknife blocks that [`Windows::blocks`] uses.
+    pub fn blocking(&self) -> Blocking {
+        let mut coarse = self.clone();
+        coarse.rise_to(self.block_level());
+        let blocks = coarse.sums.into_keys().zip(0..).collect();
+        Blocking {
+            level: self.block_level(),
+            blocks,
+        }
+    }
+
+    fn block_level(&self) -> u32 {
         let mut level = CONTIG_LEVEL.max(self.level);
         while level > self.level && self.count_at(level) < ENOUGH_BLOCKS {
             level -= 1;
         }
-        let mut coarse = self.clone();
-        coarse.rise_to(level);
-        coarse.sums.into_values().collect()
+        level
     }
 
     fn count_at(&self, level: u32) -> usize {
@@ -110,6 +125,22 @@ impl Windows {
         for (key, sums) in std::mem::take(&mut self.sums) {
             add_into(&mut self.sums, lift(key, from, level), sums);
         }
+    }
+}
+
+/// Jackknife blocks by place in the genome.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Blocking {
+    level: u32,
+    blocks: BTreeMap<(u64, u64), u32>,
+}
+
+impl Blocking {
+    /// The block of a place; `None` where no locus came.
+    pub fn block(&self, contig_hash: u64, position: u64) -> Option<u32> {
+        self.blocks
+            .get(&key_at(self.level, contig_hash, position))
+            .copied()
     }
 }
 

@@ -88,13 +88,12 @@ impl PopulationSettings {
 }
 
 impl Programme {
-    /// The programme with values from flags, which win over the common and over each population's.
-    pub fn with_flags(mut self, flags: &PopulationSettings) -> Self {
+    /// Takes every value given as a flag: flags win over the common and over each population's.
+    pub fn overrule(&mut self, flags: &PopulationSettings) {
         self.all.overrule(flags);
         for settings in self.by_population.values_mut() {
             settings.overrule(flags);
         }
-        self
     }
 
     /// All settings of a population: its own, and the common ones where it has none.
@@ -117,7 +116,7 @@ mod tests {
             census: Some(40.0),
             ..Default::default()
         };
-        let programme = Programme {
+        let mut programme = Programme {
             all: PopulationSettings {
                 census: Some(500.0),
                 generation_years: Some(4.0),
@@ -132,7 +131,7 @@ mod tests {
             census: Some(60.0),
             ..Default::default()
         };
-        let programme = programme.with_flags(&flags);
+        programme.overrule(&flags);
         assert_eq!(programme.get("Alder", |s| s.census), Some(60.0));
         assert_eq!(programme.get("Birch", |s| s.census), Some(60.0));
         assert_eq!(programme.get("Alder", |s| s.generation_years), Some(4.0));

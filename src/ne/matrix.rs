@@ -124,45 +124,73 @@ fn four_rows([a, b, c, d]: [&[f64]; 4], packed: &[[f64; 4]]) -> [[f64; 4]; 4] {
 }
 
 /// Solves `matrix * x = right` by elimination with row exchange; `None` when singular.
-pub fn solve(mut matrix: Matrix, mut right: Vec<f64>) -> Option<Vec<f64>> {
-    let n = matrix.rows;
-    if matrix.columns != n || right.len() != n {
+pub fn solve(matrix: Matrix, right: Vec<f64>) -> Option<Vec<f64>> {
+    let right = Matrix {
+        rows: right.len(),
+        columns: 1,
+        data: right,
+    };
+    Some(solve_columns(matrix, right)?.data)
+}
+
+/// Solves `matrix * x = right` for all columns of `right` together; `None` when singular or where
+/// the sizes do not agree.
+pub fn solve_columns(mut matrix: Matrix, mut right: Matrix) -> Option<Matrix> {
+    let (n, width) = (matrix.rows, right.columns);
+    if matrix.columns != n || right.rows != n {
         return None;
     }
     for k in 0..n {
-        let pivot =
-            (k..n).max_by(|&i, &j| matrix.row(i)[k].abs().total_cmp(&matrix.row(j)[k].abs()))?;
-        let size = matrix.row(pivot)[k].abs();
-        if !(size > 0.0 && size.is_finite()) {
+        let size = |i: usize| matrix.data[i * n + k].abs();
+        let pivot = (k..n).max_by(|&i, &j| size(i).total_cmp(&size(j)))?;
+        if !(size(pivot) > 0.0 && size(pivot).is_finite()) {
             return None;
         }
-        if pivot != k {
-            for j in 0..n {
-                matrix.data.swap(k * n + j, pivot * n + j);
-            }
-            right.swap(k, pivot);
-        }
+        swap_rows(&mut matrix, k, pivot);
+        swap_rows(&mut right, k, pivot);
         let (above, below) = matrix.data.split_at_mut((k + 1) * n);
-        let row = &above[k * n..];
-        for (i, other) in below.chunks_exact_mut(n).enumerate() {
+        let (right_above, right_below) = right.data.split_at_mut((k + 1) * width);
+        let (row, right_row) = (&above[k * n..], &right_above[k * width..]);
+        for (other, right_other) in below
+            .chunks_exact_mut(n)
+            .zip(right_below.chunks_exact_mut(width))
+        {
             let factor = other[k] / row[k];
             if factor != 0.0 {
-                for (o, r) in other[k..].iter_mut().zip(&row[k..]) {
-                    *o -= factor * r;
-                }
-                right[k + 1 + i] -= factor * right[k];
+                subtract(&mut other[k..], &row[k..], factor);
+                subtract(right_other, right_row, factor);
             }
         }
     }
     for k in (0..n).rev() {
-        let tail: f64 = matrix.row(k)[k + 1..]
-            .iter()
-            .zip(&right[k + 1..])
-            .map(|(m, x)| m * x)
-            .sum();
-        right[k] = (right[k] - tail) / matrix.row(k)[k];
+        let (above, below) = right.data.split_at_mut((k + 1) * width);
+        let row = &mut above[k * width..];
+        for (factor, solved) in matrix.row(k)[k + 1..].iter().zip(below.chunks_exact(width)) {
+            if *factor != 0.0 {
+                subtract(row, solved, *factor);
+            }
+        }
+        for v in row {
+            *v /= matrix.row(k)[k];
+        }
     }
     Some(right)
+}
+
+fn swap_rows(matrix: &mut Matrix, i: usize, j: usize) {
+    if i != j {
+        for k in 0..matrix.columns {
+            matrix
+                .data
+                .swap(i * matrix.columns + k, j * matrix.columns + k);
+        }
+    }
+}
+
+fn subtract(from: &mut [f64], row: &[f64], factor: f64) {
+    for (f, r) in from.iter_mut().zip(row) {
+        *f -= factor * r;
+    }
 }
 
 #[cfg(test)]

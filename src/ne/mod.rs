@@ -4,6 +4,7 @@ pub mod coalescent;
 pub mod demographic;
 pub mod diffusion;
 pub mod estimate;
+pub mod heterozygote_excess;
 pub mod interval;
 pub mod jacobi;
 pub mod likelihood;

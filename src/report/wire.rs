@@ -38,6 +38,10 @@ pub struct Report {
     pub losses: Vec<Loss>,
     /// Alleles that the latest sample still holds in few copies, with their carriers.
     pub at_risk: Vec<AtRisk>,
+    /// How many individuals each latest sample's scarce alleles hang on, the most first.
+    pub carriers: Vec<Carrier>,
+    /// Frequency spectrum of each latest sample: what a forecast starts from.
+    pub allele_spectra: Vec<AlleleSpectrum>,
     /// What a reader should know before using a number.
     pub warnings: Vec<Warning>,
     /// What holds for every report.
@@ -490,6 +494,37 @@ pub struct AtRisk {
     pub gene_copies: u64,
     /// Carriers by sample name.
     pub carriers: Vec<String>,
+}
+
+/// What one individual of a latest sample stands for.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct Carrier {
+    /// Population name.
+    pub population: String,
+    /// Latest stratum.
+    pub stratum: String,
+    /// Sample name.
+    pub sample: String,
+    /// Alleles that it alone carries among the sampled animals.
+    pub only_carrier: u64,
+    /// Alleles expected to vanish from the sampled animals if it does not breed and every other has
+    /// two offspring.
+    pub would_vanish: f64,
+}
+
+/// Alleles of a latest sample by the copies in which they are held.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct AlleleSpectrum {
+    /// Population name.
+    pub population: String,
+    /// Latest stratum.
+    pub stratum: String,
+    /// Loci, those that vary among all individuals in use and are typed here.
+    pub loci: u64,
+    /// `[copies, gene copies typed, alleles]`, in order; numbers above 64 are rounded by at most 3 %.
+    pub classes: Vec<[u64; 3]>,
 }
 
 /// Something a reader should know.

@@ -4,7 +4,6 @@ use std::collections::BTreeMap;
 use std::path::Path;
 use std::sync::Arc;
 
-use super::order::Places;
 use super::pipeline::{Collected, LocusTable, Source, collect};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
@@ -49,7 +48,7 @@ struct Inputs {
 impl Inputs {
     fn open(plan: &MeasurePlan) -> Result<Inputs> {
         let sheet = read_sheet(&plan.sheet)?;
-        let (programme, programme_file) = match &plan.programme {
+        let (mut programme, programme_file) = match &plan.programme {
             Some(path) => {
                 let read = read_programme(path)?;
                 let file = input_file("programme", path, "TOML", read.bytes, read.digest);
@@ -57,7 +56,7 @@ impl Inputs {
             }
             None => (Programme::default(), None),
         };
-        let programme = programme.with_flags(&plan.flags);
+        programme.overrule(&plan.flags);
         let (sources, matched) = open_calls(plan, &sheet)?;
         let compared =
             comparisons(&matched.strata, &programme).map_err(|problems| Error::Sheet {
@@ -113,6 +112,9 @@ impl Inputs {
         });
         let threads = plan.threads.unwrap_or_else(available_threads);
         let collected = collect(&mut self.sources, &scheme, threads, table, &|_| ())?;
+        if collected.sums.kept == 0 {
+            return Err(nothing_kept(plan, &collected));
+        }
         Ok((self.report(plan, arguments, &collected), file))
     }
 
@@ -137,7 +139,9 @@ impl Inputs {
             effective_size,
             effective_size_summary: Vec::new(),
             losses: Vec::new(),
-            at_risk: Vec::new(),
+            at_risk: assemble::at_risk(&findings),
+            carriers: assemble::carriers(&findings),
+            allele_spectra: assemble::allele_spectra(&findings),
             warnings: self.warnings(all),
             cautions: CAUTIONS.iter().map(|&text| text.to_owned()).collect(),
         }
@@ -226,13 +230,14 @@ impl Inputs {
             .chain(&self.matched.notes)
             .chain(&self.compared.notes);
         let mut warnings: Vec<_> = notes.map(warning).collect();
-        for source in &self.sources {
+        for (source, remarks) in self.sources.iter().zip(&all.remarks) {
             let file = source.reader.path().display().to_string();
-            for text in source.reader.warnings() {
-                warnings.push(warning(&Note::new("calls", file.clone(), text.clone())));
-            }
+            let mut remarks = remarks.clone();
+            remarks.merge(source.reader.remarks());
+            let told = source.reader.warnings().iter().cloned();
+            let told = told.chain(remarks.messages());
+            warnings.extend(told.map(|text| warning(&Note::new("calls", file.clone(), text))));
         }
-        warnings.extend(of_order(&all.places).iter().map(warning));
         warnings
     }
 }
@@ -309,30 +314,6 @@ fn loci(all: &Collected) -> Loci {
     }
 }
 
-/// What the order of the records showed, as notes.
-fn of_order(places: &Places) -> Vec<Note> {
-    let told = [
-        (
-            places.backwards,
-            "unsorted",
-            "record(s) come before the one ahead of them; windows of the genome do not mind, but check how the file was made",
-        ),
-        (
-            places.repeated,
-            "repeated_position",
-            "record(s) stand at the place of the one ahead of them; each counts as a locus: join them, or remove duplicates",
-        ),
-        (
-            places.contigs_again,
-            "contig_again",
-            "time(s) a contig comes back after another; if a part was given twice, every locus in it counts twice",
-        ),
-    ];
-    let told = told.into_iter().filter(|(n, ..)| *n > 0);
-    told.map(|(n, code, text)| Note::new(code, "calls", format!("{n} {text}")))
-        .collect()
-}
-
 fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String) -> InputFile {
     InputFile {
         role: role.to_owned(),
@@ -340,6 +321,29 @@ fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String)
         format: format.to_owned(),
         bytes,
         sha256,
+    }
+}
+
+/// Calls from which nothing can be said are a failure: an empty report would pass for a result.
+fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
+    let records: u64 = all.verdicts.values().sum();
+    let reasons: Vec<String> = all
+        .verdicts
+        .iter()
+        .map(|(verdict, n)| format!("{} {n}", verdict.name()))
+        .collect();
+    let problem = match records {
+        0 => "there is no record".to_owned(),
+        n => format!(
+            "none of the {n} records has a diploid genotype of an individual in use ({})",
+            reasons.join(", ")
+        ),
+    };
+    Error::Calls {
+        path: plan.calls[0].clone(),
+        place: crate::error::Place::End,
+        problem,
+        cure: "give calls with a GT field for the samples of the sheet".to_owned(),
     }
 }
 

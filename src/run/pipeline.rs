@@ -12,9 +12,8 @@ use std::thread;
 
 use crossbeam_channel::{Receiver, Sender, bounded, unbounded};
 
-use super::order::{BatchPlaces, Places};
 use crate::error::Result;
-use crate::ingest::{CallsReader, Decoder, RecordBatch, Selection};
+use crate::ingest::{CallsReader, Decoder, RecordBatch, Remarks, Selection};
 use crate::merge::{LocusView, Scheme, Sums};
 use crate::model::{CallTally, Locus, Verdict};
 
@@ -38,8 +37,8 @@ pub struct Collected {
     pub verdicts: BTreeMap<Verdict, u64>,
     /// Genotypes by what became of them.
     pub tally: CallTally,
-    /// What the order of the records showed.
-    pub places: Places,
+    /// What was remarked on records, by source.
+    pub remarks: Vec<Remarks>,
 }
 
 /// Makes the row of one locus for the per-locus table, appending to the bytes.
@@ -67,10 +66,6 @@ pub fn collect(
     progress: &(dyn Fn(u64) + Sync),
 ) -> Result<Collected> {
     let workers = threads.max(1);
-    let decoders: Vec<Decoder> = sources
-        .iter()
-        .map(|s| Decoder::new(&s.reader, s.selection.clone()))
-        .collect();
     let row = table.as_ref().map(|t| t.row);
     let stop = AtomicBool::new(false);
     let (work_out, work_in) = bounded::<Work>(workers * BATCHES_A_WORKER);
@@ -80,7 +75,9 @@ pub fn collect(
     thread::scope(|scope| {
         let handles: Vec<_> = (0..workers)
             .map(|_| {
-                let mut worker = Worker::new(decoders.clone(), scheme, row);
+                let decoder = |s: &Source| Decoder::new(&s.reader, s.selection.clone());
+                let decoders = sources.iter().map(decoder).collect();
+                let mut worker = Worker::new(decoders, scheme, row);
                 let (work_in, done_out, spent_out) =
                     (work_in.clone(), done_out.clone(), spent_out.clone());
                 scope.spawn(move || {
@@ -110,8 +107,8 @@ pub fn collect(
                     .unwrap_or_else(|panic| std::panic::resume_unwind(panic)),
             );
         }
-        let places = outcome?;
-        Ok(add_up(scheme, parts, places))
+        outcome?;
+        Ok(add_up(scheme, parts))
     })
 }
 
@@ -123,7 +120,8 @@ struct Work {
 
 struct Done {
     index: u64,
-    outcome: Result<(Vec<u8>, BatchPlaces)>,
+    /// Rows of the per-locus table.
+    outcome: Result<Vec<u8>>,
 }
 
 /// Reads batch after batch of source after source, until the end, a failure, or the word to stop.
@@ -173,22 +171,20 @@ fn read_all(
 }
 
 /// Takes results in the order of the file, whatever the order in which they come.
-fn in_file_order(done: Receiver<Done>, table: &mut Option<LocusTable>) -> Result<Places> {
-    let mut places = Places::default();
+fn in_file_order(done: Receiver<Done>, table: &mut Option<LocusTable>) -> Result<()> {
     let mut waiting = BTreeMap::new();
     let mut next = 0;
     for Done { index, outcome } in done {
         waiting.insert(index, outcome);
         while let Some(outcome) = waiting.remove(&next) {
-            let (rows, batch) = outcome?;
-            places.follow(batch);
+            let rows = outcome?;
             if let Some(table) = table {
                 table.out.write_all(&rows).map_err(table.failed)?;
             }
             next += 1;
         }
     }
-    Ok(places)
+    Ok(())
 }
 
 /// One worker: everything it needs to turn batches into sums.
@@ -204,6 +200,7 @@ struct Part {
     sums: Sums,
     verdicts: BTreeMap<Verdict, u64>,
     tally: CallTally,
+    remarks: Vec<Remarks>,
 }
 
 impl<'a> Worker<'a> {
@@ -212,6 +209,7 @@ impl<'a> Worker<'a> {
             sums: Sums::new(Arc::clone(scheme)),
             verdicts: BTreeMap::new(),
             tally: CallTally::default(),
+            remarks: Vec::new(),
         };
         Worker {
             decoders,
@@ -228,14 +226,12 @@ impl<'a> Worker<'a> {
         }
     }
 
-    fn records(&mut self, work: &Work) -> Result<(Vec<u8>, BatchPlaces)> {
+    fn records(&mut self, work: &Work) -> Result<Vec<u8>> {
         let decoder = &mut self.decoders[work.source];
         let mut rows = Vec::new();
-        let mut places = BatchPlaces::default();
         for i in 0..work.batch.len() {
             let verdict = decoder.decode(&work.batch, i, &mut self.locus)?;
             *self.part.verdicts.entry(verdict).or_default() += 1;
-            places.visit(&self.locus);
             if verdict == Verdict::Kept {
                 let view = self.part.sums.add(&self.locus);
                 if let Some(row) = self.row {
@@ -243,30 +239,36 @@ impl<'a> Worker<'a> {
                 }
             }
         }
-        Ok((rows, places))
+        Ok(rows)
     }
 
     fn finish(mut self) -> Part {
         for decoder in &mut self.decoders {
             self.part.tally.merge(&decoder.take_tally());
+            self.part.remarks.push(decoder.take_remarks());
         }
         self.part.sums.flush();
         self.part
     }
 }
 
-fn add_up(scheme: &Arc<Scheme>, parts: Vec<Part>, places: Places) -> Collected {
+fn add_up(scheme: &Arc<Scheme>, parts: Vec<Part>) -> Collected {
     let mut all = Collected {
         sums: Sums::new(Arc::clone(scheme)),
         verdicts: BTreeMap::new(),
         tally: CallTally::default(),
-        places,
+        remarks: Vec::new(),
     };
     for part in parts {
         all.sums.merge(part.sums);
         all.tally.merge(&part.tally);
         for (verdict, n) in part.verdicts {
             *all.verdicts.entry(verdict).or_default() += n;
+        }
+        all.remarks
+            .resize_with(part.remarks.len(), Remarks::default);
+        for (sum, remarks) in all.remarks.iter_mut().zip(&part.remarks) {
+            sum.merge(remarks);
         }
     }
     all.sums.flush();

@@ -24,6 +24,7 @@ pub enum Kernel {
 }
 
 /// A value per locus with slopes along every drift rate: matrices of one row a column of counts.
+#[derive(Clone)]
 struct Jet {
     value: Matrix,
     first: Vec<Option<Matrix>>,
@@ -118,9 +119,6 @@ pub(super) struct Evaluation {
     pub log_likelihood: f64,
     /// Slopes of each column, `stride` numbers a column; empty when not asked for.
     pub slopes: Vec<f64>,
-    /// What the slopes of a column become when an individual of dosage g is taken out of visit v, less
-    /// the slopes with all: at ((column * visits + v) * 3 + g) * stride. Empty when not asked for.
-    pub deletions: Vec<f64>,
     /// Numbers in one set of slopes.
     pub stride: usize,
 }
@@ -132,9 +130,12 @@ pub(super) enum Ask {
     Value,
     /// And the slopes of every column.
     Slopes,
-    /// And those after the deletion of one individual of each dosage from each visit.
-    Deletions,
 }
+
+/// Receives the deletions of one column: what its slopes become when an individual of dosage g is
+/// taken out of visit v, less the slopes with all, at (v * 3 + g) * stride; zeros where nobody of
+/// that dosage can be in that sample.
+pub(super) type DeletionSink<'a> = dyn FnMut(usize, &[f64]) + 'a;
 
 /// All that stays the same while drift rates are tried.
 pub(super) struct Engine {
@@ -228,6 +229,15 @@ impl Engine {
 
     /// Evaluates all columns at the drift rates.
     pub fn evaluate(&self, rates: &[f64], ask: Ask) -> Evaluation {
+        self.pass(rates, ask, None)
+    }
+
+    /// Evaluates all columns with their slopes, and hands on the deletions column by column.
+    pub fn evaluate_deletions(&self, rates: &[f64], sink: &mut DeletionSink<'_>) -> Evaluation {
+        self.pass(rates, Ask::Slopes, Some(sink))
+    }
+
+    fn pass(&self, rates: &[f64], ask: Ask, mut sink: Option<&mut DeletionSink<'_>>) -> Evaluation {
         let drifts = self.drifts(rates);
         let count = self.rates();
         let stride = count + pairs(count);
@@ -236,69 +246,16 @@ impl Engine {
             stride,
             ..Evaluation::default()
         };
-        if ask >= Ask::Slopes {
-            out.slopes.reserve(self.columns.len() * stride);
-        }
         for start in (0..self.columns.len()).step_by(BLOCK) {
-            let block = start..(start + BLOCK).min(self.columns.len());
-            self.evaluate_block(block, &drifts, ask, &mut out);
+            let block = Block {
+                engine: self,
+                start,
+                size: BLOCK.min(self.columns.len() - start),
+                drifts: &drifts,
+            };
+            block.evaluate(ask, &mut out, &mut sink);
         }
         out
-    }
-
-    fn evaluate_block(
-        &self,
-        block: std::ops::Range<usize>,
-        drifts: &[Drift],
-        ask: Ask,
-        out: &mut Evaluation,
-    ) {
-        let (visits, rates, start) = (self.columns.visits, self.rates(), block.start);
-        let size = block.len();
-        let count = |i: usize, v: usize| self.columns.column(start + i)[v];
-        let slopes = ask >= Ask::Slopes;
-        let ones = Matrix::from_fn(size, self.grid.nodes.len(), |_, _| 1.0);
-        // Chance of all samples after visit v, as a function of the frequency at v; newest last.
-        let mut later = vec![Jet::constant(ones, rates)];
-        for v in (1..visits).rev() {
-            let mut f = Jet::constant(Matrix::default(), rates);
-            std::mem::swap(&mut f, later.last_mut().expect("one a visit"));
-            let kept = (ask == Ask::Deletions).then(|| f.duplicate());
-            f.weigh(|i| self.at_grid.get(count(i, v)));
-            let earlier = f.drift(&drifts[v - 1].backward, self.rate_of_gap[v - 1], slopes);
-            if let Some(kept) = kept {
-                *later.last_mut().expect("one a visit") = kept;
-                later.push(earlier);
-            } else {
-                *later.last_mut().expect("one a visit") = earlier;
-            }
-        }
-        let first = later.pop().expect("one a visit");
-        let mut totals = Vec::with_capacity(size);
-        for i in 0..size {
-            let posterior = self.posterior(count(i, 0));
-            let sums = Sums::of(&first, i, &posterior, slopes);
-            out.log_likelihood += self.columns.weights[start + i] * (sums.value + FLOOR).ln();
-            if slopes {
-                totals.push(sums.log_slopes(rates));
-                out.slopes.extend_from_slice(&totals[i]);
-            }
-        }
-        if ask == Ask::Deletions {
-            let base = out.deletions.len();
-            out.deletions
-                .resize(base + size * visits * 3 * out.stride, 0.0);
-            let mut write = |i: usize, v: usize, g: u32, sums: Sums| {
-                let at = base + ((i * visits + v) * 3 + g as usize) * out.stride;
-                let place = &mut out.deletions[at..at + out.stride];
-                for ((o, new), all) in place.iter_mut().zip(sums.log_slopes(rates)).zip(&totals[i])
-                {
-                    *o = new - all;
-                }
-            };
-            self.delete_baseline(size, count, &first, &mut write);
-            self.delete_later(size, count, &later, drifts, &mut write);
-        }
     }
 
     /// Weights of the prior's nodes after a baseline count; they add up to 1.
@@ -317,19 +274,85 @@ impl Engine {
         }
         out
     }
+}
+
+/// A block of columns on its way through one pass.
+struct Block<'a> {
+    engine: &'a Engine,
+    start: usize,
+    size: usize,
+    drifts: &'a [Drift],
+}
+
+impl Block<'_> {
+    fn count(&self, i: usize, visit: usize) -> Count {
+        self.engine.columns.column(self.start + i)[visit]
+    }
+
+    /// The scaled likelihood of the count of column `i` at a later visit, at the grid's nodes.
+    fn likelihood(&self, i: usize, visit: usize) -> &[f64] {
+        self.engine.at_grid.get(self.count(i, visit))
+    }
+
+    fn evaluate(&self, ask: Ask, out: &mut Evaluation, sink: &mut Option<&mut DeletionSink<'_>>) {
+        let slopes = ask == Ask::Slopes;
+        let (first, later) = self.carry_back(slopes, sink.is_some());
+        let rates = self.engine.rates();
+        let base = out.slopes.len();
+        for i in 0..self.size {
+            let posterior = self.engine.posterior(self.count(i, 0));
+            let sums = Sums::of(&first, i, &posterior, slopes);
+            let weight = self.engine.columns.weights[self.start + i];
+            out.log_likelihood += weight * (sums.value + FLOOR).ln();
+            if slopes {
+                out.slopes.extend(sums.log_slopes(rates));
+            }
+        }
+        if let Some(sink) = sink {
+            let size = self.engine.columns.visits * 3 * out.stride;
+            let mut deletions = vec![0.0; self.size * size];
+            let all = &out.slopes[base..];
+            let mut write = |i: usize, visit: usize, g: u32, sums: Sums| {
+                let at = i * size + (visit * 3 + g as usize) * out.stride;
+                let own = &all[i * out.stride..];
+                let place = deletions[at..at + out.stride].iter_mut();
+                for ((o, new), old) in place.zip(sums.log_slopes(rates)).zip(own) {
+                    *o = new - old;
+                }
+            };
+            self.delete_baseline(&first, &mut write);
+            self.delete_later(&later, &mut write);
+            for (i, deletions) in deletions.chunks_exact(size).enumerate() {
+                sink(self.start + i, deletions);
+            }
+        }
+    }
+
+    /// Carries the chance of all later samples back to the baseline. With `keep`, also returns the
+    /// chance of all samples after visit v as a function of the frequency at v, for the newest visit
+    /// first and down to visit 1.
+    fn carry_back(&self, slopes: bool, keep: bool) -> (Jet, Vec<Jet>) {
+        let ones = Matrix::from_fn(self.size, self.engine.grid.nodes.len(), |_, _| 1.0);
+        let mut function = Jet::constant(ones, self.engine.rates());
+        let mut kept = Vec::new();
+        for visit in (1..self.engine.columns.visits).rev() {
+            if keep {
+                kept.push(function.clone());
+            }
+            function.weigh(|i| self.likelihood(i, visit));
+            let rate = self.engine.rate_of_gap[visit - 1];
+            function = function.drift(&self.drifts[visit - 1].backward, rate, slopes);
+        }
+        (function, kept)
+    }
 
     /// Taking one out of the baseline changes the posterior only.
-    fn delete_baseline(
-        &self,
-        size: usize,
-        count: impl Fn(usize, usize) -> Count,
-        first: &Jet,
-        write: &mut impl FnMut(usize, usize, u32, Sums),
-    ) {
-        for i in 0..size {
+    fn delete_baseline(&self, first: &Jet, write: &mut impl FnMut(usize, usize, u32, Sums)) {
+        for i in 0..self.size {
             for g in 0..3 {
-                if let Some(less) = without(count(i, 0), g) {
-                    write(i, 0, g, Sums::of(first, i, &self.posterior(less), true));
+                if let Some(less) = without(self.count(i, 0), g) {
+                    let posterior = self.engine.posterior(less);
+                    write(i, 0, g, Sums::of(first, i, &posterior, true));
                 }
             }
         }
@@ -337,47 +360,33 @@ impl Engine {
 
     /// Taking one out of a later visit changes its likelihood only: what comes before (a measure,
     /// carried forth) and after (a function, carried back) stay.
-    fn delete_later(
-        &self,
-        size: usize,
-        count: impl Fn(usize, usize) -> Count,
-        later: &[Jet],
-        drifts: &[Drift],
-        write: &mut impl FnMut(usize, usize, u32, Sums),
-    ) {
-        let rates = self.rates();
-        let mut measure = Jet::constant(Matrix::zeros(size, self.prior.nodes.len()), rates);
-        for i in 0..size {
-            measure
-                .value
+    fn delete_later(&self, later: &[Jet], write: &mut impl FnMut(usize, usize, u32, Sums)) {
+        let (engine, visits) = (self.engine, self.engine.columns.visits);
+        let mut start = Matrix::zeros(self.size, engine.prior.nodes.len());
+        for i in 0..self.size {
+            start
                 .row_mut(i)
-                .copy_from_slice(&self.posterior(count(i, 0)));
+                .copy_from_slice(&engine.posterior(self.count(i, 0)));
         }
-        for v in 1..self.columns.visits {
-            measure = measure.drift(&drifts[v - 1].forward, self.rate_of_gap[v - 1], true);
-            let after = &later[self.columns.visits - 1 - v];
-            let product = measure.times(after);
-            for i in 0..size {
+        let mut measure = Jet::constant(start, engine.rates());
+        for visit in 1..visits {
+            let rate = engine.rate_of_gap[visit - 1];
+            measure = measure.drift(&self.drifts[visit - 1].forward, rate, true);
+            let product = measure.times(&later[visits - 1 - visit]);
+            for i in 0..self.size {
                 for g in 0..3 {
-                    if let Some(less) = without(count(i, v), g) {
-                        write(i, v, g, Sums::of(&product, i, self.at_grid.get(less), true));
+                    if let Some(less) = without(self.count(i, visit), g) {
+                        let likelihood = engine.at_grid.get(less);
+                        write(i, visit, g, Sums::of(&product, i, likelihood, true));
                     }
                 }
             }
-            measure.weigh(|i| self.at_grid.get(count(i, v)));
+            measure.weigh(|i| self.likelihood(i, visit));
         }
     }
 }
 
 impl Jet {
-    fn duplicate(&self) -> Jet {
-        Jet {
-            value: self.value.clone(),
-            first: self.first.clone(),
-            second: self.second.clone(),
-        }
-    }
-
     /// Product, element by element, with the product rule for the slopes.
     fn times(&self, other: &Jet) -> Jet {
         let rates = self.first.len();

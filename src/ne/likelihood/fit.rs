@@ -27,8 +27,8 @@ const MOST_STEPS: usize = 60;
 pub struct Fit {
     /// Drift rates u = 1/(2Ne) that make the likelihood largest, each from 0 (no drift) to 0.5.
     pub rates: Vec<f64>,
-    /// The same, stepped across 0 where the likelihood still falls there: may be negative, and is
-    /// then unbiased where a rate cut at 0 would not be.
+    /// The same, moved on by one Newton step where a rate is held at 0: may be negative, and is then
+    /// nearly unbiased where rates cut at 0 would not be.
     pub signed_rates: Vec<f64>,
     /// Logarithm of P(later counts | baseline counts) at [`Fit::rates`].
     pub log_likelihood: f64,
@@ -291,9 +291,7 @@ fn finish(engine: &Engine, rates: Vec<f64>, last: Evaluation) -> Result<(Fit, Ev
     if rates.iter().any(|&u| u <= 0.0) {
         let step = solve(information.clone(), score.clone()).ok_or(NoFit::Uninformative)?;
         for (u, s) in signed_rates.iter_mut().zip(step) {
-            if *u <= 0.0 {
-                *u += s;
-            }
+            *u += s;
         }
     }
     let rows = engine.columns.of_row.iter().flatten().count();

@@ -14,11 +14,13 @@ mod change;
 mod columns;
 mod engine;
 mod fit;
+mod two_way;
 
 pub use change::{SizeChange, size_change};
 pub use columns::CountPanel;
 pub use engine::Kernel;
 pub use fit::{Fit, fit_by_interval, fit_constant, profile};
+pub use two_way::{DosagePanel, DriftInterval, TwoWay, two_way, two_way_by_interval};
 
 /// Beta(a, b): what is believed of an allele's frequency before any count.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -46,6 +48,9 @@ pub enum NoFit {
     /// No locus passes the baseline frequency limit and is typed again later.
     #[error("no locus is variable enough at the baseline and typed again later")]
     NoLoci,
+    /// All rows lie in one block: their variance is unknown.
+    #[error("all loci lie in one block of the genome")]
+    OneBlock,
     /// The prior's shapes are not positive numbers.
     #[error("the prior of allele frequencies has no positive shapes")]
     NoPrior,
@@ -54,5 +59,7 @@ pub enum NoFit {
     Uninformative,
 }
 
+#[cfg(test)]
+mod calibration;
 #[cfg(test)]
 mod tests;

@@ -2,10 +2,12 @@
 
 mod comparisons;
 mod effective_size;
+mod latest;
 mod strata;
 
 pub use comparisons::comparisons;
 pub use effective_size::effective_size;
+pub use latest::{allele_spectra, at_risk, carriers};
 pub use strata::strata;
 
 use super::wire;
