@@ -4,6 +4,8 @@ use std::fmt;
 use std::io;
 use std::path::PathBuf;
 
+pub use crate::model::Problem;
+
 /// Result of everything that can fail here.
 pub type Result<T> = std::result::Result<T, Error>;
 
@@ -71,7 +73,11 @@ impl Error {
 
     /// An I/O failure with its path and what was being done.
     pub fn io(path: impl Into<PathBuf>, doing: &'static str, source: io::Error) -> Self {
-        Error::Io { path: path.into(), doing, source }
+        Error::Io {
+            path: path.into(),
+            doing,
+            source,
+        }
     }
 }
 
@@ -102,24 +108,17 @@ impl fmt::Display for Place {
         match self {
             Place::Header => write!(f, "header"),
             Place::Record(n) => write!(f, "record {n}"),
-            Place::Locus { record, contig, position } => {
+            Place::Locus {
+                record,
+                contig,
+                position,
+            } => {
                 write!(f, "record {record} ({contig}:{position})")
             }
             Place::Byte(offset) => write!(f, "block at byte {offset}"),
             Place::End => write!(f, "end of file"),
         }
     }
-}
-
-/// One problem of a sheet, a programme or another small input file.
-#[derive(Debug, Clone, PartialEq, Eq)]
-pub struct Problem {
-    /// 1-based row (line) of the file, where one is to blame.
-    pub row: Option<u64>,
-    /// What is wrong, with the offending value.
-    pub what: String,
-    /// What the user can do.
-    pub cure: String,
 }
 
 fn list(path: &std::path::Path, problems: &[Problem]) -> String {

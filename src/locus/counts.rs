@@ -93,6 +93,18 @@ impl Counts {
         2 * self.typed
     }
 
+    /// Ordered pairs of distinct gene copies that differ in state, of the 2n (2n - 1) there are:
+    /// (2n)^2 less the sum of squared copies. The integer behind every gene diversity.
+    pub fn differing_pairs(&self) -> u64 {
+        let all = u64::from(self.gene_copies());
+        let alike: u64 = self
+            .copies
+            .iter()
+            .map(|&c| u64::from(c) * u64::from(c))
+            .sum();
+        all * all - alike
+    }
+
     /// Number of alleles seen here.
     pub fn alleles_seen(&self) -> usize {
         self.copies.iter().filter(|&&c| c > 0).count()

@@ -1,11 +1,15 @@
 //! One locus at a time: genotypes to counts, counts to statistics. No float enters a count; no
 //! file is opened here.
 
-mod counts;
 pub mod change;
+mod classes;
+mod counts;
 pub mod diversity;
 pub mod fstatistics;
 pub mod hardy_weinberg;
 pub mod richness;
+mod terms;
 
+pub use classes::GenotypeClasses;
 pub use counts::Counts;
+pub use terms::{PairTerms, PrivateTerms, StratumTerms, pair_terms, private_terms, stratum_terms};

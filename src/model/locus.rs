@@ -5,6 +5,9 @@ pub const MISSING_ALLELE: u16 = u16::MAX;
 /// The dosage code of a missing genotype of a biallelic locus.
 pub const MISSING_DOSAGE: u8 = 3;
 
+/// Most alleles of a locus, the reference included; a record that lists more is set aside.
+pub const MAX_ALLELES: usize = 4096;
+
 /// One record of the calls, owned by the caller and refilled: nothing is allocated per locus.
 #[derive(Debug, Clone, Default)]
 pub struct Locus {
@@ -45,7 +48,11 @@ impl Locus {
     /// The text of allele `i` (0 is the reference), or `None` beyond the list.
     pub fn allele(&self, i: usize) -> Option<&[u8]> {
         let end = *self.allele_ends.get(i)? as usize;
-        let start = if i == 0 { 0 } else { self.allele_ends[i - 1] as usize };
+        let start = if i == 0 {
+            0
+        } else {
+            self.allele_ends[i - 1] as usize
+        };
         Some(&self.allele_text[start..end])
     }
 }

@@ -1,12 +1,28 @@
 //! Types with units that every part speaks. Imports nothing of ours.
 
+mod comparisons;
 mod locus;
+mod matching;
+mod notes;
+mod plan;
 mod programme;
 mod strata;
 
-pub use locus::{CallTally, Genotypes, Locus, MISSING_ALLELE, MISSING_DOSAGE, Verdict};
+pub use comparisons::{Compared, comparisons};
+pub use locus::{
+    CallTally, Genotypes, Locus, MAX_ALLELES, MISSING_ALLELE, MISSING_DOSAGE, Verdict,
+};
+pub use matching::{Matched, UNUSED_COLUMN, match_samples};
+pub use notes::{Note, Problem, nearest, plain_letters, spell_out};
+pub use plan::{
+    DEFAULT_FALSE_DISCOVERY_RATE, DEFAULT_LEVEL, DEFAULT_LIST_LOSSES, DEFAULT_MIN_CALL_RATE,
+    DEFAULT_SAMPLING_PLAN, MeasurePlan, default_gene_copies,
+};
 pub use programme::{LifeHistory, PopulationSettings, Programme, SamplingPlan};
-pub use strata::{Comparison, ComparisonKind, Individual, Sex, SheetRow, Strata, Stratum};
+pub use strata::{
+    Comparison, ComparisonKind, Individual, Replicate, Sex, SheetRow, Strata, Stratified, Stratum,
+    strata_of,
+};
 
 /// A hash that is the same on every machine and in every version: FNV-1a with a final mix.
 ///

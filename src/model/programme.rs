@@ -59,6 +59,81 @@ impl Programme {
         population: &str,
         field: impl Fn(&PopulationSettings) -> Option<T>,
     ) -> Option<T> {
-        self.by_population.get(population).and_then(&field).or_else(|| field(&self.all))
+        self.by_population
+            .get(population)
+            .and_then(&field)
+            .or_else(|| field(&self.all))
+    }
+}
+
+impl PopulationSettings {
+    /// Takes every value that `stronger` has.
+    pub fn overrule(&mut self, stronger: &PopulationSettings) {
+        fn take<T: Clone>(mine: &mut Option<T>, theirs: &Option<T>) {
+            if theirs.is_some() {
+                mine.clone_from(theirs);
+            }
+        }
+        take(&mut self.baseline, &stronger.baseline);
+        take(&mut self.generation_years, &stronger.generation_years);
+        take(&mut self.census, &stronger.census);
+        take(&mut self.plan, &stronger.plan);
+        take(&mut self.chromosomes, &stronger.chromosomes);
+        take(&mut self.life_history, &stronger.life_history);
+        take(&mut self.breeders, &stronger.breeders);
+        if !stronger.family_sizes.is_empty() {
+            self.family_sizes.clone_from(&stronger.family_sizes);
+        }
+    }
+}
+
+impl Programme {
+    /// Takes every value given as a flag: flags win over the common and over each population's.
+    pub fn overrule(&mut self, flags: &PopulationSettings) {
+        self.all.overrule(flags);
+        for settings in self.by_population.values_mut() {
+            settings.overrule(flags);
+        }
+    }
+
+    /// All settings of a population: its own, and the common ones where it has none.
+    pub fn settings(&self, population: &str) -> PopulationSettings {
+        let mut settings = self.all.clone();
+        if let Some(own) = self.by_population.get(population) {
+            settings.overrule(own);
+        }
+        settings
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn flags_win_over_populations_and_populations_over_all() {
+        let own = PopulationSettings {
+            census: Some(40.0),
+            ..Default::default()
+        };
+        let mut programme = Programme {
+            all: PopulationSettings {
+                census: Some(500.0),
+                generation_years: Some(4.0),
+                ..Default::default()
+            },
+            by_population: BTreeMap::from([("Alder".to_string(), own)]),
+        };
+        assert_eq!(programme.settings("Alder").census, Some(40.0));
+        assert_eq!(programme.settings("Alder").generation_years, Some(4.0));
+        assert_eq!(programme.settings("Birch").census, Some(500.0));
+        let flags = PopulationSettings {
+            census: Some(60.0),
+            ..Default::default()
+        };
+        programme.overrule(&flags);
+        assert_eq!(programme.get("Alder", |s| s.census), Some(60.0));
+        assert_eq!(programme.get("Birch", |s| s.census), Some(60.0));
+        assert_eq!(programme.get("Alder", |s| s.generation_years), Some(4.0));
     }
 }

@@ -1,1 +1,11 @@
-//! To come.
+//! What leaves the house: wire types, and the files that carry them.
+
+pub mod assemble;
+mod json;
+pub mod table;
+pub mod warnings;
+pub mod wire;
+mod words;
+
+pub use json::{Output, WholeFile};
+pub use words::{CAUTIONS, methods};

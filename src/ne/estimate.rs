@@ -1,0 +1,220 @@
+//! From sums to an estimate with an interval that counts loci and individuals.
+
+use statrs::distribution::{ContinuousCDF, StudentsT};
+
+use super::interval::{block_jackknife, individual_variance};
+use crate::merge::{Terms, TwoWay};
+
+/// Coverage that intervals aim at.
+pub const LEVEL: f64 = 0.95;
+
+/// Why a number is not there.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Absence {
+    /// No locus could be used.
+    NoLoci,
+    /// The formula has no value for these sums (a zero denominator).
+    Undefined,
+    /// Only one population was sampled at this visit.
+    OnlyPopulationAtVisit,
+    /// No locus has the fixed number of gene copies typed.
+    TooFewGeneCopies,
+    /// The time between the visits in generations is not known.
+    GenerationsUnknown,
+    /// No generation lies between the visits.
+    NoGenerations,
+    /// Plan I needs the census size at the first visit.
+    CensusUnknown,
+    /// Fewer individuals than an estimate needs.
+    TooFewIndividuals,
+}
+
+impl Absence {
+    /// The reason in words.
+    pub fn text(self) -> &'static str {
+        match self {
+            Absence::NoLoci => "no locus could be used",
+            Absence::Undefined => "the formula has no value here (its denominator is zero)",
+            Absence::OnlyPopulationAtVisit => "no other population was sampled at this visit",
+            Absence::TooFewGeneCopies => "no locus has the fixed number of gene copies typed",
+            Absence::GenerationsUnknown => "the generation length is not known",
+            Absence::NoGenerations => "no generation lies between the visits",
+            Absence::CensusUnknown => "sampling plan I needs the census size at the first visit",
+            Absence::TooFewIndividuals => "too few individuals",
+        }
+    }
+}
+
+/// What an interval's variance counts.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum VarianceParts {
+    /// Loci (block jackknife) and sampled individuals (delete-one): the full interval.
+    LociAndIndividuals,
+    /// Loci alone: an individual cannot be left out of this estimate; too narrow.
+    Loci,
+    /// Individuals alone: there are fewer than two blocks of loci; too narrow.
+    Individuals,
+}
+
+/// An estimate on its own scale, with its variance by source.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Estimate {
+    /// The value.
+    pub value: Result<f64, Absence>,
+    /// Variance over blocks of loci (Busing et al. 1999).
+    pub variance_loci: Option<f64>,
+    /// Delete-one variance over the individuals of each sample, added up.
+    pub variance_individuals: Option<f64>,
+    /// Degrees of freedom of the summed variance (Satterthwaite 1946).
+    pub degrees: Option<f64>,
+    /// Loci in the estimate.
+    pub loci: u64,
+    /// Jackknife blocks.
+    pub blocks: u64,
+}
+
+impl Estimate {
+    /// An estimate that could not be made.
+    pub fn absent(why: Absence) -> Self {
+        Estimate {
+            value: Err(why),
+            variance_loci: None,
+            variance_individuals: None,
+            degrees: None,
+            loci: 0,
+            blocks: 0,
+        }
+    }
+
+    /// Both parts of the variance, as far as they exist.
+    pub fn variance(&self) -> Option<f64> {
+        match (self.variance_loci, self.variance_individuals) {
+            (None, None) => None,
+            (a, b) => Some(a.unwrap_or(0.0) + b.unwrap_or(0.0)),
+        }
+    }
+
+    /// Which sources the variance counts.
+    pub fn parts(&self) -> Option<VarianceParts> {
+        match (self.variance_loci, self.variance_individuals) {
+            (Some(_), Some(_)) => Some(VarianceParts::LociAndIndividuals),
+            (Some(_), None) => Some(VarianceParts::Loci),
+            (None, Some(_)) => Some(VarianceParts::Individuals),
+            (None, None) => None,
+        }
+    }
+
+    /// The standard error.
+    pub fn standard_error(&self) -> Option<f64> {
+        self.variance().map(f64::sqrt)
+    }
+
+    /// The interval of coverage `level`, symmetric on the estimate's own scale.
+    pub fn interval(&self, level: f64) -> Option<[f64; 2]> {
+        let value = self.value.ok()?;
+        let half = quantile(level, self.degrees?) * self.standard_error()?;
+        Some([value - half, value + half])
+    }
+}
+
+/// The two-sided quantile of Student's t; the normal's beyond 1e6 degrees of freedom.
+pub fn quantile(level: f64, degrees: f64) -> f64 {
+    StudentsT::new(0.0, 1.0, degrees.clamp(1.0, 1e6))
+        .map_or(f64::NAN, |t| t.inverse_cdf(0.5 + level / 2.0))
+}
+
+/// A statistic of summed terms, its interval counting loci and individuals (the sum of both
+/// variances: with loci alone a nominal 95 % interval covered 50 to 88 % of simulated truths).
+///
+/// `statistic` maps sums to the value (`None` where undefined); `loci` tells how many loci the sums
+/// of a part of the genome hold, which is also its weight in the block jackknife.
+pub fn two_way_estimate<T: Terms>(
+    sums: &TwoWay<T>,
+    statistic: impl Fn(&T) -> Option<f64>,
+    loci: impl Fn(&T) -> f64,
+    when_no_loci: Absence,
+) -> Estimate {
+    let total = sums.total();
+    let count = loci(&total);
+    if count < 0.5 {
+        return Estimate::absent(when_no_loci);
+    }
+    let Some(value) = statistic(&total) else {
+        return Estimate {
+            loci: count as u64,
+            ..Estimate::absent(Absence::Undefined)
+        };
+    };
+    let (variance_loci, blocks) = loci_variance(sums, &statistic, &loci, value);
+    let groups = individual_variances(sums, &statistic, value);
+    let variance_individuals = groups.as_ref().map(|g| g.iter().map(|(v, _)| v).sum());
+    let mut parts = groups.unwrap_or_default();
+    if let Some(v) = variance_loci {
+        parts.push((v, blocks as f64 - 1.0));
+    }
+    Estimate {
+        value: Ok(value),
+        variance_loci,
+        variance_individuals,
+        degrees: satterthwaite(&parts),
+        loci: count.round() as u64,
+        blocks: blocks as u64,
+    }
+}
+
+fn loci_variance<T: Terms>(
+    sums: &TwoWay<T>,
+    statistic: &impl Fn(&T) -> Option<f64>,
+    loci: &impl Fn(&T) -> f64,
+    value: f64,
+) -> (Option<f64>, usize) {
+    let mut without = Vec::new();
+    let mut weights = Vec::new();
+    for (own, rest) in sums.blocks() {
+        let weight = loci(&own);
+        if weight > 0.5 {
+            weights.push(weight);
+            without.push(statistic(&rest));
+        }
+    }
+    let blocks = weights.len();
+    let Some(without) = without.into_iter().collect::<Option<Vec<f64>>>() else {
+        return (None, blocks);
+    };
+    (
+        block_jackknife(value, &without, &weights).map(|j| j.variance),
+        blocks,
+    )
+}
+
+/// Variance and degrees of freedom of each independent sample of individuals; `None` when some
+/// individual cannot be left out.
+fn individual_variances<T: Terms>(
+    sums: &TwoWay<T>,
+    statistic: &impl Fn(&T) -> Option<f64>,
+    value: f64,
+) -> Option<Vec<(f64, f64)>> {
+    let mut groups = Vec::new();
+    for group in sums.groups() {
+        let without: Vec<f64> = group
+            .clone()
+            .map(|i| statistic(&sums.without_individual(i)))
+            .collect::<Option<_>>()?;
+        groups.push((
+            individual_variance(value, &without)?,
+            group.len() as f64 - 1.0,
+        ));
+    }
+    Some(groups)
+}
+
+/// Degrees of freedom of a sum of independent variances (Satterthwaite 1946, Biometrics 2:110-114).
+pub fn satterthwaite(parts: &[(f64, f64)]) -> Option<f64> {
+    let sum: f64 = parts.iter().map(|(v, _)| v).sum();
+    let squares: f64 = parts.iter().map(|(v, df)| v * v / df.max(1.0)).sum();
+    match parts {
+        [] => None,
+        _ if squares > 0.0 => Some(sum * sum / squares),
+        _ => Some(1e6),
+    }
+}

@@ -1,0 +1,51 @@
+//! The story: open, read once, add up, estimate, report. Threads start only here.
+
+mod measure;
+mod pipeline;
+
+pub use measure::measure;
+
+use crate::cli::Work;
+use crate::error::{Error, Result};
+use crate::report::Output;
+
+/// Does what was asked for. `arguments` are those of the command line, for provenance.
+pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
+    match work {
+        Work::Measure(plan) => measure(&plan, told_arguments(arguments)).map(drop),
+        Work::Rehearse(_) => Err(Error::Usage("not yet".to_owned())),
+        Work::Schema { name } => schema(name.as_deref()),
+    }
+}
+
+/// Prints the JSON Schema of one document, or the names of all.
+fn schema(name: Option<&str>) -> Result<()> {
+    let out = Output::create(None)?;
+    match name {
+        None => out.bytes(b"report\n"),
+        Some("report") => out.json(&schemars::schema_for!(crate::report::wire::Report)),
+        Some(other) => Err(Error::Usage(format!(
+            "no document is called '{other}'; there are: report"
+        ))),
+    }
+}
+
+/// Arguments that shape the result: those that only say where it goes or how it is made are left
+/// out, so that the same input gives the same bytes.
+fn told_arguments(arguments: &[std::ffi::OsString]) -> Vec<String> {
+    const WITH_VALUE: [&str; 4] = ["--threads", "--output", "-o", "--loci"];
+    let mut told = Vec::new();
+    let mut skip = false;
+    for argument in arguments.iter().skip(1).map(|a| a.to_string_lossy()) {
+        let name = argument.split('=').next().unwrap_or_default();
+        if std::mem::take(&mut skip) || name == "--quiet" {
+            continue;
+        }
+        if WITH_VALUE.contains(&name) {
+            skip = !argument.contains('=');
+        } else {
+            told.push(argument.into_owned());
+        }
+    }
+    told
+}
