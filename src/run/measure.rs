@@ -126,7 +126,9 @@ impl Inputs {
             programme: &self.programme,
             level: plan.level,
             false_discovery_rate: plan.false_discovery_rate,
-        };
+            fits: Vec::new(),
+        }
+        .fitted();
         let effective_size = assemble::effective_size(&findings);
         Report {
             format: FORMAT.to_owned(),
@@ -136,8 +138,8 @@ impl Inputs {
             loci: loci(all),
             strata: assemble::strata(&findings),
             comparisons: assemble::comparisons(&findings),
+            effective_size_summary: assemble::summaries(&findings, &effective_size),
             effective_size,
-            effective_size_summary: Vec::new(),
             losses: Vec::new(),
             at_risk: assemble::at_risk(&findings),
             carriers: assemble::carriers(&findings),

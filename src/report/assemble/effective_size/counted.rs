@@ -11,8 +11,12 @@ use crate::report::wire;
 /// Heterozygote excess of each stratum; sex ratio and family sizes of each population that has them.
 pub fn entries(findings: &Findings) -> Vec<wire::EffectiveSize> {
     let mut entries = excess(findings);
-    let mut populations: Vec<&str> =
-        findings.strata.strata.iter().map(|s| s.population.as_str()).collect();
+    let mut populations: Vec<&str> = findings
+        .strata
+        .strata
+        .iter()
+        .map(|s| s.population.as_str())
+        .collect();
     populations.dedup();
     for population in populations {
         entries.extend(breeders(findings, population));
@@ -75,7 +79,7 @@ fn breeders(findings: &Findings, population: &str) -> Option<wire::EffectiveSize
 
 fn families(findings: &Findings, population: &str) -> Option<wire::EffectiveSize> {
     let sizes = findings.programme.settings(population).family_sizes;
-    let rate = |sizes: &[u32]| demographic::family_sizes(sizes).map(|size| 0.5 / size);
+    let rate = |sizes: &[u32]| Some(0.5 / demographic::FamilySizes::of(sizes)?.effective_size()?);
     let value = rate(&sizes)?;
     let without: Option<Vec<f64>> = (0..sizes.len())
         .map(|i| rate(&[&sizes[..i], &sizes[i + 1..]].concat()))
@@ -103,7 +107,12 @@ fn counted(
     individuals: f64,
     note: &str,
 ) -> Subject {
-    let latest = findings.strata.strata.iter().rev().find(|s| s.population == population);
+    let latest = findings
+        .strata
+        .strata
+        .iter()
+        .rev()
+        .find(|s| s.population == population);
     Subject {
         population: population.to_owned(),
         method: "demographic",

@@ -44,7 +44,10 @@ pub struct Fits {
 
 /// Fits every population with at least two visits that lie a known number of generations apart.
 pub fn fits(findings: &Findings) -> Vec<Fits> {
-    visits(findings).into_iter().map(|visits| fit(findings, visits)).collect()
+    visits(findings)
+        .into_iter()
+        .map(|visits| fit(findings, visits))
+        .collect()
 }
 
 /// One entry for the whole time, and one an interval where there are several.
@@ -52,7 +55,14 @@ pub fn entries(findings: &Findings) -> Vec<wire::EffectiveSize> {
     let mut entries = Vec::new();
     for fits in &findings.fits {
         let last = fits.visits.strata.len() - 1;
-        entries.push(one(findings, fits, "temporal_likelihood", &fits.constant, 0, (0, last)));
+        entries.push(one(
+            findings,
+            fits,
+            "temporal_likelihood",
+            &fits.constant,
+            0,
+            (0, last),
+        ));
         if let Some(by_interval) = &fits.by_interval {
             let method = "temporal_likelihood_by_interval";
             for i in 0..last {
@@ -70,7 +80,10 @@ fn visits(findings: &Findings) -> Vec<Visits> {
             && t > 0.0
         {
             let population = &findings.strata.strata[comparison.from].population;
-            since.entry(population).or_default().push((t, comparison.to, comparison.from));
+            since
+                .entry(population)
+                .or_default()
+                .push((t, comparison.to, comparison.from));
         }
     }
     let all = since.into_iter().map(|(population, mut later)| {
@@ -82,11 +95,14 @@ fn visits(findings: &Findings) -> Vec<Visits> {
         Visits {
             population: population.to_owned(),
             gaps: times.zip(before).map(|(t, before)| t - before).collect(),
-            strata: std::iter::once(later[0].2).chain(later.iter().map(|v| v.1)).collect(),
+            strata: std::iter::once(later[0].2)
+                .chain(later.iter().map(|v| v.1))
+                .collect(),
         }
     });
     let enough = |s: &usize| findings.strata.strata[*s].individuals() >= FEWEST_INDIVIDUALS;
-    all.filter(|visits| visits.strata.iter().all(enough)).collect()
+    all.filter(|visits| visits.strata.iter().all(enough))
+        .collect()
 }
 
 fn fit(findings: &Findings, visits: Visits) -> Fits {
@@ -102,7 +118,12 @@ fn fit(findings: &Findings, visits: Visits) -> Fits {
         (Ok(one), Some(Ok(each))) => size_change(&one.fit, &each.fit, one.inflation),
         _ => None,
     };
-    Fits { visits, constant, by_interval, change }
+    Fits {
+        visits,
+        constant,
+        by_interval,
+        change,
+    }
 }
 
 /// The spectrum at the baseline, the same whichever allele is called the reference: every row
@@ -128,12 +149,17 @@ fn dosages(findings: &Findings, visits: &Visits) -> DosagePanel {
     let strata = visits.strata.iter().map(|&s| &findings.strata.strata[s]);
     let sizes = strata.clone().map(|s| s.individuals()).collect();
     let slots: Vec<usize> = strata.flat_map(|s| s.slots.clone()).collect();
-    let blocking = findings.sums.pairs.iter().zip(findings.comparisons).find_map(|(sums, c)| {
-        (c.from == visits.strata[0]).then(|| sums.change.blocking())
-    });
+    let blocking = findings
+        .sums
+        .pairs
+        .iter()
+        .zip(findings.comparisons)
+        .find_map(|(sums, c)| (c.from == visits.strata[0]).then(|| sums.change.blocking()));
     let mut panel = DosagePanel::new(visits.gaps.clone(), sizes);
     for locus in findings.sums.panel.loci() {
-        let block = blocking.as_ref().and_then(|b: &Blocking| b.block(locus.contig_hash, locus.position));
+        let block = blocking
+            .as_ref()
+            .and_then(|b: &Blocking| b.block(locus.contig_hash, locus.position));
         // Without a block the locus was typed in one of the two visits only: it bears on nothing.
         if let Some(block) = block {
             push_rows(&mut panel, locus, &slots, block);
@@ -158,7 +184,8 @@ fn push_rows(panel: &mut DosagePanel, locus: &PanelLocus, slots: &[usize], block
         [_, second] => panel.push(second, 1.0, block),
         many => {
             let k = many.len() as f64;
-            many.iter().for_each(|row| panel.push(row, (k - 1.0) / k, block));
+            many.iter()
+                .for_each(|row| panel.push(row, (k - 1.0) / k, block));
         }
     }
 }
@@ -179,7 +206,10 @@ fn one(
         Ok(found) => {
             let interval = &found.intervals[rate];
             if interval.rate <= 0.0 {
-                notes.push("the counts differ no more than sampling alone makes them: no upper bound".to_owned());
+                notes.push(
+                    "the counts differ no more than sampling alone makes them: no upper bound"
+                        .to_owned(),
+                );
             }
             Estimate {
                 value: Ok(interval.rate),

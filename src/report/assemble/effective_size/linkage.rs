@@ -28,7 +28,11 @@ pub fn entries(findings: &Findings) -> Vec<wire::EffectiveSize> {
     .collect()
 }
 
-fn of_stratum(findings: &Findings, stratum: &Stratum, mut gram: GramStratum) -> Vec<wire::EffectiveSize> {
+fn of_stratum(
+    findings: &Findings,
+    stratum: &Stratum,
+    mut gram: GramStratum,
+) -> Vec<wire::EffectiveSize> {
     let mut entries = Vec::new();
     for cutoff in FrequencyCutoff::ALL {
         let sums = gram.pairs(cutoff);
@@ -38,10 +42,21 @@ fn of_stratum(findings: &Findings, stratum: &Stratum, mut gram: GramStratum) -> 
         };
         let strictest = cutoff == FrequencyCutoff::FivePercent;
         let variance = panel(findings, stratum, cutoff).individual_variance(pairs);
-        let matings: &[Mating] =
-            if strictest { &[Mating::Random, Mating::LifetimeMonogamy] } else { &[Mating::Random] };
+        let matings: &[Mating] = if strictest {
+            &[Mating::Random, Mating::LifetimeMonogamy]
+        } else {
+            &[Mating::Random]
+        };
         for &mating in matings {
-            let made = Made { findings, stratum, sums: &sums, pairs, cutoff, mating, variance };
+            let made = Made {
+                findings,
+                stratum,
+                sums: &sums,
+                pairs,
+                cutoff,
+                mating,
+                variance,
+            };
             entries.extend(made.entries());
         }
     }
@@ -54,7 +69,12 @@ fn panel(findings: &Findings, stratum: &Stratum, cutoff: FrequencyCutoff) -> Lin
     let mut counts = Counts::default();
     for locus in findings.sums.panel.loci() {
         counts.recount(&locus.genotypes, stratum.slots.clone());
-        panel.push(locus.contig_hash, &locus.genotypes, stratum.slots.clone(), &counts);
+        panel.push(
+            locus.contig_hash,
+            &locus.genotypes,
+            stratum.slots.clone(),
+            &counts,
+        );
     }
     panel
 }
@@ -78,7 +98,10 @@ impl Made<'_> {
                 Err(why) => return vec![absent(self.findings, self.stratum, &why.to_string())],
             };
         estimate.individual_variance = self.variance;
-        let chromosomes = self.findings.programme.get(&self.stratum.population, |p| p.chromosomes);
+        let chromosomes = self
+            .findings
+            .programme
+            .get(&self.stratum.population, |p| p.chromosomes);
         let corrected = self.pairs == LinkagePairs::All && chromosomes.is_some();
         if corrected && let Some(ratio) = chromosomes.and_then(chromosome_ratio) {
             estimate.ratio = ratio;
@@ -86,10 +109,15 @@ impl Made<'_> {
         let headline = self.cutoff == FrequencyCutoff::FivePercent
             && self.mating == Mating::Random
             && (corrected || self.pairs == LinkagePairs::BetweenContigs);
-        let life = self.findings.programme.get(&self.stratum.population, |p| p.life_history);
+        let life = self
+            .findings
+            .programme
+            .get(&self.stratum.population, |p| p.life_history);
         let mut entries = vec![self.entry(&estimate, 1.0, headline && life.is_none(), chromosomes)];
         // The adjustment is proportional: what it makes of an estimate of 1 is its factor.
-        let factor = life.and_then(|life| adjust_for_overlap(1.0, &life)).map(|a| a.effective_size);
+        let factor = life
+            .and_then(|life| adjust_for_overlap(1.0, &life))
+            .map(|a| a.effective_size);
         if let Some(factor) = factor.filter(|_| headline) {
             entries.push(self.entry(&estimate, factor, true, chromosomes));
         }
@@ -140,7 +168,11 @@ impl Made<'_> {
             LinkagePairs::BetweenContigs => "loci on different contigs",
             LinkagePairs::All => "all pairs of loci",
         };
-        let overlap = if factor == 1.0 { "" } else { ", adjusted for overlapping generations" };
+        let overlap = if factor == 1.0 {
+            ""
+        } else {
+            ", adjusted for overlapping generations"
+        };
         format!("{alleles}, {mating}, {pairs}{overlap}")
     }
 

@@ -6,6 +6,7 @@ mod linkage;
 mod summary;
 mod temporal;
 
+pub use likelihood::{Fits, fits};
 pub use summary::summaries;
 
 use super::Findings;
@@ -52,33 +53,33 @@ impl Findings<'_> {
 
 /// The entry of an estimate and interval of 1/(2Ne).
 fn entry(subject: Subject, drift_rate: wire::Estimate) -> wire::EffectiveSize {
-        let size = |u: f64| (u > 0.0).then(|| 0.5 / u);
-        let interval = drift_rate
-            .interval
-            .map(|[low, high]| (size(high), size(low)));
-        let estimate = drift_rate.estimate.and_then(size);
-        wire::EffectiveSize {
-            population: subject.population,
-            method: subject.method.to_owned(),
-            variant: subject.variant,
-            from: subject.from,
-            to: subject.to,
-            refers_to: subject.refers_to,
-            generations: subject.generations,
-            plan: subject.plan.map(|plan| match plan {
-                SamplingPlan::One => wire::Plan::I,
-                SamplingPlan::Two => wire::Plan::II,
-            }),
-            estimate,
-            unbounded: drift_rate.estimate.is_some() && estimate.is_none(),
-            interval,
-            level: drift_rate.level,
-            loci: drift_rate.loci,
-            individuals: subject.individuals,
-            share_of_census: estimate.zip(subject.census).map(|(ne, census)| ne / census),
-            headline: subject.headline,
-            notes: subject.notes,
-            absent_because: drift_rate.absent_because.clone(),
-            drift_rate,
-        }
+    let size = |u: f64| (u > 0.0).then(|| 0.5 / u);
+    let interval = drift_rate
+        .interval
+        .map(|[low, high]| (size(high), size(low)));
+    let estimate = drift_rate.estimate.and_then(size);
+    wire::EffectiveSize {
+        population: subject.population,
+        method: subject.method.to_owned(),
+        variant: subject.variant,
+        from: subject.from,
+        to: subject.to,
+        refers_to: subject.refers_to,
+        generations: subject.generations,
+        plan: subject.plan.map(|plan| match plan {
+            SamplingPlan::One => wire::Plan::I,
+            SamplingPlan::Two => wire::Plan::II,
+        }),
+        estimate,
+        unbounded: drift_rate.estimate.is_some() && estimate.is_none(),
+        interval,
+        level: drift_rate.level,
+        loci: drift_rate.loci,
+        individuals: subject.individuals,
+        share_of_census: estimate.zip(subject.census).map(|(ne, census)| ne / census),
+        headline: subject.headline,
+        notes: subject.notes,
+        absent_because: drift_rate.absent_because.clone(),
+        drift_rate,
+    }
 }

@@ -5,14 +5,26 @@ use crate::report::wire::{ChangeTest, EffectiveSize, EffectiveSizeSummary};
 
 /// One statement a population.
 pub fn summaries(findings: &Findings, entries: &[EffectiveSize]) -> Vec<EffectiveSizeSummary> {
-    let mut populations: Vec<&str> =
-        findings.strata.strata.iter().map(|s| s.population.as_str()).collect();
+    let mut populations: Vec<&str> = findings
+        .strata
+        .strata
+        .iter()
+        .map(|s| s.population.as_str())
+        .collect();
     populations.dedup();
-    populations.into_iter().map(|population| of(findings, population, entries)).collect()
+    populations
+        .into_iter()
+        .map(|population| of(findings, population, entries))
+        .collect()
 }
 
 fn of(findings: &Findings, population: &str, entries: &[EffectiveSize]) -> EffectiveSizeSummary {
-    let latest = findings.strata.strata.iter().rev().find(|s| s.population == population);
+    let latest = findings
+        .strata
+        .strata
+        .iter()
+        .rev()
+        .find(|s| s.population == population);
     let latest = latest.map(|s| s.name.as_str()).unwrap_or_default();
     let quoted: Vec<&EffectiveSize> = entries
         .iter()
@@ -40,7 +52,10 @@ fn of(findings: &Findings, population: &str, entries: &[EffectiveSize]) -> Effec
     } else {
         format!("{}: {verdict}", said.join(", "))
     };
-    let fits = findings.fits.iter().find(|f| f.visits.population == population);
+    let fits = findings
+        .fits
+        .iter()
+        .find(|f| f.visits.population == population);
     EffectiveSizeSummary {
         population: population.to_owned(),
         text,
@@ -66,7 +81,9 @@ fn since_baseline(findings: &Findings, entry: &EffectiveSize) -> bool {
 fn pairs<'a>(
     all: &'a [&'a EffectiveSize],
 ) -> impl Iterator<Item = (&'a EffectiveSize, &'a EffectiveSize)> {
-    all.iter().enumerate().flat_map(|(i, a)| all[i + 1..].iter().map(move |b| (*a, *b)))
+    all.iter()
+        .enumerate()
+        .flat_map(|(i, a)| all[i + 1..].iter().map(move |b| (*a, *b)))
 }
 
 fn overlap(a: &EffectiveSize, b: &EffectiveSize) -> bool {
@@ -80,5 +97,10 @@ fn say(entry: &EffectiveSize) -> String {
     let number = |size: Option<f64>| size.map_or("unbounded".to_owned(), |n| format!("{n:.0}"));
     let (low, high) = entry.interval.unwrap_or_default();
     let method = entry.method.replace('_', " ");
-    format!("{method} {} ({} to {})", number(entry.estimate), number(low), number(high))
+    format!(
+        "{method} {} ({} to {})",
+        number(entry.estimate),
+        number(low),
+        number(high)
+    )
 }
