@@ -3,11 +3,13 @@
 mod comparisons;
 mod effective_size;
 mod latest;
+mod losses;
 mod strata;
 
 pub use comparisons::comparisons;
 pub use effective_size::{Fits, effective_size, fits, summaries};
 pub use latest::{allele_spectra, at_risk, carriers};
+pub use losses::losses;
 pub use strata::strata;
 
 use super::wire;

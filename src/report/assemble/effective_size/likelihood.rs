@@ -8,7 +8,8 @@ use crate::merge::panel::PanelLocus;
 use crate::model::{ComparisonKind, MISSING_DOSAGE, SamplingPlan};
 use crate::ne::estimate::{Absence, Estimate};
 use crate::ne::likelihood::{
-    BetaPrior, DosagePanel, NoFit, SizeChange, TwoWay, size_change, two_way, two_way_by_interval,
+    BetaPrior, DosagePanel, NoFit, RateWeight, SizeChange, TwoWay, rate_weights, size_change,
+    two_way, two_way_by_interval,
 };
 use crate::ne::prior::fit_prior;
 use crate::report::assemble::Findings;
@@ -40,7 +41,25 @@ pub struct Fits {
     pub by_interval: Option<Result<TwoWay, NoFit>>,
     /// Whether the second fits better.
     pub change: Option<SizeChange>,
+    /// Spectrum of allele frequencies at the baseline, the same for either allele of a locus.
+    pub prior: BetaPrior,
+    /// Constant sizes and how probable each is; empty where there is no fit.
+    pub weights: Vec<RateWeight>,
+    /// Loci of the panel that the fits rest on.
+    pub loci: u64,
 }
+
+impl Fits {
+    /// How much wider the honest interval is than the curvature's, as variances; at least 1.
+    pub fn inflation(&self) -> f64 {
+        self.constant
+            .as_ref()
+            .map_or(1.0, |fit| fit.inflation.max(1.0))
+    }
+}
+
+/// Effective sizes that chances are averaged over.
+const WEIGHTED_RATES: usize = 15;
 
 /// Fits every population with at least two visits that lie a known number of generations apart.
 pub fn fits(findings: &Findings) -> Vec<Fits> {
@@ -106,7 +125,7 @@ fn visits(findings: &Findings) -> Vec<Visits> {
 }
 
 fn fit(findings: &Findings, visits: Visits) -> Fits {
-    let panel = dosages(findings, &visits);
+    let (panel, first_rows) = dosages(findings, &visits);
     let counts = panel.counts();
     let prior = baseline_prior(&counts_of_first(&counts));
     let level = findings.level;
@@ -118,7 +137,25 @@ fn fit(findings: &Findings, visits: Visits) -> Fits {
         (Ok(one), Some(Ok(each))) => size_change(&one.fit, &each.fit, one.inflation),
         _ => None,
     };
+    let weights = constant
+        .as_ref()
+        .ok()
+        .and_then(|fit| rate_weights(&panel, prior, BASELINE_FREQUENCY, fit, WEIGHTED_RATES).ok());
+    let usable = |i: usize| counts.usable(i, BASELINE_FREQUENCY);
+    let ends = first_rows
+        .get(1..)
+        .unwrap_or_default()
+        .iter()
+        .copied()
+        .chain([counts.len()]);
+    let of_locus = first_rows
+        .iter()
+        .zip(ends)
+        .filter(|&(&start, end)| (start..end).any(usable));
     Fits {
+        loci: of_locus.count() as u64,
+        weights: weights.unwrap_or_default(),
+        prior,
         visits,
         constant,
         by_interval,
@@ -144,8 +181,9 @@ fn counts_of_first(panel: &crate::ne::likelihood::CountPanel) -> Vec<(u32, u32)>
     (0..panel.len()).map(|i| panel.first(i)).collect()
 }
 
-/// The genotypes of the panel at these visits; a multi-allelic locus gives a row an allele.
-fn dosages(findings: &Findings, visits: &Visits) -> DosagePanel {
+/// The genotypes of the panel at these visits, a row an allele for multi-allelic loci, and the first
+/// row of each locus.
+fn dosages(findings: &Findings, visits: &Visits) -> (DosagePanel, Vec<usize>) {
     let strata = visits.strata.iter().map(|&s| &findings.strata.strata[s]);
     let sizes = strata.clone().map(|s| s.individuals()).collect();
     let slots: Vec<usize> = strata.flat_map(|s| s.slots.clone()).collect();
@@ -156,16 +194,18 @@ fn dosages(findings: &Findings, visits: &Visits) -> DosagePanel {
         .zip(findings.comparisons)
         .find_map(|(sums, c)| (c.from == visits.strata[0]).then(|| sums.change.blocking()));
     let mut panel = DosagePanel::new(visits.gaps.clone(), sizes);
+    let mut first_rows = Vec::new();
     for locus in findings.sums.panel.loci() {
         let block = blocking
             .as_ref()
             .and_then(|b: &Blocking| b.block(locus.contig_hash, locus.position));
         // Without a block the locus was typed in one of the two visits only: it bears on nothing.
         if let Some(block) = block {
+            first_rows.push(panel.len());
             push_rows(&mut panel, locus, &slots, block);
         }
     }
-    panel
+    (panel, first_rows)
 }
 
 fn push_rows(panel: &mut DosagePanel, locus: &PanelLocus, slots: &[usize], block: u32) {
@@ -216,7 +256,7 @@ fn one(
                 variance_loci: Some(interval.variance_loci),
                 variance_individuals: Some(interval.variance_individuals),
                 degrees: Some(interval.degrees_of_freedom),
-                loci: found.fit.rows as u64,
+                loci: fits.loci,
                 blocks: found.blocks as u64,
             }
         }
