@@ -693,11 +693,11 @@ fn a_simulated_population_of_fifty() {
 }
 
 /// The two simulation tables of the linear-time method: bias, variation and coverage. Prints; asserts
-/// loosely. Run with `--ignored --nocapture`; some minutes.
+/// loosely. Run with `--ignored --nocapture`; about a minute.
 #[test]
-#[ignore = "a simulation study of some minutes"]
+#[ignore = "a simulation study of about a minute"]
 fn bias_and_coverage_in_simulated_populations() {
-    let runs = 60;
+    let runs = 200;
     for (size, loci, sample, missing, contigs) in [
         (50, 500, 50, 0.0, 20),
         (50, 2000, 25, 0.0, 20),
@@ -708,6 +708,7 @@ fn bias_and_coverage_in_simulated_populations() {
         (50, 1000, 50, 0.2, 20),
         (100, 1000, 50, 0.4, 20),
         (50, 500, 50, 0.0, 1),
+        (50, 1000, 15, 0.0, 20),
     ] {
         let mut rng = ChaCha8Rng::seed_from_u64(size as u64 * 1000 + loci as u64);
         let pairs = if contigs == 1 {
@@ -741,7 +742,7 @@ fn bias_and_coverage_in_simulated_populations() {
              1/mean(1/Ne) {:.1}, CV {variation:.2}, coverage {coverage:.2}, unbounded {unbounded}",
             1.0 / (2.0 * mean)
         );
-        assert!(coverage >= 0.85, "Monte Carlo error is 0.03");
+        assert!(coverage >= 0.9, "Monte Carlo error is 0.015");
         assert!((mean * 2.0 * truth - 1.0).abs() < 0.12 + 3.0 * variation / n.sqrt());
     }
 }
