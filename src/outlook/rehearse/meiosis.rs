@@ -2,7 +2,7 @@
 
 use super::dice::{Dice, Purpose};
 use super::genome::{Unit, common_frequencies, diverged};
-use super::population::{Generation, History, Origin};
+use super::population::{History, Origin};
 use super::sampling::Source;
 use super::scenario::Scenario;
 use super::watch::{Gone, Watch, count_strata};
