@@ -113,7 +113,8 @@ impl HeaderParser {
         (self.header, self.warnings)
     }
 
-    fn warn(&mut self, warning: String) {
+    /// Notes something to tell about the line taken last.
+    pub fn warn(&mut self, warning: String) {
         if self.warnings.len() < MAX_HEADER_WARNINGS {
             self.warnings
                 .push(format!("header line {}: {warning}", self.lines));

@@ -6,7 +6,7 @@ mod latest;
 mod strata;
 
 pub use comparisons::comparisons;
-pub use effective_size::effective_size;
+pub use effective_size::{effective_size, summaries};
 pub use latest::{allele_spectra, at_risk, carriers};
 pub use strata::strata;
 

@@ -1,6 +1,12 @@
 //! The section on effective size: every method that applies, side by side.
 
+mod counted;
+mod likelihood;
+mod linkage;
+mod summary;
 mod temporal;
+
+pub use summary::summaries;
 
 use super::Findings;
 use crate::model::SamplingPlan;
@@ -9,8 +15,16 @@ use crate::report::wire;
 
 /// All entries, by method, then population, then visit.
 pub fn effective_size(findings: &Findings) -> Vec<wire::EffectiveSize> {
-    temporal::entries(findings)
+    let mut entries = temporal::entries(findings);
+    entries.extend(likelihood::entries(findings));
+    entries.extend(linkage::entries(findings));
+    entries.extend(counted::entries(findings));
+    entries
 }
+
+/// Fewest individuals in a sample from which an effective size is estimated: with fewer, the
+/// variance over individuals itself is hardly known.
+const FEWEST_INDIVIDUALS: usize = 5;
 
 /// What an estimate of effective size is of.
 #[derive(Debug, Clone, Default)]
@@ -32,7 +46,12 @@ struct Subject {
 impl Findings<'_> {
     /// The entry of an estimate of 1/(2Ne): inverted last, unbounded where no drift shows.
     fn size(&self, subject: Subject, rate: &Estimate) -> wire::EffectiveSize {
-        let drift_rate = self.wire(rate, super::ANY);
+        entry(subject, self.wire(rate, super::ANY))
+    }
+}
+
+/// The entry of an estimate and interval of 1/(2Ne).
+fn entry(subject: Subject, drift_rate: wire::Estimate) -> wire::EffectiveSize {
         let size = |u: f64| (u > 0.0).then(|| 0.5 / u);
         let interval = drift_rate
             .interval
@@ -62,5 +81,4 @@ impl Findings<'_> {
             absent_because: drift_rate.absent_because.clone(),
             drift_rate,
         }
-    }
 }
