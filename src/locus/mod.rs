@@ -6,6 +6,7 @@ pub mod change;
 pub mod diversity;
 pub mod fstatistics;
 pub mod hardy_weinberg;
+pub mod individuals;
 pub mod richness;
 
 pub use counts::Counts;
