@@ -72,6 +72,30 @@ pub fn read_sheet(path: &Path) -> Result<Sheet> {
     })
 }
 
+/// Row and name of every sample that a sheet lists and that is no replicate, whatever else is wrong
+/// with the sheet; none when it cannot be read as a table at all.
+pub fn listed_samples(path: &Path) -> Vec<(u64, String)> {
+    let Some(table) = std::fs::read(path).ok().and_then(|b| table::split(&b).ok()) else {
+        return Vec::new();
+    };
+    let (mut unused, mut notes) = (Vec::new(), Vec::new());
+    let columns = Columns::of(&table.header, &mut unused, &mut notes);
+    let drafts = table.records.iter().filter_map(|record| {
+        let problems = &mut unused;
+        let columns = &columns;
+        RowReader {
+            record,
+            columns,
+            problems,
+        }
+        .read()
+    });
+    drafts
+        .filter(|draft| draft.replicate_of.is_none())
+        .map(|draft| (draft.row, draft.sample))
+        .collect()
+}
+
 /// The rows and notes of a sheet given as bytes, or every problem in the order of the file.
 pub fn parse_sheet(bytes: &[u8]) -> std::result::Result<(Vec<SheetRow>, Vec<Note>), Vec<Problem>> {
     let table = table::split(bytes)?;
