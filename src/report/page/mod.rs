@@ -1,0 +1,162 @@
+//! A report as one page that people read: no network, no parts, the same bytes for the same report.
+//!
+//! [`read_report`] reads the document back, [`Page::of`] turns it into sentences, figures and tables,
+//! [`Page::html`] sets them in a template that escapes whatever it is given. The page is whole
+//! without its script, which only sorts, filters and copies tables. Its policy header forbids every
+//! request and every script or style but its own, by their digests.
+
+mod answer;
+mod read;
+mod redact;
+#[cfg(test)]
+pub(crate) mod sample;
+mod tables;
+#[cfg(test)]
+mod tests;
+mod view;
+
+use std::path::Path;
+
+use minijinja::value::{Serde, Value};
+use minijinja::{AutoEscape, Environment};
+use sha2::{Digest, Sha256};
+
+use super::figures::{Figure, figures, is_forbidden, palette, subject};
+use super::json::{Output, WholeFile};
+use super::wire::Report;
+use crate::error::{Error, Result};
+
+pub use read::{parse_report, read_report};
+
+const TEMPLATE: &str = include_str!("page.html");
+const SCRIPT: &str = include_str!("page.js");
+const STYLE: &str = include_str!("page.css");
+
+/// Everything a page shows.
+#[derive(Debug)]
+pub struct Page {
+    view: view::View,
+    figures: Vec<Figure>,
+}
+
+impl Page {
+    /// The page of a report; with `without_samples` no sample name is in it.
+    pub fn of(report: Report, without_samples: bool) -> Page {
+        let report = match without_samples {
+            true => redact::without_samples(report),
+            false => report,
+        };
+        let subjects = subject::subjects(&report);
+        let figures = figures(&report, &subjects);
+        let view = view::View::of(&report, &subjects, &figures, without_samples);
+        Page { view, figures }
+    }
+
+    /// The document.
+    ///
+    /// # Errors
+    /// [`Error::Document`] where the template refuses the report, which no report should bring about.
+    pub fn html(&self) -> Result<String> {
+        let style = format!(
+            "{}{}{STYLE}",
+            palette::theme_style(":root"),
+            palette::FIGURE_STYLE
+        );
+        let refused = |e: minijinja::Error| Error::Document {
+            path: "page".into(),
+            problem: format!("the page could not be set: {e:#}"),
+            cure: "tell the authors of the program, with the report".to_owned(),
+        };
+        let mut environment = Environment::new();
+        environment.set_auto_escape_callback(|_| AutoEscape::Html);
+        environment.add_filter("name", name);
+        environment.add_template("page", TEMPLATE).map_err(refused)?;
+        let context = minijinja::context! {
+            page => Value::from(Serde(&self.view)),
+            policy => policy(&style),
+            style => Value::from_safe_string(style),
+            script => Value::from_safe_string(SCRIPT.to_owned()),
+        };
+        let template = environment.get_template("page").map_err(refused)?;
+        let html = template.render(context).map_err(refused)?;
+        Ok(html.replace(is_forbidden, "\u{fffd}"))
+    }
+
+    /// Writes each figure into a folder, as `NAME.svg` and `NAME.vl.json`; the folder is made if absent.
+    pub fn write_figures(&self, folder: &Path) -> Result<()> {
+        use std::io::Write;
+        std::fs::create_dir_all(folder).map_err(|e| Error::io(folder, "create", e))?;
+        for figure in &self.figures {
+            let specification = serde_json::to_vec_pretty(&figure.specification)
+                .map_err(|e| Error::io(folder, "write", std::io::Error::other(e)))?;
+            let drawing = figure.file().into_bytes();
+            for (ending, bytes) in [("svg", drawing), ("vl.json", specification)] {
+                let path = folder.join(format!("{}.{ending}", figure.name));
+                let mut file = WholeFile::create(&path)?;
+                file.write_all(&bytes)
+                    .map_err(|e| Error::io(&path, "write", e))?;
+                file.finish()?;
+            }
+        }
+        Ok(())
+    }
+}
+
+/// Reads a report and writes its page, and its figures where a folder is given.
+///
+/// # Errors
+/// Those of [`read_report`], and [`Error::Io`] where something cannot be written.
+pub fn write_page(
+    report: &Path,
+    output: Option<&Path>,
+    without_samples: bool,
+    folder: Option<&Path>,
+) -> Result<()> {
+    let report = read_report(report)?;
+    let output = Output::create(output)?;
+    let page = Page::of(report, without_samples);
+    let html = page.html()?;
+    if let Some(folder) = folder {
+        page.write_figures(folder)?;
+    }
+    output.bytes(html.as_bytes())
+}
+
+/// What the page may do: nothing but its own style and script.
+fn policy(style: &str) -> String {
+    let digest = |text: &str| base64(&Sha256::digest(text.as_bytes()));
+    format!(
+        "default-src 'none'; style-src 'sha256-{}'; script-src 'sha256-{}'; img-src data:; \
+         base-uri 'none'; form-action 'none'",
+        digest(style),
+        digest(SCRIPT)
+    )
+}
+
+/// Base64 with padding (RFC 4648, section 4).
+fn base64(bytes: &[u8]) -> String {
+    const ALPHABET: &[u8; 64] =
+        b"ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789+/";
+    let mut out = String::with_capacity(bytes.len().div_ceil(3) * 4);
+    for chunk in bytes.chunks(3) {
+        let mut three = [0u8; 3];
+        three[..chunk.len()].copy_from_slice(chunk);
+        let bits = u32::from_be_bytes([0, three[0], three[1], three[2]]);
+        for i in 0..4 {
+            match i <= chunk.len() {
+                true => out.push(ALPHABET[(bits >> (18 - 6 * i) & 63) as usize] as char),
+                false => out.push('='),
+            }
+        }
+    }
+    out
+}
+
+/// A name in a cell: kept apart from the direction of its neighbours where it needs to be.
+fn name(text: String) -> Value {
+    let escaped = super::figures::escaped(&text);
+    Value::from_safe_string(match text.is_ascii() {
+        true => escaped,
+        false => format!("<bdi>{escaped}</bdi>"),
+    })
+}
