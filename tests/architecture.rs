@@ -424,6 +424,30 @@ fn long_files_are_defended() {
     );
 }
 
+/// Every file or folder of ours that a page names in code ticks is there.
+#[test]
+fn the_pages_name_what_is_there() {
+    let mut named = 0;
+    for page in ["README.md", "DEVELOPERS.md", "fixtures/README.md"] {
+        let text = std::fs::read_to_string(common::root().join(page)).expect("the page");
+        for piece in text.split('`').skip(1).step_by(2) {
+            let ours = ["src/", "tests/", "fixtures/", "tools/", "man/", ".ci/"];
+            if !ours.iter().any(|folder| piece.starts_with(folder)) || piece.contains(['*', ' ']) {
+                continue;
+            }
+            assert!(
+                common::root().join(piece).exists(),
+                "{page} names {piece}, which is not there"
+            );
+            named += 1;
+        }
+    }
+    assert!(
+        named > 10,
+        "only {named} paths were found: the reader of this test is broken"
+    );
+}
+
 #[test]
 fn the_reader_of_this_test_sees_paths_and_nothing_else() {
     let code = blank(

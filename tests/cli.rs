@@ -493,3 +493,37 @@ fn every_command_that_the_readme_names_is_there() {
     }
     assert!(named > 0, "README names no command");
 }
+
+/// The rounded excerpt of README.md, found again in the report on the demo.
+#[test]
+fn the_readme_shows_what_the_demo_says() {
+    let text = std::fs::read_to_string(common::root().join("README.md")).expect("README.md");
+    let block = text
+        .split("```json\n")
+        .nth(1)
+        .and_then(|rest| rest.split("```").next());
+    let shown: serde_json::Value =
+        serde_json::from_str(block.expect("a JSON excerpt")).expect("the excerpt is JSON");
+    let report = common::measure(
+        &fixture("demo/calls.vcf.gz"),
+        &fixture("demo/samples.tsv"),
+        &["--generation-years", "2", "--quiet"],
+    );
+    let end = |end: &str| shown[end].as_str().expect("a stratum");
+    let found = common::comparison(&report, end("from"), end("to")).expect("that comparison");
+    let field = "expected_heterozygosity";
+    let (shown, found) = (&shown["change"][field], &found["change"][field]);
+    assert_eq!(
+        (&shown["level"], &shown["loci"]),
+        (&found["level"], &found["loci"])
+    );
+    for place in ["/estimate", "/interval/0", "/interval/1"] {
+        let number = |value: &serde_json::Value| {
+            value
+                .pointer(place)
+                .and_then(serde_json::Value::as_f64)
+                .expect("a number")
+        };
+        common::close(place, number(shown), number(found), 0.0011);
+    }
+}

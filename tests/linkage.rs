@@ -692,12 +692,13 @@ fn a_simulated_population_of_fifty() {
     near(estimate.effective_size().unwrap(), 2.0 * size, 1e-12);
 }
 
-/// The two simulation tables of the linear-time method: bias, variation and coverage. Prints; asserts
-/// loosely. Run with `--ignored --nocapture`; some minutes.
+/// The simulation tables of the linear-time method: bias, variation and coverage (0.95 to 0.97 in all
+/// ten rows when last run, 1/mean(1/Ne) within 6 % of the truth but for 15 individuals). Asserts
+/// loosely. Run with `--ignored --nocapture`; about a minute.
 #[test]
-#[ignore = "a simulation study of some minutes"]
+#[ignore = "a simulation study of ten seconds and more"]
 fn bias_and_coverage_in_simulated_populations() {
-    let runs = 60;
+    let runs = 200;
     for (size, loci, sample, missing, contigs) in [
         (50, 500, 50, 0.0, 20),
         (50, 2000, 25, 0.0, 20),
@@ -708,6 +709,7 @@ fn bias_and_coverage_in_simulated_populations() {
         (50, 1000, 50, 0.2, 20),
         (100, 1000, 50, 0.4, 20),
         (50, 500, 50, 0.0, 1),
+        (50, 1000, 15, 0.0, 20),
     ] {
         let mut rng = ChaCha8Rng::seed_from_u64(size as u64 * 1000 + loci as u64);
         let pairs = if contigs == 1 {
@@ -741,8 +743,94 @@ fn bias_and_coverage_in_simulated_populations() {
              1/mean(1/Ne) {:.1}, CV {variation:.2}, coverage {coverage:.2}, unbounded {unbounded}",
             1.0 / (2.0 * mean)
         );
-        assert!(coverage >= 0.85, "Monte Carlo error is 0.03");
+        assert!(coverage >= 0.9, "Monte Carlo error is 0.015");
         assert!((mean * 2.0 * truth - 1.0).abs() < 0.12 + 3.0 * variation / n.sqrt());
+    }
+}
+
+/// A gamete of a parent whose loci lie on chromosomes of 100 centimorgans: crossovers between
+/// neighbours by Haldane's map, a free choice where a chromosome starts.
+fn linked_gamete(rng: &mut impl Rng, parent: &[Vec<bool>; 2], recombination: &[f64]) -> Vec<bool> {
+    let mut strand = 0;
+    (recombination.iter().enumerate())
+        .map(|(l, &r)| {
+            if rng.random::<f64>() < r {
+                strand = 1 - strand;
+            }
+            parent[strand][l]
+        })
+        .collect()
+}
+
+/// A sample of 50 from 100 after 180 generations, 30 loci at random places on each chromosome.
+fn linked(rng: &mut impl Rng, chromosomes: usize) -> Vec<Typed> {
+    let (size, sample, per_chromosome) = (100, 50, 30);
+    let mut recombination = Vec::new();
+    for _ in 0..chromosomes {
+        let mut places: Vec<f64> = (0..per_chromosome).map(|_| rng.random()).collect();
+        places.sort_by(f64::total_cmp);
+        recombination.push(0.5);
+        recombination.extend(
+            places
+                .windows(2)
+                .map(|w| (1.0 - (-2.0 * (w[1] - w[0])).exp()) / 2.0),
+        );
+    }
+    let loci = recombination.len();
+    let mut parents: Vec<[Vec<bool>; 2]> = (0..size)
+        .map(|_| [0, 1].map(|_| (0..loci).map(|_| rng.random()).collect()))
+        .collect();
+    let mut offspring = |parents: &[[Vec<bool>; 2]], number: usize| -> Vec<[Vec<bool>; 2]> {
+        (0..number)
+            .map(|_| {
+                [0..size / 2, size / 2..size].map(|sex| {
+                    let parent = &parents[rng.random_range(sex)];
+                    linked_gamete(rng, parent, &recombination)
+                })
+            })
+            .collect()
+    };
+    for _ in 0..180 {
+        parents = offspring(&parents, size);
+    }
+    let sampled = offspring(&parents, sample);
+    (0..loci)
+        .map(|l| Typed {
+            contig: (l / per_chromosome) as u64,
+            alleles: 2,
+            calls: sampled
+                .iter()
+                .map(|[a, b]| Some([u16::from(a[l]), u16::from(b[l])]))
+                .collect(),
+        })
+        .collect()
+}
+
+/// All pairs of linked loci are biased as Waples, Larson & Waples (2016) say; pairs on different
+/// chromosomes are not (independent simulation: 0.62 to 0.67 and 0.78; 103 to 112 for N = 100).
+#[test]
+#[ignore = "a simulation study of ten seconds and more"]
+fn linked_loci_bias_all_pairs_as_the_number_of_chromosomes_says() {
+    for (chromosomes, runs) in [(10, 40), (20, 30)] {
+        let mut rng = ChaCha8Rng::seed_from_u64(chromosomes as u64);
+        let (mut all, mut between) = (0.0, 0.0);
+        for _ in 0..runs {
+            let sums = gathered(&linked(&mut rng, chromosomes)).pairs(FrequencyCutoff::FivePercent);
+            let of = |pairs| {
+                let cutoff = FrequencyCutoff::FivePercent;
+                LinkageEstimate::of(&sums, pairs, cutoff, Mating::Random)
+                    .unwrap()
+                    .drift_rate()
+            };
+            all += of(LinkagePairs::All) / f64::from(runs);
+            between += of(LinkagePairs::BetweenContigs) / f64::from(runs);
+        }
+        let (all, between) = (1.0 / (200.0 * all), 1.0 / (200.0 * between));
+        let line = chromosome_ratio(chromosomes as u32).unwrap();
+        println!(
+            "{chromosomes} chromosomes: all pairs {all:.2} of the truth (line {line:.2}), different {between:.2}"
+        );
+        assert!((all - line).abs() < 0.1 && (between - 1.04).abs() < 0.12);
     }
 }
 

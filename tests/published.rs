@@ -17,6 +17,7 @@ use genewane::locus::hardy_weinberg::{
 use genewane::locus::richness::{Rarefaction, absence, private_richness, richness};
 use genewane::merge::histogram::{PValueHistogram, Rejections};
 use genewane::model::SamplingPlan;
+use genewane::ne::estimate::quantile;
 use genewane::ne::interval::{block_jackknife, individual_variance_centred};
 use genewane::ne::temporal::{
     TemporalSample, chi_square_limits, corrected_fs, drift_rate_fc, drift_rate_fk, drift_rate_fs,
@@ -784,6 +785,25 @@ fn weighted_block_jackknife() {
         individual_variance_centred(&deletes).unwrap(),
         1e-9,
     );
+}
+
+/// Printed tables of Student's t, two-sided 5 % and 1 % points, and of the normal distribution.
+#[test]
+fn quantiles() {
+    let expected = [
+        (0.95, 1.0, 12.706205),
+        (0.95, 2.0, 4.302653),
+        (0.95, 4.0, 2.776445),
+        (0.99, 4.0, 4.604095),
+        (0.95, 10.0, 2.228139),
+        (0.95, 28.0, 2.048407),
+        (0.95, 120.0, 1.979930),
+        (0.95, 1e9, 1.959964),
+        (0.99, 1e9, 2.575829),
+    ];
+    for (level, degrees, expected) in expected {
+        close(quantile(level, degrees), expected, 5e-6);
+    }
 }
 
 /// Sums over loci from which the multilocus estimates of change are taken.

@@ -8,7 +8,7 @@ use crate::model::Locus;
 /// Whether a contig name, as written in a record, has only characters the standard allows.
 ///
 /// `<name>` is a contig of an assembly file. The colon was forbidden up to VCF 4.2; from 4.3 on the
-/// names of the SAM specification hold (section 1.2.1), which have it.
+/// names of the SAM specification hold (section 1.2.1), which have it but do not begin with `*` or `=`.
 pub(super) fn is_contig_name(name: &[u8], minor_version: u32) -> bool {
     let bare = match name {
         [b'<', inner @ .., b'>'] => inner,
@@ -20,7 +20,8 @@ pub(super) fn is_contig_name(name: &[u8], minor_version: u32) -> bool {
         | b'>' => false,
         other => other.is_ascii_graphic(),
     };
-    !bare.is_empty() && bare.iter().all(allowed)
+    let begins_well = minor_version < 3 || !matches!(bare, [b'*' | b'=', ..]);
+    !bare.is_empty() && begins_well && bare.iter().all(allowed)
 }
 
 /// Whether an allele is made of bases.
@@ -156,6 +157,7 @@ mod tests {
     fn contig_names_by_version() {
         assert!(is_contig_name(b"HLA:1", 3) && !is_contig_name(b"HLA:1", 2));
         assert!(is_contig_name(b"<ctg1*>", 1) && is_contig_name(b"1.A", 1));
+        assert!(is_contig_name(b"*1", 2) && !is_contig_name(b"*1", 3));
         for bad in ["a b", "a,b", "a<b", "<>", ""] {
             assert!(!is_contig_name(bad.as_bytes(), 5), "{bad}");
         }

@@ -149,6 +149,7 @@ impl Decoder {
         self.place(line.contig, line.position, locus)?;
         *placed = true;
         set_id(locus, line.id);
+        locus.clear_alleles();
         let format = self.format_of(line.format, locus.record)?;
         let alternates = match line.alternates {
             b"." => 0,
@@ -158,7 +159,6 @@ impl Decoder {
             None => Verdict::NoGenotypeField,
             Some(_) if alternates >= MAX_ALLELES => Verdict::TooManyAlleles,
             Some(key) => {
-                locus.clear_alleles();
                 locus.push_allele(line.reference);
                 if alternates > 0 {
                     line.alternates

@@ -1,8 +1,10 @@
 //! `##` lines of a header: contigs, and the numbering of names that binary records use.
 
-use std::collections::{HashMap, HashSet};
+use std::collections::HashMap;
+use std::sync::Arc;
 
 use super::fault::{Fault, WRITE_AGAIN, quote};
+use super::limits::MAX_NAMES;
 
 /// One `##KEY=<NAME=VALUE,...>` line, as far as it matters here.
 #[derive(Debug, Default, PartialEq, Eq)]
@@ -18,7 +20,10 @@ pub(super) struct MetaLine {
 }
 
 impl MetaLine {
-    /// Reads a line without its `##`; `None` when it has no `<...>` value that can be taken apart.
+    /// Reads a line without its `##`; `None` when it has no `<...>` value.
+    ///
+    /// A quote that is never closed is common in descriptions written by hand. ID comes first and IDX
+    /// last, so they are found without regard to quotes then.
     pub fn parse(line: &[u8]) -> Option<Self> {
         let equals = memchr::memchr(b'=', line)?;
         let inner = line[equals + 1..].strip_prefix(b"<")?.strip_suffix(b">")?;
@@ -26,8 +31,12 @@ impl MetaLine {
             key: text(&line[..equals]),
             ..MetaLine::default()
         };
-        for field in split_unquoted(inner)? {
-            let equals = memchr::memchr(b'=', field)?;
+        let fields =
+            split_unquoted(inner).unwrap_or_else(|| inner.split(|&byte| byte == b',').collect());
+        for field in fields {
+            let Some(equals) = memchr::memchr(b'=', field) else {
+                continue;
+            };
             let value = &field[equals + 1..];
             match &field[..equals] {
                 b"ID" => meta.id = Some(text(value)),
@@ -68,8 +77,8 @@ fn split_unquoted(inner: &[u8]) -> Option<Vec<&[u8]>> {
 /// Names by the numbers that binary records use: the order of the header unless `IDX` says otherwise.
 #[derive(Debug, Default, Clone)]
 pub(super) struct Numbering {
-    names: HashMap<u32, String>,
-    known: HashSet<String>,
+    names: HashMap<u32, Arc<str>>,
+    numbers: HashMap<Arc<str>, u32>,
     next: u32,
 }
 
@@ -82,58 +91,59 @@ impl Numbering {
     }
 
     fn insert(&mut self, number: u32, name: &str) {
-        self.names.insert(number, name.into());
-        self.known.insert(name.into());
+        let name: Arc<str> = name.into();
+        self.names.insert(number, Arc::clone(&name));
+        self.numbers.insert(name, number);
         self.next = self.next.max(number.saturating_add(1));
     }
 
-    /// Adds a name, which keeps its number when it is listed again.
+    /// Adds a name, which keeps its number when it is listed again; true when it is new.
     ///
     /// # Errors
-    /// `IDX` is no number, or is taken by another name.
-    pub fn add(&mut self, name: &str, index: Option<&str>) -> Result<(), Fault> {
+    /// `IDX` is no number, or is taken by another name, or there are more than [`MAX_NAMES`].
+    pub fn add(&mut self, name: &str, index: Option<&str>) -> Result<bool, Fault> {
+        let known = self.numbers.get(name).copied();
         let number = match index {
             Some(index) => index.parse().map_err(|_| {
-                Fault::new(
-                    format!("IDX={} is not a number", quote(index.as_bytes())),
-                    WRITE_AGAIN,
-                )
+                let index = quote(index.as_bytes());
+                Fault::new(format!("IDX={index} is not a number"), WRITE_AGAIN)
             })?,
-            None if self.known.contains(name) => return Ok(()),
-            None => self.next,
+            None => known.unwrap_or(self.next),
         };
-        match self.names.get(&number) {
-            Some(other) if other != name => Err(Fault::new(
+        let name_for_message = || quote(name.as_bytes());
+        match (known, self.names.get(&number)) {
+            (Some(same), _) if same == number => Ok(false),
+            (Some(_), _) => Err(Fault::new(
+                format!("{} has two different IDX numbers", name_for_message()),
+                WRITE_AGAIN,
+            )),
+            (None, Some(other)) => Err(Fault::new(
                 format!(
                     "{} and {} have the same IDX={number}",
                     quote(other.as_bytes()),
-                    quote(name.as_bytes())
+                    name_for_message()
                 ),
                 WRITE_AGAIN,
             )),
-            Some(_) => Ok(()),
-            None if self.known.contains(name) => Err(Fault::new(
-                format!("{} has two different IDX numbers", quote(name.as_bytes())),
-                WRITE_AGAIN,
+            (None, None) if self.names.len() == MAX_NAMES => Err(Fault::new(
+                format!("the header lists more than the {MAX_NAMES} names that are read"),
+                "drop ## lines that are not needed",
             )),
-            None => {
+            (None, None) => {
                 self.insert(number, name);
-                Ok(())
+                Ok(true)
             }
         }
     }
 
     /// The name of a number.
     pub fn name(&self, number: u32) -> Option<&str> {
-        self.names.get(&number).map(String::as_str)
+        self.names.get(&number).map(AsRef::as_ref)
     }
 
     /// The number of a name.
     pub fn number(&self, name: &str) -> Option<u32> {
-        self.names
-            .iter()
-            .find(|(_, n)| *n == name)
-            .map(|(&number, _)| number)
+        self.numbers.get(name).copied()
     }
 }
 
@@ -149,13 +159,13 @@ mod tests {
         assert_eq!(meta.index.as_deref(), Some("7"));
         let contig = MetaLine::parse(b"contig=<ID=lake,length=1000>").unwrap();
         assert_eq!((contig.key.as_str(), contig.length), ("contig", Some(1000)));
-        for bad in [
-            "source=x",
-            "FORMAT=<ID=GT",
-            "FORMAT=<ID=GT,Description=\"x>",
-            "=<>",
-            "",
-        ] {
+        let careless = br#"INFO=<ID=DP,Number=1,Description="depth, so-called,IDX=3>"#;
+        let meta = MetaLine::parse(careless).unwrap();
+        assert_eq!(
+            (meta.id.as_deref(), meta.index.as_deref()),
+            (Some("DP"), Some("3"))
+        );
+        for bad in ["source=x", "FORMAT=<ID=GT", "=<>", "FORMAT=<lake>", ""] {
             assert_eq!(
                 MetaLine::parse(bad.as_bytes()).and_then(|m| m.id),
                 None,

@@ -50,7 +50,6 @@ const UTF8_MARK: &[u8] = b"\xef\xbb\xbf";
 pub(super) struct HeaderParser {
     header: CallsHeader,
     lines: u64,
-    contigs_known: HashSet<String>,
     warnings: Vec<String>,
     unnamed_warnings: u64,
 }
@@ -69,7 +68,6 @@ impl HeaderParser {
                 contig_numbers: Numbering::default(),
             },
             lines: 0,
-            contigs_known: HashSet::new(),
             warnings: Vec::new(),
             unnamed_warnings: 0,
         }
@@ -113,7 +111,8 @@ impl HeaderParser {
         (self.header, self.warnings)
     }
 
-    fn warn(&mut self, warning: String) {
+    /// Notes something to tell about the line taken last.
+    pub fn warn(&mut self, warning: String) {
         if self.warnings.len() < MAX_HEADER_WARNINGS {
             self.warnings
                 .push(format!("header line {}: {warning}", self.lines));
@@ -180,10 +179,9 @@ impl HeaderParser {
         let id = meta.id.as_deref().unwrap_or_default();
         let index = meta.index.as_deref().filter(|_| self.header.binary);
         if meta.key != "contig" {
-            return self.header.keys.add(id, index);
+            return self.header.keys.add(id, index).map(|_| ());
         }
-        self.header.contig_numbers.add(id, index)?;
-        if self.contigs_known.insert(id.into()) {
+        if self.header.contig_numbers.add(id, index)? {
             self.header.contigs.push((id.into(), meta.length));
         } else {
             self.warn(format!("contig {} is listed again", quote(id.as_bytes())));

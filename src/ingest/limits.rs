@@ -4,10 +4,13 @@
 ///
 /// A million samples with ten FORMAT keys fit. Batches address records with 32 bits, so this must stay below 4 GiB.
 pub const MAX_RECORD_BYTES: usize = 256 << 20;
-/// Bytes of the header, all lines together: 256 MiB.
-pub const MAX_HEADER_BYTES: usize = 256 << 20;
-/// Sample columns: what the 24-bit count of BCF can express.
-pub const MAX_SAMPLES: usize = (1 << 24) - 1;
+/// Bytes of the header, all lines together: 128 MiB.
+pub const MAX_HEADER_BYTES: usize = 128 << 20;
+/// Sample columns, about a million: double the largest cohorts of today.
+pub const MAX_SAMPLES: usize = 1 << 20;
+/// Contigs, or INFO, FILTER and FORMAT names together, that a header may list: about two million,
+/// so that a hostile header costs less than a gigabyte.
+pub const MAX_NAMES: usize = 1 << 21;
 /// Alleles of one record, the reference included; beyond, the record is set aside as
 /// [`crate::model::Verdict::TooManyAlleles`].
 pub const MAX_ALLELES: usize = 4096;

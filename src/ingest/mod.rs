@@ -31,12 +31,14 @@ mod header;
 mod inflate;
 pub mod limits;
 mod order;
+mod preamble;
 pub mod programme;
 mod reader;
 mod remarks;
 mod scan;
 pub mod sheet;
 mod source;
+mod split;
 mod text;
 
 pub use batch::RecordBatch;

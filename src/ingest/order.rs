@@ -47,19 +47,28 @@ impl OrderWatch {
             return;
         };
         self.place(record, contig, position);
-        self.alleles(record, reference, alternates.split(|&byte| byte == b','));
+        let known = self.changes.len();
+        let mut repeated = false;
+        for alternate in alternates.split(|&byte| byte == b',') {
+            repeated |= self.change(known, reference, alternate);
+        }
+        if repeated {
+            self.remarks.add(Remark::RepeatedVariant, record);
+        }
     }
 
     /// Looks at a binary record, likewise.
     pub fn binary(&mut self, record: u64, bytes: &[u8]) {
         let Ok(site) = Site::split(bytes) else { return };
         self.place(record, &site.contig.to_le_bytes(), site.position);
-        let mut alleles = Vec::new();
-        if site.alleles(|allele| alleles.push(allele)).is_ok() {
-            let [reference, alternates @ ..] = &alleles[..] else {
-                return;
-            };
-            self.alleles(record, reference, alternates.iter().copied());
+        let known = self.changes.len();
+        let (mut reference, mut repeated) = (None, false);
+        let whole = site.alleles(|allele| match reference {
+            None => reference = Some(allele),
+            Some(reference) => repeated |= self.change(known, reference, allele),
+        });
+        if repeated && whole.is_ok() {
+            self.remarks.add(Remark::RepeatedVariant, record);
         }
     }
 
@@ -81,32 +90,24 @@ impl OrderWatch {
         self.changes.retain(|&(at, _)| at >= position);
     }
 
-    fn alleles<'a>(
-        &mut self,
-        record: u64,
-        reference: &[u8],
-        alternates: impl Iterator<Item = &'a [u8]>,
-    ) {
-        let known = self.changes.len();
-        let mut repeated = false;
-        for alternate in alternates.filter(|alternate| is_bases(alternate)) {
-            let (skipped, from, to) = shortest(reference, alternate);
-            self.scratch.clear();
-            self.scratch.extend_from_slice(from);
-            self.scratch.push(b'>');
-            self.scratch.extend_from_slice(to);
-            let change = (
-                self.position.saturating_add(skipped),
-                stable_hash(&self.scratch),
-            );
-            repeated |= self.changes[..known].contains(&change);
-            if self.changes.len() < MAX_VARIANTS_WATCHED {
-                self.changes.push(change);
-            }
+    /// Remembers a change of sequence; true when it was among the first `known` already.
+    fn change(&mut self, known: usize, reference: &[u8], alternate: &[u8]) -> bool {
+        if !is_bases(alternate) {
+            return false;
         }
-        if repeated {
-            self.remarks.add(Remark::RepeatedVariant, record);
+        let (skipped, from, to) = shortest(reference, alternate);
+        self.scratch.clear();
+        self.scratch.extend_from_slice(from);
+        self.scratch.push(b'>');
+        self.scratch.extend_from_slice(to);
+        let change = (
+            self.position.saturating_add(skipped),
+            stable_hash(&self.scratch),
+        );
+        if self.changes.len() < MAX_VARIANTS_WATCHED {
+            self.changes.push(change);
         }
+        self.changes[..known].contains(&change)
     }
 }
 

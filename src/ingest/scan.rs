@@ -28,7 +28,7 @@ pub(super) enum RowFlaw {
     },
 }
 
-/// Number of columns in the sample part of a line.
+/// Number of columns in a line or a part of it.
 pub(super) fn count_columns(samples: &[u8]) -> usize {
     memchr_iter(b'\t', samples).count() + 1
 }

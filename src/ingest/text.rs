@@ -3,6 +3,7 @@
 use memchr::memchr;
 
 use super::fault::{Fault, WRITE_AGAIN, quote};
+use super::scan::count_columns;
 
 /// Names of the nine columns before the samples.
 pub(super) const COLUMNS: [&str; 9] = [
@@ -42,7 +43,15 @@ impl<'a> Line<'a> {
             at += length + 1;
         }
         let [contig, position, id, reference, alternates, _, _, _, format] = fields;
-        let position = read_position(position)?;
+        let position = read_position(position).map_err(|fault| {
+            // Columns that are not parted by tabs are the better explanation.
+            let (found, expected) = (count_columns(line), samples + COLUMNS.len());
+            if found == expected {
+                fault
+            } else {
+                wrong_columns(found, expected)
+            }
+        })?;
         Ok(Line {
             contig,
             position,

@@ -22,18 +22,8 @@ pub struct PanelLocus {
     pub contig_hash: u64,
     /// 1-based position.
     pub position: u64,
-    /// Number of alleles listed.
-    pub allele_count: usize,
-    /// Allele pairs by slot; `None` when missing.
-    codes: Vec<[u16; 2]>,
-}
-
-impl PanelLocus {
-    /// The genotype of a slot, the lower allele code first; `None` when missing.
-    pub fn pair(&self, slot: usize) -> Option<[u16; 2]> {
-        let pair = self.codes[slot];
-        (pair[0] != crate::model::MISSING_ALLELE).then_some(pair)
-    }
+    /// Genotypes by slot.
+    pub genotypes: Genotypes,
 }
 
 /// The loci of lowest priority among those offered.
@@ -57,17 +47,12 @@ impl Panel {
         {
             return;
         }
-        let genotypes: &Genotypes = &locus.genotypes;
-        let missing = [crate::model::MISSING_ALLELE; 2];
         self.loci.insert(PanelLocus {
             priority,
             contig: locus.contig.clone(),
             contig_hash: locus.contig_hash,
             position: locus.position,
-            allele_count: genotypes.allele_count(),
-            codes: (0..genotypes.len())
-                .map(|s| genotypes.pair(s).unwrap_or(missing))
-                .collect(),
+            genotypes: locus.genotypes.clone(),
         });
         self.trim();
     }

@@ -61,7 +61,7 @@ impl Locus {
 ///
 /// Up to two listed alleles, genotypes are dosages of allele 1 in one byte each; beyond, pairs of
 /// allele codes. Only one of the two stores is filled at a time.
-#[derive(Debug, Clone, Default)]
+#[derive(Debug, Clone, Default, PartialEq, Eq, PartialOrd, Ord)]
 pub struct Genotypes {
     allele_count: usize,
     dosages: Vec<u8>,

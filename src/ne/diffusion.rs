@@ -22,6 +22,9 @@ use super::wright_fisher::binomial_probabilities;
 const FEWEST_NODES: usize = 66;
 /// The most interior nodes: enough for 5000 gene copies a sample; beyond, very short intervals lose digits.
 const MOST_NODES: usize = 322;
+/// Scaled time from which the series of [`Grid::lost`] has converged with the fewest nodes: its last
+/// term is damped by exp(-2211 T), 3e-12 here.
+pub const SHORTEST_SERIES: f64 = 0.012;
 /// Number of neighbouring population sizes through which the exact chain is interpolated.
 const SUPPORT: usize = 6;
 
@@ -150,6 +153,59 @@ impl Grid {
         sampling.times(&self.carry(&lattice, 0.0))
     }
 
+    /// Drift over `generations` of a whole number of gene copies, 2N = `copies`, exactly: values at
+    /// `points`. Fractions of a generation mix the two neighbouring numbers of generations.
+    pub fn exact(&self, points: &[f64], generations: f64, copies: u32) -> Matrix {
+        let whole = generations.floor();
+        let fraction = generations - whole;
+        let step = self.generation(&self.nodes, copies);
+        let mut lower = if whole >= 1.0 {
+            self.generation(points, copies)
+                .times(&power(&step, whole as u32 - 1))
+        } else {
+            self.carry(points, 0.0)
+        };
+        if fraction > 0.0 {
+            let upper = if whole >= 1.0 {
+                lower.times(&step)
+            } else {
+                self.generation(points, copies)
+            };
+            for (l, u) in lower.data.iter_mut().zip(&upper.data) {
+                *l = (1.0 - fraction) * *l + fraction * u;
+            }
+        }
+        lower
+    }
+
+    /// Chance, by the diffusion, that an allele of each frequency of `points` is lost within scaled
+    /// time `time` (Kimura 1955). The series needs `time` of at least [`SHORTEST_SERIES`].
+    pub fn lost(&self, points: &[f64], time: f64) -> Vec<f64> {
+        let order = self.order();
+        // Integral of (1-x) phi_k over (0, 1), exact by a plain Gauss rule.
+        let plain = Rule::jacobi(order, 0.0, 0.0);
+        let mut coefficients = vec![0.0; order];
+        for (values, (x, w)) in drift_polynomials(order, &plain.nodes)
+            .iter()
+            .zip(plain.nodes.iter().zip(&plain.weights))
+        {
+            for (c, v) in coefficients.iter_mut().zip(values) {
+                *c += w * (1.0 - x) * v;
+            }
+        }
+        for (c, l) in coefficients.iter_mut().zip(eigenvalues(order)) {
+            *c *= (-l * time).exp();
+        }
+        drift_polynomials(order, points)
+            .iter()
+            .zip(points)
+            .map(|(values, &p)| {
+                let sum: f64 = values.iter().zip(&coefficients).map(|(v, c)| v * c).sum();
+                ((1.0 - p) * (1.0 - p * sum)).clamp(0.0, 1.0)
+            })
+            .collect()
+    }
+
     /// Drift over `generations` at drift rate `u` by the exact chain of 2N = 1/u gene copies, with
     /// derivatives with respect to u.
     ///
@@ -196,6 +252,22 @@ impl Grid {
         let [value, first, second] = upper.0;
         Drift::new(value, first, second)
     }
+}
+
+fn power(matrix: &Matrix, exponent: u32) -> Matrix {
+    let mut out = Matrix::identity(matrix.rows);
+    let mut square = matrix.clone();
+    let mut left = exponent;
+    while left > 0 {
+        if left & 1 == 1 {
+            out = out.times(&square);
+        }
+        left >>= 1;
+        if left > 0 {
+            square = square.times(&square);
+        }
+    }
+    out
 }
 
 fn eigenvalues(order: usize) -> impl Iterator<Item = f64> {

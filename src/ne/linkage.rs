@@ -7,6 +7,7 @@
 
 mod life_history;
 mod panel;
+mod without_each;
 
 use std::fmt;
 
@@ -25,6 +26,13 @@ pub const INDIVIDUAL_VARIANCE_FACTOR: f64 = 0.71;
 
 /// Samples of so many individuals and more use the first row of constants of Waples (2006).
 const LARGE_SAMPLE: f64 = 30.0;
+
+/// The sample size whose constants turn the excess of the linear-time sums into Ne. The constants for
+/// small samples belong to the approximate [`expected_by_sampling`] of small samples; the sums take
+/// the exact expectation off instead, which leaves the large-sample relation at every size. Simulated
+/// (free loci, 150 to 400 runs), estimate over truth with either: N 100, S 25: 0.96 and 0.89; N 50,
+/// S 20: 0.97 and 0.91; N 20, S 20: 0.95 and 0.89; N 50, S 12: 0.88 and 0.82; error 0.01 to 0.02.
+const AFTER_EXACT_EXPECTATION: f64 = LARGE_SAMPLE;
 
 /// The mating system that the constants presume.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -258,7 +266,7 @@ impl LinkageEstimate {
 
     /// The point estimate of Ne; `None` is unbounded.
     pub fn effective_size(&self) -> Option<f64> {
-        effective_size(self.excess, self.individuals, self.mating).map(|size| size / self.ratio)
+        self.size_at(self.excess)
     }
 
     /// 1/(2 Ne) of the point estimate, with its sign.
@@ -287,17 +295,18 @@ impl LinkageEstimate {
     /// The same interval as effective sizes.
     pub fn size_interval(&self, quantile: f64) -> Option<SizeInterval> {
         let (low, high) = self.excess_interval(quantile)?;
-        let size = |excess| {
-            effective_size(excess, self.individuals, self.mating).map(|size| size / self.ratio)
-        };
         Some(SizeInterval {
-            low: size(high),
-            high: size(low),
+            low: self.size_at(high),
+            high: self.size_at(low),
         })
     }
 
+    fn size_at(&self, excess: f64) -> Option<f64> {
+        effective_size(excess, AFTER_EXACT_EXPECTATION, self.mating).map(|size| size / self.ratio)
+    }
+
     fn drift_rate_at(&self, excess: f64) -> f64 {
-        self.ratio * drift_rate(excess, self.individuals, self.mating)
+        self.ratio * drift_rate(excess, AFTER_EXACT_EXPECTATION, self.mating)
     }
 }
 

@@ -9,7 +9,7 @@ use super::jacobi::ln_beta;
 use super::matrix::{Matrix, solve_columns};
 
 /// A row keeps what is above this share of its largest entry: about 8.5 standard deviations.
-const CUT: f64 = 1e-16;
+pub(crate) const CUT: f64 = 1e-16;
 
 /// Probabilities of 0..=n successes in n draws at success chance `p`: by the ratio of neighbours
 /// outwards from the mode, which cannot underflow, then scaled to add up to 1.
@@ -22,7 +22,7 @@ pub fn binomial_probabilities(n: u32, p: f64) -> Vec<f64> {
 
 /// The stretch of a binomial distribution above `cut` times its largest term: the first number of
 /// successes and the probabilities from there on.
-fn binomial_band(n: u32, p: f64, cut: f64) -> (usize, Vec<f64>) {
+pub(crate) fn binomial_band(n: u32, p: f64, cut: f64) -> (usize, Vec<f64>) {
     let size = n as usize + 1;
     if p <= 0.0 {
         return (0, vec![1.0]);

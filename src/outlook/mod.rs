@@ -1,4 +1,6 @@
 //! Projections and simulations that build on the estimates.
 
 pub mod losses;
+pub mod outliers;
+mod passage;
 pub mod rehearse;

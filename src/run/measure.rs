@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::path::Path;
 use std::sync::Arc;
 
+use super::available_threads;
 use super::pipeline::{Collected, LocusTable, Source, collect};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
@@ -126,7 +127,9 @@ impl Inputs {
             programme: &self.programme,
             level: plan.level,
             false_discovery_rate: plan.false_discovery_rate,
-        };
+            fits: Vec::new(),
+        }
+        .fitted();
         let effective_size = assemble::effective_size(&findings);
         Report {
             format: FORMAT.to_owned(),
@@ -136,9 +139,9 @@ impl Inputs {
             loci: loci(all),
             strata: assemble::strata(&findings),
             comparisons: assemble::comparisons(&findings),
+            effective_size_summary: assemble::summaries(&findings, &effective_size),
             effective_size,
-            effective_size_summary: Vec::new(),
-            losses: Vec::new(),
+            losses: assemble::losses(&findings),
             at_risk: assemble::at_risk(&findings),
             carriers: assemble::carriers(&findings),
             allele_spectra: assemble::allele_spectra(&findings),
@@ -345,8 +348,4 @@ fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
         problem,
         cure: "give calls with a GT field for the samples of the sheet".to_owned(),
     }
-}
-
-fn available_threads() -> usize {
-    std::thread::available_parallelism().map_or(1, |n| n.get())
 }

@@ -5,8 +5,9 @@ mod pipeline;
 
 pub use measure::measure;
 
-use crate::cli::Work;
+use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
+use crate::outlook;
 use crate::report::{Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
@@ -19,9 +20,30 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
             plan.without_samples,
             plan.figures.as_deref(),
         ),
-        Work::Rehearse(_) => Err(Error::Usage("not yet".to_owned())),
+        Work::Rehearse(plan) => rehearse(&plan),
         Work::Schema { name } => schema(name.as_deref()),
     }
+}
+
+/// Simulates a monitored population and tells what was written.
+fn rehearse(plan: &RehearsePlan) -> Result<()> {
+    let threads = plan.threads.unwrap_or_else(available_threads);
+    let done = outlook::rehearse::rehearse(&plan.scenario, &plan.output, plan.seed, threads)?;
+    if !plan.quiet {
+        eprintln!(
+            "{} loci of {} samples in {} strata, seed {}; {} alleles went from a population",
+            done.loci, done.samples, done.strata, done.seed, done.alleles_gone
+        );
+        for file in &done.files {
+            eprintln!("  {}", file.display());
+        }
+    }
+    Ok(())
+}
+
+/// The threads used when none are asked for: as many as the machine grants.
+fn available_threads() -> usize {
+    std::thread::available_parallelism().map_or(1, |n| n.get())
 }
 
 /// Prints the JSON Schema of one document, or the names of all.

@@ -52,6 +52,12 @@ impl CountPanel {
         self.weights.is_empty()
     }
 
+    /// Copies and gene copies typed of row `i` at the oldest visit.
+    pub fn first(&self, i: usize) -> (u32, u32) {
+        let visits = self.visits();
+        (self.copies[i * visits], self.totals[i * visits])
+    }
+
     /// Whether row `i` can be used: the baseline minor allele frequency is at least `limit` and some
     /// later visit has typed copies.
     pub fn usable(&self, i: usize, limit: f64) -> bool {

@@ -15,12 +15,14 @@ mod columns;
 mod engine;
 mod fit;
 mod two_way;
+mod weights;
 
 pub use change::{SizeChange, size_change};
 pub use columns::CountPanel;
 pub use engine::Kernel;
 pub use fit::{Fit, fit_by_interval, fit_constant, profile};
 pub use two_way::{DosagePanel, DriftInterval, TwoWay, two_way, two_way_by_interval};
+pub use weights::{RateWeight, rate_weights};
 
 /// Beta(a, b): what is believed of an allele's frequency before any count.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -34,6 +36,14 @@ pub struct BetaPrior {
 impl BetaPrior {
     /// Every frequency alike.
     pub const FLAT: BetaPrior = BetaPrior { a: 1.0, b: 1.0 };
+
+    /// The same belief seen from the other allele.
+    pub fn exchanged(self) -> Self {
+        BetaPrior {
+            a: self.b,
+            b: self.a,
+        }
+    }
 }
 
 /// Why there is no estimate.

@@ -48,6 +48,16 @@ impl DosagePanel {
         self.blocks.push(block);
     }
 
+    /// Number of rows.
+    pub fn len(&self) -> usize {
+        self.weights.len()
+    }
+
+    /// Whether there is no row.
+    pub fn is_empty(&self) -> bool {
+        self.weights.is_empty()
+    }
+
     /// Number of individuals over all visits.
     fn width(&self) -> usize {
         self.individuals.iter().sum()

@@ -2,10 +2,10 @@
 
 use super::dice::{Dice, Purpose};
 use super::genome::{Unit, common_frequencies, diverged};
-use super::population::{Generation, History, Origin};
+use super::population::{History, Origin};
 use super::sampling::Source;
 use super::scenario::Scenario;
-use super::watch::{Gone, Watch};
+use super::watch::{Gone, Watch, count_strata};
 
 /// Where the loci of a unit are in a haplotype. Word `w` holds loci 64w to 64w + 63, once for each
 /// bit that its allele codes need (its planes): locus `l` has code `sum of bit(l, plane) << plane`.
@@ -171,8 +171,8 @@ pub fn transmit(
                     let haplotype = into.get_mut(child, side);
                     match *origin {
                         Origin::Founder(population) => {
-                            let frequencies = &frequencies[population as usize];
-                            draw_founder(&layout, frequencies, haplotype, &mut founding);
+                            let first = &frequencies[population as usize];
+                            draw_founder(first, &layout, haplotype, &mut founding);
                         }
                         Origin::Child(parents) => {
                             let parent = parents[side] as usize;
@@ -200,52 +200,55 @@ pub fn transmit(
     }
 }
 
-/// Running sums of first frequencies: by population and locus, as 32-bit limits of each allele but
-/// the last.
+/// Running sums of the first frequencies of one population, as limits of a random 32-bit number:
+/// the allele code is the number of limits of the locus at or below it.
+struct FirstFrequencies {
+    limits: Vec<u64>,
+    /// Where the limits of each locus end.
+    ends: Vec<usize>,
+}
+
 fn first_frequencies(
     scenario: &Scenario,
     unit: &Unit,
     layout: &Layout,
     seed: u64,
-) -> Vec<Vec<Vec<u64>>> {
+) -> Vec<FirstFrequencies> {
     let mut dice = Dice::new(seed, Purpose::Frequencies, unit.number, 0);
-    let mut limits = vec![Vec::with_capacity(unit.sites.len()); scenario.population.len()];
+    let empty = |_| FirstFrequencies {
+        limits: Vec::new(),
+        ends: Vec::new(),
+    };
+    let mut all: Vec<FirstFrequencies> = scenario.population.iter().map(empty).collect();
     for (site, &alleles) in unit.sites.iter().zip(&layout.alleles) {
         let set = &scenario.loci[site.set as usize];
         let common = common_frequencies(&set.frequencies, alleles as usize, &mut dice);
-        for (population, limits) in scenario.population.iter().zip(&mut limits) {
+        for (population, first) in scenario.population.iter().zip(&mut all) {
             let own = diverged(&common, population.divergence, &mut dice);
-            limits.push(running_limits(&own));
+            let mut sum = 0.0;
+            for frequency in &own[..own.len() - 1] {
+                sum += frequency;
+                first.limits.push((sum * 4_294_967_296.0).round() as u64);
+            }
+            first.ends.push(first.limits.len());
         }
     }
-    limits
+    all
 }
 
-/// An allele code is the number of limits at or below a random 32-bit number.
-fn running_limits(frequencies: &[f64]) -> Vec<u64> {
-    let mut sum = 0.0;
-    let mut limits = Vec::with_capacity(frequencies.len() - 1);
-    for &f in &frequencies[..frequencies.len() - 1] {
-        sum += f;
-        limits.push((sum * 4_294_967_296.0).round() as u64);
-    }
-    limits
-}
-
-fn draw_founder(layout: &Layout, limits: &[Vec<u64>], haplotype: &mut [u64], dice: &mut Dice) {
-    let mut word = 0;
-    for (locus, limits) in limits.iter().enumerate() {
-        // Two numbers a word of chance.
-        let number = if locus % 2 == 0 {
-            word = dice.word();
-            word as u32
+/// Draws the codes of a haplotype, two numbers a word of chance.
+fn draw_founder(first: &FirstFrequencies, layout: &Layout, haplotype: &mut [u64], dice: &mut Dice) {
+    let (mut word, mut start) = (0, 0);
+    for (locus, &end) in first.ends.iter().enumerate() {
+        word = if locus % 2 == 0 {
+            dice.word()
         } else {
-            (word >> 32) as u32
+            word >> 32
         };
-        let code = limits
-            .iter()
-            .filter(|&&limit| u64::from(number) >= limit)
-            .count() as u16;
+        let number = word & 0xffff_ffff;
+        let limits = &first.limits[start..end];
+        start = end;
+        let code = limits.iter().map(|&limit| u16::from(number >= limit)).sum();
         layout.set(haplotype, locus, code);
     }
 }
@@ -314,34 +317,6 @@ fn keep_samples(
             samples
                 .get_mut(sample, side)
                 .copy_from_slice(from.get(individual, side));
-        }
-    }
-}
-
-fn count_strata(
-    history: &History,
-    index: usize,
-    generation: &Generation,
-    layout: &Layout,
-    adults: &Haplotypes,
-    copies: &mut [Vec<Vec<u32>>],
-) {
-    for (stratum, copies) in history.strata.iter().zip(copies) {
-        if history.index(stratum.generation) != index {
-            continue;
-        }
-        *copies = layout
-            .alleles
-            .iter()
-            .map(|&a| vec![0; a as usize])
-            .collect();
-        for adult in generation.ranges[stratum.population].clone() {
-            for side in 0..2 {
-                let haplotype = adults.get(adult as usize, side);
-                for (locus, copies) in copies.iter_mut().enumerate() {
-                    copies[layout.code(haplotype, locus) as usize] += 1;
-                }
-            }
         }
     }
 }

@@ -1,4 +1,5 @@
-//! Alleles that vanish from a whole population between its first and its last visit.
+//! Whole populations: their allele copies at visits, and alleles that vanish between the first visit
+//! and the last.
 
 use std::collections::BTreeMap;
 
@@ -134,5 +135,94 @@ impl Missing {
                 self.since.remove(&key);
             }
         }
+    }
+}
+
+/// Counts the gene copies of all adults of the strata of this generation.
+pub fn count_strata(
+    history: &History,
+    index: usize,
+    generation: &Generation,
+    layout: &Layout,
+    adults: &Haplotypes,
+    copies: &mut [Vec<Vec<u32>>],
+) {
+    for (stratum, copies) in history.strata.iter().zip(copies) {
+        if history.index(stratum.generation) != index {
+            continue;
+        }
+        let range = generation.ranges[stratum.population].clone();
+        *copies = layout
+            .alleles
+            .iter()
+            .map(|&a| vec![0; a as usize])
+            .collect();
+        for block in 0..layout.blocks() {
+            for code in 0..layout.most_alleles(block) {
+                let mut counter = BitCounter::default();
+                for adult in range.clone() {
+                    for side in 0..2 {
+                        let haplotype = adults.get(adult as usize, side);
+                        counter.add(layout.matches(haplotype, block, code));
+                    }
+                }
+                let loci = copies[64 * block..].iter_mut().take(64).enumerate();
+                for (bit, copies) in loci.filter(|(_, c)| c.len() > usize::from(code)) {
+                    copies[usize::from(code)] = counter.count(bit);
+                }
+            }
+        }
+    }
+}
+
+/// Counts how often each bit of many words is set: 64 binary counters side by side, a word a digit.
+#[derive(Default)]
+struct BitCounter {
+    digits: Vec<u64>,
+}
+
+impl BitCounter {
+    fn add(&mut self, word: u64) {
+        let mut carry = word;
+        for digit in &mut self.digits {
+            let next = *digit & carry;
+            *digit ^= carry;
+            carry = next;
+            if carry == 0 {
+                return;
+            }
+        }
+        if carry != 0 {
+            self.digits.push(carry);
+        }
+    }
+
+    fn count(&self, bit: usize) -> u32 {
+        self.digits
+            .iter()
+            .enumerate()
+            .map(|(d, word)| ((word >> bit & 1) as u32) << d)
+            .sum()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::dice::{Dice, Purpose};
+    use super::*;
+
+    #[test]
+    fn bit_counters_count_as_loops_do() {
+        let mut dice = Dice::new(1, Purpose::Meiosis, 0, 0);
+        let mut counter = BitCounter::default();
+        let mut slow = [0; 64];
+        for _ in 0..1000 {
+            let word = dice.word() & dice.word();
+            counter.add(word);
+            for (bit, slow) in slow.iter_mut().enumerate() {
+                *slow += (word >> bit & 1) as u32;
+            }
+        }
+        assert_eq!(std::array::from_fn(|bit| counter.count(bit)), slow);
     }
 }

@@ -343,3 +343,178 @@ fn write_truth(truth: &Truth, out: &Path) -> Result<(NamedTempFile, PathBuf)> {
         .map_err(|e| Error::io(&path, "write", e.into_error()))?;
     Ok((file, path))
 }
+
+#[cfg(test)]
+mod tests {
+    use std::io::{BufRead, BufReader, Read};
+
+    use noodles_csi::BinningIndex;
+
+    use super::*;
+
+    const SCENARIO: &str = r#"
+start_year = 2001
+generation_years = 1.5
+chromosome = [{ name = "k", length_bp = 3_000_000, copies = 2 }, { name = "z", length_bp = 50_000 }]
+loci = [{ count = 3000, chromosomes = ["k"] }, { count = 40, alleles = 12, chromosomes = ["k"] }]
+population = [{ name = "Over Wick", size = 20 }]
+visit = [
+    { generation = 0, individuals = 8, label = "before" },
+    { generation = 3, individuals = 8, replicates = 1, recaptured = 1 },
+]
+genotyping = { depth = 6, missing_rate = 0.1, fields = ["DP", "AD", "GQ", "PL"] }
+"#;
+
+    fn written(seed: u64) -> (tempfile::TempDir, Summary) {
+        let folder = tempfile::tempdir().unwrap();
+        let scenario = folder.path().join("scenario.toml");
+        std::fs::write(&scenario, SCENARIO).unwrap();
+        let summary = rehearse(&scenario, &folder.path().join("new/out"), Some(seed), 2).unwrap();
+        (folder, summary)
+    }
+
+    fn lines(path: &Path) -> Vec<String> {
+        let file = std::fs::File::open(path).unwrap();
+        BufReader::new(flate2::read::MultiGzDecoder::new(file))
+            .lines()
+            .map(|l| l.unwrap())
+            .collect()
+    }
+
+    /// Records, through a reader of text of its own, against the simulation in memory.
+    #[test]
+    fn the_calls_are_those_of_the_simulation() {
+        let (_folder, summary) = written(4);
+        assert_eq!((summary.seed, summary.loci, summary.samples), (4, 3040, 17));
+        let lines = lines(&summary.files[0]);
+        assert_eq!(lines[0], "##fileformat=VCFv4.3");
+        assert!(lines.contains(&"##contig=<ID=k_2,length=3000000>".to_string()));
+        let scenario = super::super::read_scenario(&_folder.path().join("scenario.toml")).unwrap();
+        let simulation = super::super::simulate(&scenario, 4).unwrap();
+        let records: Vec<&String> = lines.iter().filter(|l| !l.starts_with('#')).collect();
+        assert_eq!(records.len(), simulation.loci.len());
+        for (index, record) in records.iter().enumerate() {
+            let columns: Vec<&str> = record.split('\t').collect();
+            let locus = &simulation.loci[index];
+            assert_eq!(columns[0], simulation.contigs[locus.contig].name);
+            assert_eq!(columns[1], locus.position.to_string());
+            assert_eq!(
+                format!("{},{}", columns[3], columns[4]),
+                locus.alleles.join(",")
+            );
+            assert_eq!(columns[8], "GT:DP:AD:GQ:PL");
+            let alleles = locus.alleles.len();
+            for (column, call) in columns[9..].iter().zip(simulation.genotypes(index)) {
+                let fields: Vec<&str> = column.split(':').collect();
+                let reads: Vec<u32> = fields[2].split(',').map(|n| n.parse().unwrap()).collect();
+                assert_eq!(reads.len(), alleles);
+                assert_eq!(fields[1], reads.iter().sum::<u32>().to_string());
+                let Some([a, b]) = call else {
+                    assert_eq!((fields[0], fields[3], fields[4]), ("./.", ".", "."));
+                    continue;
+                };
+                assert_eq!(fields[0], format!("{a}/{b}"));
+                let scores: Vec<u32> = fields[4].split(',').map(|n| n.parse().unwrap()).collect();
+                assert_eq!(scores.len(), alleles * (alleles + 1) / 2);
+                // The standard puts genotype a/b, a <= b, at b(b + 1)/2 + a.
+                assert_eq!(scores[usize::from(b * (b + 1) / 2 + a)], 0);
+            }
+        }
+    }
+
+    /// Every region asked of the index holds the records a scan of the file finds there.
+    #[test]
+    fn the_index_finds_what_a_scan_finds() {
+        let (_folder, summary) = written(5);
+        let index = tabix::fs::read(&summary.files[1]).unwrap();
+        let names = index.header().unwrap().reference_sequence_names().clone();
+        let all = lines(&summary.files[0]);
+        let place = |line: &str| {
+            let mut columns = line.split('\t');
+            (
+                columns.next().unwrap().to_string(),
+                columns.next().unwrap().parse::<usize>().unwrap(),
+            )
+        };
+        for (name, from, to) in [
+            ("k_1", 1, 70_000),
+            ("k_2", 1_500_000, 1_600_000),
+            ("k_2", 2_999_000, 3_000_000),
+        ] {
+            let id = names.get_index_of(name.as_bytes()).unwrap();
+            let [start, end] = [from, to].map(|n| Position::try_from(n).unwrap());
+            let chunks = index.query(id, (start..=end).into()).unwrap();
+            let mut found = Vec::new();
+            for chunk in chunks {
+                let file = std::fs::File::open(&summary.files[0]).unwrap();
+                let mut reader = bgzf::io::Reader::new(file);
+                reader.seek(chunk.start()).unwrap();
+                while reader.virtual_position() < chunk.end() {
+                    let mut line = String::new();
+                    reader.read_line(&mut line).unwrap();
+                    let (contig, position) = place(&line);
+                    if contig == name && (from..=to).contains(&position) {
+                        found.push(line.trim_end().to_string());
+                    }
+                }
+            }
+            let scanned: Vec<&String> = all
+                .iter()
+                .filter(|l| !l.starts_with('#'))
+                .filter(|l| place(l).0 == name && (from..=to).contains(&place(l).1))
+                .collect();
+            assert!(found.iter().eq(scanned), "{name}:{from}-{to}");
+        }
+    }
+
+    #[test]
+    fn sheet_and_truth_tell_of_every_sample() {
+        let (folder, summary) = written(6);
+        let sheet = std::fs::read_to_string(&summary.files[2]).unwrap();
+        let rows: Vec<Vec<&str>> = sheet.lines().map(|l| l.split('\t').collect()).collect();
+        let columns = [
+            "sample",
+            "population",
+            "year",
+            "generation",
+            "visit",
+            "sex",
+            "replicate_of",
+        ];
+        assert_eq!(rows[0], columns);
+        assert_eq!(rows.len(), 18);
+        assert_eq!(
+            rows[1][..5],
+            ["overwick-2001-01", "Over Wick", "2001", "0", "before"]
+        );
+        assert_eq!(
+            rows[9][..5],
+            ["overwick-2005.5-01", "Over Wick", "2005.5", "3", "2005.5"]
+        );
+        assert!(rows[17][0] == format!("{}-again", rows[17][6]));
+        let header = lines(&summary.files[0])
+            .into_iter()
+            .find(|l| l.starts_with("#CHROM"))
+            .unwrap();
+        let named: Vec<&str> = header.split('\t').skip(9).collect();
+        assert!(rows[1..].iter().map(|r| r[0]).eq(named));
+        let mut text = String::new();
+        std::fs::File::open(&summary.files[3])
+            .unwrap()
+            .read_to_string(&mut text)
+            .unwrap();
+        let truth: serde_json::Value = serde_json::from_str(&text).unwrap();
+        assert_eq!(truth["format"], "genewane-truth");
+        assert_eq!(truth["seed"], 6);
+        assert_eq!(truth["strata"][1]["stratum"], "Over Wick@2005.5");
+        assert_eq!(truth["loci"].as_array().unwrap().len(), 3040);
+        assert_eq!(
+            truth["gone"].as_array().unwrap().len() as u64,
+            summary.alleles_gone
+        );
+        let left = std::fs::read_dir(folder.path().join("new/out"))
+            .unwrap()
+            .count();
+        assert_eq!(left, 4, "temporary files were left behind");
+    }
+}

@@ -1,5 +1,6 @@
 //! The section on pairs of strata.
 
+use super::losses::{Explained, unexplained};
 use super::{ANY, Findings, POSITIVE, ratio};
 use crate::locus::PairTerms;
 use crate::locus::fstatistics::NeiDiversity;
@@ -11,13 +12,20 @@ use crate::report::wire;
 /// One entry a comparison, in the order of the comparisons.
 pub fn comparisons(findings: &Findings) -> Vec<wire::Comparison> {
     let all = findings.comparisons.iter().zip(&findings.sums.pairs);
-    all.map(|(comparison, sums)| one(findings, comparison, sums))
+    all.enumerate()
+        .map(|(i, (comparison, sums))| one(findings, i, comparison, sums))
         .collect()
 }
 
-fn one(findings: &Findings, comparison: &Comparison, sums: &PairSums) -> wire::Comparison {
+fn one(
+    findings: &Findings,
+    index: usize,
+    comparison: &Comparison,
+    sums: &PairSums,
+) -> wire::Comparison {
     let name = |s: usize| findings.strata.strata[s].name.clone();
     let in_time = comparison.kind != ComparisonKind::BetweenPopulations;
+    let explained = Explained::of(findings, index);
     let pair = Pair {
         findings,
         sums: &sums.change,
@@ -44,18 +52,14 @@ fn one(findings: &Findings, comparison: &Comparison, sums: &PairSums) -> wire::C
         fk: in_time.then(|| pair.change(|t| ratio(t.fk, t.independent_alleles))),
         fs: in_time.then(|| pair.change(|t| ratio(t.fs_numerator, t.fs_denominator))),
         change: differences(&pair),
-        alleles: in_time.then(|| wire::AlleleFates {
-            baseline: sums.fates.alleles(),
-            not_seen_again: sums.fates.not_seen(),
-            expected_not_seen_again: None,
-            expected_interval: None,
-            faster_than_explained: None,
-            probably_lost: None,
-            expected_share_wrong: None,
-            absent_because: Some(Absence::GenerationsUnknown.text().to_owned()),
+        alleles: in_time.then(|| match &explained {
+            Some(explained) => explained.alleles(findings.level),
+            None => unexplained(&sums.fates, comparison.generations),
         }),
         loci_fixed_since: in_time.then_some(sums.fates.loci_fixed),
-        outlier_loci: None,
+        outlier_loci: explained
+            .filter(|_| comparison.kind == ComparisonKind::SinceBaseline)
+            .map(|explained| explained.outliers(findings)),
     }
 }
 

@@ -3,11 +3,13 @@
 mod comparisons;
 mod effective_size;
 mod latest;
+mod losses;
 mod strata;
 
 pub use comparisons::comparisons;
-pub use effective_size::effective_size;
+pub use effective_size::{Fits, effective_size, fits, summaries};
 pub use latest::{allele_spectra, at_risk, carriers};
+pub use losses::losses;
 pub use strata::strata;
 
 use super::wire;
@@ -30,9 +32,17 @@ pub struct Findings<'a> {
     pub level: f64,
     /// Rate at which false discoveries are controlled.
     pub false_discovery_rate: f64,
+    /// The likelihood fits, made once by [`Findings::fitted`] for every section that needs them.
+    pub fits: Vec<Fits>,
 }
 
 impl Findings<'_> {
+    /// The findings with their likelihood fits.
+    pub fn fitted(mut self) -> Self {
+        self.fits = fits(&self);
+        self
+    }
+
     /// An estimate as the report writes it, its limits held inside `range`.
     fn wire(&self, estimate: &Estimate, range: [f64; 2]) -> wire::Estimate {
         let held = |x: f64| x.clamp(range[0], range[1]);

@@ -164,3 +164,6 @@ impl Found {
         }
     }
 }
+
+#[cfg(test)]
+mod tests;

@@ -257,3 +257,32 @@ fn founders_and_growth_come_as_told() {
     assert_eq!(sizes("a"), [40, 30, 50, 50, 50, 50, 50, 50, 50]);
     assert_eq!(sizes("b"), [0, 0, 6, 15, 23, 30, 30, 4, 30]);
 }
+
+/// Prints how long runs of the size of a calibration study take.
+#[test]
+#[ignore = "a measurement, to be read"]
+fn speed() {
+    for (linkage, n, loci, t, sample) in [
+        ("unlinked = true", 100, 1000, 10, 50),
+        ("copies = 20", 100, 1000, 10, 50),
+        ("unlinked = true", 1000, 20_000, 20, 100),
+        ("copies = 20", 1000, 20_000, 20, 100),
+        ("copies = 20", 500, 10_000, 50, 100),
+        ("unlinked = true", 25, 300, 2, 25),
+    ] {
+        let s = scenario(&format!(
+            "chromosome = [{{ name = \"c\", length_bp = 100_000_000, {linkage} }}]\n\
+             loci = [{{ count = {loci} }}]\npopulation = [{{ name = \"p\", size = {n} }}]\n\
+             visit = [{{ generation = 0, individuals = {sample} }}, {{ generation = {t}, individuals = {sample} }}]"
+        ));
+        let clock = std::time::Instant::now();
+        let runs = (20_000_000 / (n * loci * t)).max(2);
+        for seed in 0..runs {
+            assert_eq!(run(&s, seed as u64).loci.len(), loci);
+        }
+        let each = clock.elapsed() / runs as u32;
+        println!(
+            "{linkage}, N {n}, {loci} loci, {t} generations, {sample} sampled twice: {each:?}"
+        );
+    }
+}

@@ -1,6 +1,6 @@
 //! Temporal estimates from standardised changes of allele frequency.
 
-use super::Subject;
+use super::{FEWEST_INDIVIDUALS, Subject};
 use crate::locus::PairTerms;
 use crate::merge::PairSums;
 use crate::model::{Comparison, ComparisonKind, SamplingPlan};
@@ -91,7 +91,11 @@ impl Estimator {
         let census = census(findings, comparison);
         let total = sums.change.total();
         let sizes = harmonic_sizes(&total);
-        let estimate = self.estimate(comparison, sums, census);
+        let smallest = from.individuals().min(to.individuals());
+        let estimate = match smallest < FEWEST_INDIVIDUALS {
+            true => Estimate::absent(Absence::TooFewIndividuals),
+            false => self.estimate(comparison, sums, census),
+        };
         let stated = findings
             .programme
             .get(&from.population, |p| p.plan)
