@@ -80,17 +80,8 @@ pub fn listed_samples(path: &Path) -> Vec<(u64, String)> {
     };
     let (mut unused, mut notes) = (Vec::new(), Vec::new());
     let columns = Columns::of(&table.header, &mut unused, &mut notes);
-    let drafts = table.records.iter().filter_map(|record| {
-        let problems = &mut unused;
-        let columns = &columns;
-        RowReader {
-            record,
-            columns,
-            problems,
-        }
-        .read()
-    });
-    drafts
+    read_rows(&table, &columns, &mut unused)
+        .into_iter()
         .filter(|draft| draft.replicate_of.is_none())
         .map(|draft| (draft.row, draft.sample))
         .collect()
@@ -107,15 +98,7 @@ pub fn parse_sheet(bytes: &[u8]) -> std::result::Result<(Vec<SheetRow>, Vec<Note
             "write one row for each sample",
         ));
     }
-    let mut rows = Vec::with_capacity(table.records.len());
-    for record in &table.records {
-        let mut reader = RowReader {
-            record,
-            columns: &columns,
-            problems: &mut problems,
-        };
-        rows.extend(reader.read());
-    }
+    let rows = read_rows(&table, &columns, &mut problems);
     check_together(&rows, &mut problems);
     if !problems.is_empty() {
         problems.sort_by_key(|problem| problem.row);
@@ -124,6 +107,18 @@ pub fn parse_sheet(bytes: &[u8]) -> std::result::Result<(Vec<SheetRow>, Vec<Note
     let rows: Vec<SheetRow> = rows.into_iter().filter_map(Draft::finish).collect();
     note_oddities(&rows, table.blank_records, &mut notes);
     Ok((rows, notes))
+}
+
+fn read_rows(table: &table::Table, columns: &Columns, problems: &mut Vec<Problem>) -> Vec<Draft> {
+    let read = |record| {
+        RowReader {
+            record,
+            columns,
+            problems,
+        }
+        .read()
+    };
+    table.records.iter().filter_map(read).collect()
 }
 
 /// A row as far as it could be read. Its checks against other rows need no more than names.
