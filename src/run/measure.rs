@@ -17,7 +17,7 @@ use crate::model::{
 };
 use crate::report::assemble::{self, Findings};
 use crate::report::table::{LocusTable as Table, TableFile};
-use crate::report::warnings::warning;
+use crate::report::warnings::{of_findings, warning};
 use crate::report::wire::{
     FORMAT, FORMAT_VERSION, InputFile, Loci, Provenance, Report, Samples, Warning,
 };
@@ -145,7 +145,7 @@ impl Inputs {
             at_risk: assemble::at_risk(&findings),
             carriers: assemble::carriers(&findings),
             allele_spectra: assemble::allele_spectra(&findings),
-            warnings: self.warnings(all),
+            warnings: self.warnings(all, &findings),
             cautions: CAUTIONS.iter().map(|&text| text.to_owned()).collect(),
         }
     }
@@ -225,7 +225,7 @@ impl Inputs {
         }
     }
 
-    fn warnings(&self, all: &Collected) -> Vec<Warning> {
+    fn warnings(&self, all: &Collected, findings: &Findings) -> Vec<Warning> {
         let notes = self
             .sheet
             .notes
@@ -241,6 +241,7 @@ impl Inputs {
             let told = told.chain(remarks.messages());
             warnings.extend(told.map(|text| warning(&Note::new("calls", file.clone(), text))));
         }
+        warnings.extend(of_findings(findings));
         warnings
     }
 }

@@ -8,12 +8,19 @@ pub use measure::measure;
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
+use crate::report::summary::summary;
 use crate::report::{Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
     match work {
-        Work::Measure(plan) => measure(&plan, told_arguments(arguments)).map(drop),
+        Work::Measure(plan) => {
+            let report = measure(&plan, told_arguments(arguments))?;
+            if !plan.quiet {
+                eprint!("{}", summary(&report));
+            }
+            Ok(())
+        }
         Work::Page(plan) => page::write_page(
             &plan.report,
             plan.output.as_deref(),
