@@ -1,7 +1,9 @@
 //! What leaves the house: wire types, and the files that carry them.
 
 pub mod assemble;
+pub mod figures;
 mod json;
+pub mod page;
 pub mod table;
 pub mod warnings;
 pub mod wire;

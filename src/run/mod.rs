@@ -8,12 +8,18 @@ pub use measure::measure;
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
-use crate::report::Output;
+use crate::report::{Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
     match work {
         Work::Measure(plan) => measure(&plan, told_arguments(arguments)).map(drop),
+        Work::Page(plan) => page::write_page(
+            &plan.report,
+            plan.output.as_deref(),
+            plan.without_samples,
+            plan.figures.as_deref(),
+        ),
         Work::Rehearse(plan) => rehearse(&plan),
         Work::Schema { name } => schema(name.as_deref()),
     }

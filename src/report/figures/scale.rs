@@ -56,11 +56,6 @@ impl Scale {
         self.pixels[0] + share * (self.pixels[1] - self.pixels[0])
     }
 
-    /// Whether the value lies on the scale.
-    pub fn holds(&self, value: f64) -> bool {
-        (self.values[0]..=self.values[1]).contains(&value)
-    }
-
     /// Round values on the scale: at most about `most` on a linear one, powers of ten on the other.
     pub fn ticks(&self, most: usize) -> Vec<f64> {
         let [low, high] = self.values;

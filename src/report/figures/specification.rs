@@ -155,16 +155,17 @@ pub fn in_time(table: &Table) -> Value {
     })
 }
 
-/// Alleles at risk by carrier as bars.
+/// Scarce alleles by carrier: bars, and points for what is expected to vanish.
 pub fn carriers(table: &Table) -> Value {
     let y = json!({"field": "individual", "type": "nominal", "title": null, "sort": null});
-    let bar = |field: &str, opacity: f64| {
-        json!({
-            "mark": {"type": "bar", "color": LIGHT.plum, "opacity": opacity},
-            "encoding": {"x": {"field": field, "type": "quantitative", "title": "Alleles at risk carried"}, "y": y}
-        })
-    };
-    let mut whole = by_population(table, json!([bar("alleles", 0.3), bar("alone", 1.0)]));
+    let x = |field: &str| json!({"field": field, "type": "quantitative", "title": "Alleles"});
+    let mut whole = by_population(
+        table,
+        json!([
+            {"mark": {"type": "bar", "color": LIGHT.plum}, "encoding": {"x": x("only_carrier"), "y": y}},
+            {"mark": {"type": "point", "shape": "diamond", "color": LIGHT.ink}, "encoding": {"x": x("would_vanish"), "y": y}}
+        ]),
+    );
     whole["resolve"] = json!({"scale": {"y": "independent"}});
     whole
 }
