@@ -9,8 +9,10 @@ pub mod fstatistics;
 pub mod hardy_weinberg;
 pub mod individuals;
 pub mod richness;
+mod term_list;
 mod terms;
 
 pub use classes::GenotypeClasses;
 pub use counts::Counts;
+pub use term_list::Terms;
 pub use terms::{PairTerms, PrivateTerms, StratumTerms, pair_terms, private_terms, stratum_terms};
