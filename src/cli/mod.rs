@@ -8,6 +8,7 @@ mod common;
 mod measure;
 mod rehearse;
 mod schema;
+mod verdict;
 
 use std::ffi::OsString;
 use std::path::PathBuf;
@@ -23,6 +24,8 @@ pub enum Work {
     Measure(Box<MeasurePlan>),
     /// Simulate a monitored population.
     Rehearse(RehearsePlan),
+    /// Judge a report against a policy.
+    Verdict(VerdictPlan),
     /// Print the JSON Schema of what the program writes.
     Schema {
         /// Which document; all of them are listed when absent.
@@ -43,6 +46,34 @@ pub struct RehearsePlan {
     pub threads: Option<usize>,
     /// Whether progress stays off standard error.
     pub quiet: bool,
+}
+
+/// A report to judge.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct VerdictPlan {
+    /// The report; `-` is standard input. Absent when the built-in policy is to be printed.
+    pub report: Option<PathBuf>,
+    /// The policy file; the built-in policy when absent.
+    pub policy: Option<PathBuf>,
+    /// Whether the share of populations above 500 is added.
+    pub indicator: bool,
+    /// What "cannot tell" counts as for the exit code.
+    pub on_uncertain: OnUncertain,
+    /// Where the verdict goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// Whether the table stays off standard error.
+    pub quiet: bool,
+}
+
+/// What "cannot tell" counts as for the exit code of a verdict.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum OnUncertain {
+    /// As met.
+    Met,
+    /// As breached.
+    Breached,
+    /// As neither.
+    Tell,
 }
 
 /// Genetic monitoring of wild and captive populations.
@@ -73,12 +104,14 @@ const EXIT_STATUS: &str = "\
 Exit status:
   0  done
   1  the work failed: a file that cannot be read, written or trusted
-  2  wrong usage, or an input sheet or settings file with problems";
+  2  wrong usage, or an input sheet or settings file with problems
+  3  a verdict found a breach";
 
 #[derive(Subcommand)]
 enum Command {
     Measure(measure::Flags),
     Rehearse(rehearse::Flags),
+    Verdict(verdict::Flags),
     Schema(schema::Flags),
 }
 
@@ -96,6 +129,7 @@ where
     match flags.command {
         Command::Measure(flags) => Ok(Work::Measure(Box::new(flags.plan()?))),
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
+        Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
     }
 }

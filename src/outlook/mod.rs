@@ -4,3 +4,5 @@ pub mod losses;
 pub mod outliers;
 mod passage;
 pub mod rehearse;
+pub mod settings;
+pub mod verdict;

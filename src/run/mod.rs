@@ -2,6 +2,7 @@
 
 mod measure;
 mod pipeline;
+mod verdict;
 
 pub use measure::measure;
 
@@ -15,6 +16,7 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
     match work {
         Work::Measure(plan) => measure(&plan, told_arguments(arguments)).map(drop),
         Work::Rehearse(plan) => rehearse(&plan),
+        Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
         Work::Schema { name } => schema(name.as_deref()),
     }
 }
@@ -40,14 +42,28 @@ fn available_threads() -> usize {
     std::thread::available_parallelism().map_or(1, |n| n.get())
 }
 
+/// Documents that the program writes, by name, with their schemas.
+const DOCUMENTS: [(&str, fn() -> schemars::Schema); 2] = [
+    ("report", || {
+        schemars::schema_for!(crate::report::wire::Report)
+    }),
+    ("verdict", || {
+        schemars::schema_for!(crate::report::verdict::Verdict)
+    }),
+];
+
 /// Prints the JSON Schema of one document, or the names of all.
 fn schema(name: Option<&str>) -> Result<()> {
     let out = Output::create(None)?;
-    match name {
-        None => out.bytes(b"report\n"),
-        Some("report") => out.json(&schemars::schema_for!(crate::report::wire::Report)),
-        Some(other) => Err(Error::Usage(format!(
-            "no document is called '{other}'; there are: report"
+    let names = || DOCUMENTS.map(|(name, _)| name);
+    let Some(name) = name else {
+        return out.bytes(format!("{}\n", names().join("\n")).as_bytes());
+    };
+    match DOCUMENTS.iter().find(|(document, _)| *document == name) {
+        Some((_, schema)) => out.json(&schema()),
+        None => Err(Error::Usage(format!(
+            "no document is called '{name}'; there are: {}",
+            names().join(", ")
         ))),
     }
 }
