@@ -692,7 +692,8 @@ fn a_simulated_population_of_fifty() {
     near(estimate.effective_size().unwrap(), 2.0 * size, 1e-12);
 }
 
-/// The two simulation tables of the linear-time method: bias, variation and coverage. Prints; asserts
+/// The simulation tables of the linear-time method: bias, variation and coverage (0.95 to 0.97 in all
+/// ten rows when last run, 1/mean(1/Ne) within 6 % of the truth but for 15 individuals). Asserts
 /// loosely. Run with `--ignored --nocapture`; about a minute.
 #[test]
 #[ignore = "a simulation study of ten seconds and more"]

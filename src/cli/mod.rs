@@ -6,6 +6,7 @@
 
 mod common;
 mod measure;
+mod page;
 mod rehearse;
 mod schema;
 mod verdict;
@@ -22,6 +23,8 @@ use crate::model::MeasurePlan;
 pub enum Work {
     /// Genotype calls in, report out.
     Measure(Box<MeasurePlan>),
+    /// Set a report as a page.
+    Page(PagePlan),
     /// Simulate a monitored population.
     Rehearse(RehearsePlan),
     /// Judge a report against a policy.
@@ -31,6 +34,19 @@ pub enum Work {
         /// Which document; all of them are listed when absent.
         name: Option<String>,
     },
+}
+
+/// A page to make.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct PagePlan {
+    /// The report; `-` is standard input.
+    pub report: PathBuf,
+    /// Where the page goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// The folder that gets each figure as a file, if any.
+    pub figures: Option<PathBuf>,
+    /// Whether sample names stay off the page.
+    pub without_samples: bool,
 }
 
 /// A simulation to run.
@@ -110,6 +126,7 @@ Exit status:
 #[derive(Subcommand)]
 enum Command {
     Measure(measure::Flags),
+    Page(page::Flags),
     Rehearse(rehearse::Flags),
     Verdict(verdict::Flags),
     Schema(schema::Flags),
@@ -128,6 +145,7 @@ where
     let flags = Flags::try_parse_from(args)?;
     match flags.command {
         Command::Measure(flags) => Ok(Work::Measure(Box::new(flags.plan()?))),
+        Command::Page(flags) => Ok(Work::Page(flags.plan())),
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
         Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),

@@ -224,3 +224,16 @@ fn stated_defaults_are_the_defaults_of_the_plan() {
         assert!(help.contains(&stated), "{stated}\n{help}");
     }
 }
+
+#[test]
+fn a_page_says_where_it_goes_and_what_stays_off() {
+    assert_eq!(
+        parse("page r.json -o p.html --figures figures --without-samples").unwrap(),
+        Work::Page(PagePlan {
+            report: "r.json".into(),
+            output: Some("p.html".into()),
+            figures: Some("figures".into()),
+            without_samples: true,
+        })
+    );
+}

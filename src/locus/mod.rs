@@ -7,6 +7,7 @@ mod counts;
 pub mod diversity;
 pub mod fstatistics;
 pub mod hardy_weinberg;
+pub mod individuals;
 pub mod richness;
 mod terms;
 

@@ -1,5 +1,5 @@
 //! Sums over loci of individual x individual matrices, from which linkage between ALL pairs of loci
-//! follows without any pair being formed (METHODS: linkage Ne in linear time).
+//! follows without any pair being formed.
 //!
 //! Per stratum, contig and [`FrequencyCutoff`], over loci with unit vectors z of centred dosages
 //! (0 where missing), typed masks m, n typed, a = 1/(n-1), b = a/n, h = a (1 - 2/n):
@@ -9,7 +9,8 @@
 //! ```
 //!
 //! A locus with k kept alleles, k > 2, gives one vector an allele with weight (k-1)/k and enters the
-//! other sums k-1 times; two alleles give one vector (Weir 1979; Waples & Do 2008 weights).
+//! other sums k-1 times, so that a pair of loci weighs (k1-1)(k2-1) as usual; two alleles give one
+//! vector, because both say the same.
 //!
 //! # Exactness
 //!

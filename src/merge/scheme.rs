@@ -4,10 +4,11 @@ use std::ops::Range;
 
 use crate::model::{Comparison, ComparisonKind, Strata};
 
-/// Memory that windows of one run may take, in bytes; their number follows from it.
-const WINDOW_MEMORY: usize = 48 << 20;
-/// Windows beyond which an interval gains nothing.
-const MOST_WINDOWS: usize = 4096;
+/// Memory that windows of one worker may take, in bytes; their number follows from it.
+const WINDOW_MEMORY: usize = 16 << 20;
+/// Windows beyond which an interval gains nothing: blocks are made of the longest windows of which
+/// there are at least 20.
+const MOST_WINDOWS: usize = 1024;
 
 /// The strata, the pairs to compare and the thresholds of one run.
 #[derive(Debug, Clone, PartialEq)]

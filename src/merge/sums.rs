@@ -100,14 +100,6 @@ impl Sums {
     pub fn new(scheme: Arc<Scheme>) -> Self {
         let most = scheme.most_windows();
         let range = |s: usize| scheme.strata[s].clone();
-        let strata = (0..scheme.strata.len())
-            .map(|s| StratumSums {
-                diversity: TwoWay::new(vec![0..range(s).len()], most),
-                typed_genotypes: 0,
-                hardy_weinberg: PValueHistogram::default(),
-                linkage: GramStratum::new(range(s).len()),
-            })
-            .collect::<Vec<_>>();
         let side_by_side = |members: &[usize]| {
             let mut start = 0;
             let group = |&s: &usize| {
@@ -117,6 +109,14 @@ impl Sums {
             };
             members.iter().map(group).collect::<Vec<_>>()
         };
+        let strata = (0..scheme.strata.len())
+            .map(|s| StratumSums {
+                diversity: TwoWay::new(side_by_side(&[s]), most),
+                typed_genotypes: 0,
+                hardy_weinberg: PValueHistogram::default(),
+                linkage: GramStratum::new(range(s).len()),
+            })
+            .collect::<Vec<_>>();
         let pairs = scheme
             .pairs
             .iter()

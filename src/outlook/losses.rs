@@ -63,9 +63,17 @@ impl LossTable {
     /// Prepares a table: the fitted prior, weighted drift rates (which add up to 1), generations
     /// since the baseline (more than 0), and the most gene copies typed later at any locus.
     pub fn new(prior: BetaPrior, rates: &[RateWeight], generations: f64, most_later: u32) -> Self {
-        let sides = [prior, prior.exchanged()]
-            .map(|prior| Passage::new(prior, rates, generations, most_later));
-        let lost = [0, 1].map(|i: usize| sides[i].lost(rates, generations));
+        let counted = Passage::new(prior, rates, generations, most_later);
+        // A symmetric prior makes both sides alike; the work is the same for either.
+        let other = match prior == prior.exchanged() {
+            true => counted.clone(),
+            false => Passage::new(prior.exchanged(), rates, generations, most_later),
+        };
+        let lost = [
+            counted.lost(rates, generations),
+            other.lost(rates, generations),
+        ];
+        let sides = [counted, other];
         LossTable {
             sides,
             lost,

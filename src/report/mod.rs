@@ -1,9 +1,11 @@
 //! What leaves the house: wire types, and the files that carry them.
 
 pub mod assemble;
+pub mod figures;
 pub mod headline;
 mod json;
-pub mod read;
+pub mod page;
+pub mod summary;
 pub mod table;
 pub mod verdict;
 pub mod warnings;

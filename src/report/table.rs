@@ -165,7 +165,7 @@ pub enum TableFile {
     /// As text.
     Plain(io::BufWriter<WholeFile>),
     /// Compressed by gzip.
-    Gzip(GzEncoder<io::BufWriter<WholeFile>>),
+    Gzip(Box<GzEncoder<io::BufWriter<WholeFile>>>),
 }
 
 impl TableFile {
@@ -176,7 +176,7 @@ impl TableFile {
             .extension()
             .is_some_and(|e| e.eq_ignore_ascii_case("gz"));
         Ok(match compressed {
-            true => TableFile::Gzip(GzEncoder::new(file, Compression::default())),
+            true => TableFile::Gzip(Box::new(GzEncoder::new(file, Compression::default()))),
             false => TableFile::Plain(file),
         })
     }

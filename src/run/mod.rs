@@ -9,12 +9,25 @@ pub use measure::measure;
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
-use crate::report::Output;
+use crate::report::summary::summary;
+use crate::report::{Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
     match work {
-        Work::Measure(plan) => measure(&plan, told_arguments(arguments)).map(drop),
+        Work::Measure(plan) => {
+            let report = measure(&plan, told_arguments(arguments))?;
+            if !plan.quiet {
+                eprint!("{}", summary(&report));
+            }
+            Ok(())
+        }
+        Work::Page(plan) => page::write_page(
+            &plan.report,
+            plan.output.as_deref(),
+            plan.without_samples,
+            plan.figures.as_deref(),
+        ),
         Work::Rehearse(plan) => rehearse(&plan),
         Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
         Work::Schema { name } => schema(name.as_deref()),

@@ -10,7 +10,7 @@ use sha2::{Digest, Sha256};
 use crate::cli::{self, VerdictPlan};
 use crate::error::{Error, Result};
 use crate::outlook::verdict::{DEFAULT_POLICY, parse_policy, read_policy};
-use crate::report::read::parse_report;
+use crate::report::page::parse_report;
 use crate::report::verdict::{self, OnUncertain};
 use crate::report::wire::{InputFile, Provenance, Report};
 use crate::report::{Output, methods};

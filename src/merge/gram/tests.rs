@@ -299,7 +299,7 @@ fn few_and_many_individuals_have_a_reason() {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(24))]
+    #![proptest_config(ProptestConfig::with_cases(12))]
 
     /// Any order, any cut in three, any grouping of the merge: the same integers.
     #[test]

@@ -15,6 +15,7 @@ mod genome;
 mod meiosis;
 mod numbers;
 mod population;
+mod records;
 mod sampling;
 mod scenario;
 mod simulation;

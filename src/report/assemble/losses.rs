@@ -84,7 +84,7 @@ impl<'a> Explained<'a> {
     /// effective sizes.
     fn expected(&self) -> (f64, f64) {
         let mut by_rate = Vec::new();
-        for rate in &self.fits.weights {
+        for rate in &thinned(&self.fits.weights) {
             let mut table = self.table(&[RateWeight {
                 rate: rate.rate,
                 weight: 1.0,
@@ -169,6 +169,24 @@ impl<'a> Explained<'a> {
             list: found.into_iter().take(MOST_OUTLIERS).collect(),
         }
     }
+}
+
+/// Every second rate with the weight of the one beside it: the number of alleles expected to be
+/// missing is smooth in the rate, and each rate costs a passage of its own.
+fn thinned(weights: &[RateWeight]) -> Vec<RateWeight> {
+    let pair = |pair: &[RateWeight]| {
+        let weight: f64 = pair.iter().map(|w| w.weight).sum();
+        let rate: f64 = pair.iter().map(|w| w.weight * w.rate).sum();
+        RateWeight {
+            rate: if weight > 0.0 {
+                rate / weight
+            } else {
+                pair[0].rate
+            },
+            weight,
+        }
+    };
+    weights.chunks(2).map(pair).collect()
 }
 
 /// Fates without an effective size to explain them.

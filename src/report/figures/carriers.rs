@@ -1,137 +1,149 @@
 //! The individuals that carry what is at risk, a panel a population.
 
-use std::collections::BTreeMap;
-
-use super::drawing::{Anchor, Drawing};
+use super::drawing::{Anchor, Drawing, Shape};
 use super::scale::Scale;
 use super::subject::Subject;
 use super::table::{Cell, Table};
 use super::{Figure, PANEL_WIDTH, Panel, numbers, specification};
-use crate::report::wire::Report;
+use crate::report::wire::{Carrier, Report};
 
 const ROW: f64 = 21.0;
 const NAME_WIDTH: f64 = 120.0;
+const LEFT: f64 = NAME_WIDTH + 16.0;
 /// Individuals drawn of one population; the table has all.
 const MOST_ROWS: usize = 15;
 
-/// Carriers of alleles at risk, those of most alleles first.
+/// Carriers of scarce alleles, in the order of the report.
 pub fn figure(report: &Report, subjects: &[Subject]) -> Option<Figure> {
-    let all: Vec<(&str, Vec<Carrier>)> = subjects
+    let all: Vec<(&str, Vec<&Carrier>)> = subjects
         .iter()
-        .map(|s| (s.population, carriers(report, s.population)))
+        .map(|s| {
+            let own = report.carriers.iter();
+            let own = own.filter(|c| c.population == s.population);
+            (s.population, own.collect::<Vec<_>>())
+        })
         .filter(|(_, carriers)| !carriers.is_empty())
         .collect();
-    let most = all.iter().flat_map(|(_, c)| c).map(|c| c.alleles).max()?;
-    let mut table = Table::new(
-        "Individuals by the number of alleles at risk that they carry.",
-        &[
-            ("population", "Population"),
-            ("individual", "Individual"),
-            ("alleles", "Alleles at risk carried"),
-            ("alone", "Of these, carried by no other in the sample"),
-        ],
-    );
-    for (population, carriers) in &all {
-        for c in carriers {
-            table.rows.push(vec![
-                Cell::from(*population),
-                Cell::from(c.name),
-                Cell::from(c.alleles),
-                Cell::from(c.alone),
-            ]);
-        }
+    if all.is_empty() {
+        return None;
     }
+    let carriers = all.iter().flat_map(|(_, c)| c);
+    let most = carriers.fold(1.0, |most, c| {
+        f64::max(most, (c.only_carrier as f64).max(c.would_vanish))
+    });
+    let table = table(report, &all);
     Some(Figure {
         name: "carriers",
         title: "Who carries what is at risk".to_owned(),
-        caption: "Individuals of the latest visit that carry alleles held in few copies: how many such \
-                  alleles each one carries, and (solid) how many of them no other sampled individual \
-                  carries. Counts of alleles. The sample shows carriers; animals that were not sampled \
-                  may carry them too."
+        caption: "Individuals of the latest visit on whom scarce alleles hang. Bars: alleles that this \
+                  individual alone carries among those sampled. Diamonds: alleles expected to vanish \
+                  from the sampled individuals if it does not breed and every other has two offspring; \
+                  exact for the sample, so without interval. Counts of alleles. Animals that were not \
+                  sampled may carry them too."
             .to_owned(),
-        panels: all.iter().map(|(name, c)| panel(name, c, most)).collect(),
+        panels: all
+            .iter()
+            .map(|(name, carriers)| panel(name, carriers, most))
+            .collect(),
         specification: specification::carriers(&table),
         table,
     })
 }
 
-struct Carrier<'a> {
-    name: &'a str,
-    alleles: u64,
-    alone: u64,
-}
-
-fn carriers<'a>(report: &'a Report, population: &str) -> Vec<Carrier<'a>> {
-    let mut counts: BTreeMap<&str, (u64, u64)> = BTreeMap::new();
-    for allele in report.at_risk.iter().filter(|a| a.population == population) {
-        for name in &allele.carriers {
-            let count = counts.entry(name).or_default();
-            count.0 += 1;
-            count.1 += u64::from(allele.carriers.len() == 1);
+fn table(report: &Report, all: &[(&str, Vec<&Carrier>)]) -> Table {
+    let mut table = Table::new(
+        "Individuals by the scarce alleles that hang on them.",
+        &[
+            ("population", "Population"),
+            ("individual", "Individual"),
+            ("only_carrier", "Alleles it alone carries"),
+            (
+                "would_vanish",
+                "Alleles expected to vanish without its offspring",
+            ),
+            ("listed", "Alleles at risk listed with it as a carrier"),
+        ],
+    );
+    for (population, carriers) in all {
+        for c in carriers {
+            let at_risk = report.at_risk.iter();
+            let listed =
+                at_risk.filter(|a| a.population == *population && a.carriers.contains(&c.sample));
+            table.rows.push(vec![
+                Cell::from(*population),
+                Cell::from(c.sample.as_str()),
+                Cell::from(c.only_carrier),
+                Cell::from(c.would_vanish),
+                Cell::from(listed.count() as u64),
+            ]);
         }
     }
-    let mut carriers: Vec<Carrier> = counts
-        .into_iter()
-        .map(|(name, (alleles, alone))| Carrier {
-            name,
-            alleles,
-            alone,
-        })
-        .collect();
-    carriers.sort_by(|a, b| {
-        (b.alleles, b.alone)
-            .cmp(&(a.alleles, a.alone))
-            .then(a.name.cmp(b.name))
-    });
-    carriers
+    table
 }
 
-fn panel(population: &str, carriers: &[Carrier], most: u64) -> Panel {
+fn panel(population: &str, carriers: &[&Carrier], most: f64) -> Panel {
     let shown = &carriers[..carriers.len().min(MOST_ROWS)];
     let mut d = Drawing::new();
     d.name("name", (8.0, 17.0), Anchor::Start, (population, 304.0));
-    let left = NAME_WIDTH + 16.0;
-    let x = Scale::linear([0.0, most as f64], [left, PANEL_WIDTH - 44.0]);
-    for (i, c) in shown.iter().enumerate() {
-        let y = 30.0 + ROW * i as f64;
-        let words = format!(
-            "{}: {}, {} in no other",
-            c.name,
-            numbers::counted(c.alleles, "allele", "alleles"),
-            numbers::count(c.alone)
-        );
-        d.name("", (8.0, y + 12.0), Anchor::Start, (c.name, NAME_WIDTH));
-        d.begin(&words);
-        let end = x.at(c.alleles as f64);
-        d.rectangle("plum band", (left, y + 1.0), (end - left, 14.0));
-        d.rectangle("plum area", (left, y + 1.0), (x.at(c.alone as f64) - left, 14.0));
-        d.rectangle("box", (left, y + 1.0), (end - left, 14.0));
-        d.text("small", (end + 5.0, y + 12.0), Anchor::Start, &numbers::count(c.alleles));
-        d.end();
+    let x = Scale::linear([0.0, most], [LEFT, PANEL_WIDTH - 14.0]);
+    let bottom = 32.0 + ROW * shown.len() as f64;
+    for tick in x.ticks(4) {
+        let at = x.at(tick);
+        d.line("grid", (at, 28.0), (at, bottom));
+        let label = numbers::decimals(tick, x.places(4));
+        d.text("tick", (at, bottom + 16.0), Anchor::Middle, &label);
     }
-    let mut bottom = 34.0 + ROW * shown.len() as f64;
-    d.rectangle("plum area", (8.0, bottom), (14.0, 11.0));
-    d.rectangle("box", (8.0, bottom), (14.0, 11.0));
-    d.text("small", (27.0, bottom + 10.0), Anchor::Start, "in no other sampled individual");
-    d.rectangle("plum band", (200.0, bottom), (14.0, 11.0));
-    d.rectangle("box", (200.0, bottom), (14.0, 11.0));
-    d.text("small", (219.0, bottom + 10.0), Anchor::Start, "in others too");
+    for (i, c) in shown.iter().enumerate() {
+        row(&mut d, c, &x, 30.0 + ROW * i as f64);
+    }
+    d.line("axis", (LEFT, bottom), (PANEL_WIDTH - 14.0, bottom));
+    let middle = (LEFT + PANEL_WIDTH - 14.0) / 2.0;
+    d.text("small", (middle, bottom + 33.0), Anchor::Middle, "Alleles");
+    let mut y = bottom + 52.0;
+    d.rectangle("plum area", (8.0, y - 10.0), (14.0, 11.0));
+    d.text("small", (27.0, y), Anchor::Start, "carried by it alone");
+    d.mark("ink hollow", Shape::Diamond, (160.0, y - 4.0));
+    d.text("small", (170.0, y), Anchor::Start, "expected to vanish");
     if carriers.len() > shown.len() {
         let more = (carriers.len() - shown.len()) as u64;
-        bottom += 18.0;
-        let words = format!("{} more in the table", numbers::counted(more, "individual", "individuals"));
-        d.text("small soft", (8.0, bottom + 10.0), Anchor::Start, &words);
+        y += 17.0;
+        let words = counted_more(more);
+        d.text("small soft", (8.0, y), Anchor::Start, &words);
     }
-    let words = shown.iter().map(|c| format!("{}: {}", c.name, c.alleles));
+    let words = shown.iter().map(|c| sentence(c));
     Panel {
         title: population.to_owned(),
         description: format!(
-            "{}. Alleles at risk carried: {}",
+            "{}. {}",
             numbers::counted(carriers.len() as u64, "carrier", "carriers"),
             words.collect::<Vec<_>>().join("; ")
         ),
         width: PANEL_WIDTH,
-        height: bottom + 18.0,
+        height: y + 8.0,
         body: d.into_body(),
     }
+}
+
+fn row(d: &mut Drawing, c: &Carrier, x: &Scale, y: f64) {
+    d.name("", (8.0, y + 12.0), Anchor::Start, (&c.sample, NAME_WIDTH));
+    d.begin(&sentence(c));
+    let size = (x.at(c.only_carrier as f64) - LEFT, 12.0);
+    d.rectangle("plum area", (LEFT, y + 2.0), size);
+    let at = (x.at(c.would_vanish), y + 8.0);
+    d.mark("ink hollow", Shape::Diamond, at);
+    d.end();
+}
+
+fn counted_more(n: u64) -> String {
+    let counted = numbers::counted(n, "more individual", "more individuals");
+    format!("{counted} in the table")
+}
+
+fn sentence(c: &Carrier) -> String {
+    format!(
+        "{}: {} carried by it alone, {} expected to vanish without its offspring",
+        c.sample,
+        numbers::counted(c.only_carrier, "allele", "alleles"),
+        numbers::decimals(c.would_vanish, 1)
+    )
 }

@@ -12,7 +12,9 @@ const LEFT_OUT: &str = "(names left out)";
 /// populations, visits and strata.
 pub fn without_samples(mut report: Report) -> Report {
     let mut numbers: BTreeMap<String, usize> = BTreeMap::new();
-    for carrier in report.at_risk.iter_mut().flat_map(|a| &mut a.carriers) {
+    let first = report.carriers.iter_mut().map(|c| &mut c.sample);
+    let listed = report.at_risk.iter_mut().flat_map(|a| &mut a.carriers);
+    for carrier in first.chain(listed) {
         let next = numbers.len() + 1;
         let number = *numbers.entry(std::mem::take(carrier)).or_insert(next);
         *carrier = format!("carrier {number}");
@@ -39,7 +41,10 @@ pub fn without_samples(mut report: Report) -> Report {
             warning.place = LEFT_OUT.to_owned();
         }
         // A name without quotes, where it stands as a word of its own.
-        for name in names.iter().filter(|n| n.len() > 2 && !places.contains(n.as_str())) {
+        for name in names
+            .iter()
+            .filter(|n| n.len() > 2 && !places.contains(n.as_str()))
+        {
             warning.text = without_word(&warning.text, name);
         }
     }

@@ -146,11 +146,11 @@ fn mixture_disequilibrium_decays_with_recombination() {
         let row = |d: &super::super::Dosages, l: usize| {
             d.values[l * d.individuals..(l + 1) * d.individuals].to_vec()
         };
-        for step in 1..5 {
+        for (step, ratios) in ratios.iter_mut().enumerate().skip(1) {
             let [first, last] = [&before, &after].map(|d| covariance(&row(d, 0), &row(d, step)));
             // Only where the two populations were fixed for different alleles at both loci.
             if first.abs() > 0.4 {
-                ratios[step].push(last / first);
+                ratios.push(last / first);
             }
         }
     }
@@ -181,7 +181,7 @@ fn linked_loci_settle_at_the_drift_expectation() {
         }
     }
     for (apart, values) in [1.0, 3.0].into_iter().zip(&values) {
-        let c = (1.0 - (-2.0 * 0.1 * apart as f64).exp()) / 2.0;
+        let c = (1.0 - (-2.0f64 * 0.1 * apart).exp()) / 2.0;
         let want = ((1.0 - c).powi(2) + c * c) / (2.0 * 100.5 * c * (2.0 - c)) + 1.0 / 99.0;
         // The formula is a ratio of expectations: within a tenth of the mean ratio.
         let mean = Mean::of(values);

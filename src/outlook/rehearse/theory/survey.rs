@@ -35,7 +35,7 @@ fn sampling_plans_have_the_enumerated_drift_signal() {
             sums.map(|sum| sum / (2.0 * d.individuals as f64)).collect()
         };
         let (mut numerators, mut denominators) = (Vec::new(), Vec::new());
-        for seed in 0..6000 {
+        for seed in 0..2500 {
             let simulation = run(&s, seed);
             let (x, y) = (frequencies(&simulation, 0), frequencies(&simulation, 1));
             let (mut numerator, mut denominator) = (0.0, 0.0);
@@ -54,7 +54,7 @@ fn sampling_plans_have_the_enumerated_drift_signal() {
             .zip(&denominators)
             .map(|(n, d)| want + (n - want * d) / scale)
             .collect();
-        Mean::of(&ratio).agrees(want, 4.0, 0.02, &format!("plan {plan}, N {n}"));
+        Mean::of(&ratio).agrees(want, 4.0, 0.03, &format!("plan {plan}, N {n}"));
     }
 }
 

@@ -9,12 +9,14 @@ use crate::ne::temporal::{TemporalSample, drift_rate_fc, drift_rate_fk, drift_ra
 use crate::report::assemble::{Findings, ratio};
 use crate::report::wire;
 
+/// F from the sums.
+type Change = fn(&PairTerms) -> Option<f64>;
 /// 1/(2Ne) from F and the sample.
 type Inversion = fn(f64, &TemporalSample) -> Option<f64>;
 
 /// The estimators: name, F from the sums, 1/(2Ne) from F. The first is the one to quote: in 72
 /// simulated designs its ratio of truth to estimate was 0.98 to 1.04, that of Fc 0.63 to 0.89.
-const ESTIMATORS: [(&str, fn(&PairTerms) -> Option<f64>, Inversion); 3] = [
+const ESTIMATORS: [(&str, Change, Inversion); 3] = [
     (
         "temporal_fs",
         |t| ratio(t.fs_numerator, t.fs_denominator),
@@ -74,7 +76,7 @@ fn census(findings: &Findings, comparison: &Comparison) -> Option<f64> {
 
 struct Estimator {
     method: &'static str,
-    f: fn(&PairTerms) -> Option<f64>,
+    f: Change,
     invert: Inversion,
     plan: SamplingPlan,
     first_plan: bool,
