@@ -1,0 +1,680 @@
+//! Alleles that somebody watches: the chance that each is lost, still there or fixed, by generation.
+
+use std::path::Path;
+
+use super::chance::{beta, binomial};
+use super::project::rate_of;
+use super::{Horizon, Scenario, Start};
+use crate::error::{Error, Problem, Result};
+use crate::model::{nearest, stable_hash};
+use crate::ne::jacobi::Rule;
+use crate::ne::wright_fisher::{CUT, binomial_band, fixation_chance};
+use crate::outlook::passage::{MOST_EXACT_COPIES, lost_from_many};
+use crate::outlook::rehearse::{Dice, Purpose};
+
+/// Effective sizes over which the chances are averaged.
+const SLICES: usize = 9;
+/// Nodes over the posterior of the frequency today.
+const NODES: usize = 128;
+/// Simulated paths an effective size, where neither the chain nor the diffusion serves; with nine
+/// sizes the Monte Carlo error of a chance stays below 0.004.
+const PATHS: usize = 2000;
+
+/// An allele to watch.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Watched {
+    /// 1-based line of the file.
+    pub row: u64,
+    /// Contig.
+    pub contig: String,
+    /// 1-based position.
+    pub position: u64,
+    /// Allele: code or text as in the report.
+    pub allele: String,
+    /// Its population; all where absent.
+    pub population: Option<String>,
+    /// s of fitness 1, 1 + s, 1 + 2s; 0 is neutral.
+    pub selection: f64,
+    /// Copies seen and gene copies typed at the latest visit, where the file says so.
+    pub counts: Option<(u32, u32)>,
+    /// Frequency where newcomers come from.
+    pub source_frequency: Option<f64>,
+}
+
+/// Chances at one generation; they add up to 1.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Fate {
+    /// Generations from the latest visit.
+    pub generation: usize,
+    /// No copy is left.
+    pub lost: f64,
+    /// Some copies are left, others are of another allele.
+    pub still_there: f64,
+    /// Every copy is of this allele.
+    pub fixed: f64,
+}
+
+/// How chances were computed.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Way {
+    /// By the exact chain (at most 2000 gene copies).
+    Chain,
+    /// By the diffusion.
+    Diffusion,
+    /// By simulated paths: selection or newcomers in more than 2000 gene copies.
+    Paths,
+}
+
+/// What may become of an allele.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Chances {
+    /// By generation: those asked for.
+    pub fates: Vec<Fate>,
+    /// Every way that some effective size needed.
+    pub ways: Vec<Way>,
+    /// Chance to be fixed in the end (Kimura 1962), at the last size; `None` when newcomers go on
+    /// coming, since nothing is fixed or lost for ever then.
+    pub fixed_in_the_end: Option<f64>,
+}
+
+/// One effective size's path, and what moves frequencies along it.
+struct Course<'a> {
+    rates: Vec<f64>,
+    scenario: &'a Scenario,
+    selection: f64,
+    source_frequency: f64,
+}
+
+impl Course<'_> {
+    /// Gene copies of generation g (1-based).
+    fn copies(&self, g: usize) -> u32 {
+        (1.0 / self.rates[g - 1]).round().clamp(1.0, 4e9) as u32
+    }
+
+    /// Frequency among the parents' gametes of generation g: newcomers, then selection.
+    fn parents(&self, p: f64, g: usize) -> f64 {
+        let size = 0.5 / self.rates[g - 1];
+        let mut p = p;
+        if let Some(arrival) = &self.scenario.migrants {
+            let share = arrival.individuals / (size + arrival.individuals);
+            p += share * (self.source_frequency - p);
+        }
+        if let Some((arrival, when)) = &self.scenario.release
+            && *when as usize == g
+        {
+            let share = arrival.individuals / (size + arrival.individuals);
+            p += share * (self.source_frequency - p);
+        }
+        let s = self.selection;
+        (p * (1.0 + s + s * p) / (1.0 + 2.0 * s * p)).clamp(0.0, 1.0)
+    }
+
+    fn is_plain(&self) -> bool {
+        self.selection == 0.0 && !self.scenario.is_open()
+    }
+}
+
+/// Chances of an allele seen in `counts` = copies of gene copies typed, at the generations asked for
+/// (ascending, at most the horizon's). `None` where nobody knows the effective size, or where
+/// newcomers come and their frequency is not given.
+pub fn chances(
+    start: &Start,
+    scenario: &Scenario,
+    watched: &Watched,
+    counts: (u32, u32),
+    generations: &[usize],
+    horizon: &Horizon,
+) -> Option<Chances> {
+    if scenario.is_open() && watched.source_frequency.is_none() {
+        return None;
+    }
+    let slices = rate_of(start, scenario)?.slices(SLICES);
+    let (k, n) = (f64::from(counts.0), f64::from(counts.1));
+    let prior = start.spectrum.prior;
+    let (a, b) = (prior.a + k, prior.b + (n - k).max(0.0));
+    let rule = Rule::beta(NODES, a, b);
+    let weight = 1.0 / slices.len() as f64;
+    let last = generations.last().copied().unwrap_or(0);
+    let mut sums = vec![[0.0; 2]; generations.len()];
+    let (mut ways, mut in_the_end) = (Vec::new(), 0.0);
+    for (i, &now) in slices.iter().enumerate() {
+        let course = Course {
+            rates: scenario.rates(now, last.max(1)),
+            scenario,
+            selection: watched.selection,
+            source_frequency: watched.source_frequency.unwrap_or(0.0),
+        };
+        let small = (1..=last).all(|g| course.copies(g) <= MOST_EXACT_COPIES);
+        let (way, part) = if small {
+            (Way::Chain, by_chain(&course, &rule, generations))
+        } else if course.is_plain() {
+            (Way::Diffusion, by_diffusion(&course, &rule, generations))
+        } else {
+            let unit = stable_hash(format!("{}:{}", watched.contig, watched.position).as_bytes());
+            let mut dice = Dice::new(horizon.seed, Purpose::Forecast, unit, i as u64);
+            (
+                Way::Paths,
+                by_paths(&course, (a, b), generations, &mut dice),
+            )
+        };
+        ways.push(way);
+        for (sum, ends) in sums.iter_mut().zip(part) {
+            sum[0] += weight * ends[0];
+            sum[1] += weight * ends[1];
+        }
+        let size = 0.5 / course.rates.last().copied().unwrap_or(now);
+        let fixed = rule.nodes.iter().zip(&rule.weights);
+        let total: f64 = rule.weights.iter().sum();
+        in_the_end += weight / total
+            * fixed
+                .map(|(&p, w)| w * fixation_chance(size, watched.selection, p))
+                .sum::<f64>();
+    }
+    ways.sort();
+    ways.dedup();
+    let fates = generations
+        .iter()
+        .zip(sums)
+        .map(|(&generation, [lost, fixed])| Fate {
+            generation,
+            lost,
+            still_there: (1.0 - lost - fixed).max(0.0),
+            fixed,
+        });
+    Some(Chances {
+        fates: fates.collect(),
+        ways,
+        fixed_in_the_end: (!scenario.is_open()).then_some(in_the_end),
+    })
+}
+
+/// Chances of loss and fixation by the exact chain of changing numbers of gene copies. The first
+/// generation draws its copies from the frequency today.
+fn by_chain(course: &Course, rule: &Rule, generations: &[usize]) -> Vec<[f64; 2]> {
+    let total: f64 = rule.weights.iter().sum();
+    // Before the first generation, masses stand at the nodes.
+    let mut places = rule.nodes.clone();
+    let mut masses: Vec<f64> = rule.weights.iter().map(|w| w / total).collect();
+    let mut out = Vec::new();
+    let mut rows: Vec<(usize, Vec<f64>)> = Vec::new();
+    let mut rows_are_for = None;
+    let mut generation = 0;
+    for &wanted in generations {
+        while generation < wanted {
+            generation += 1;
+            let copies = course.copies(generation);
+            // The same sizes before and after, and no release: the rows of the last step serve.
+            let released =
+                matches!(&course.scenario.release, Some((_, g)) if *g as usize == generation);
+            let key = (generation > 1 && !released).then_some((places.len(), copies));
+            if key.is_none() || key != rows_are_for {
+                rows = places
+                    .iter()
+                    .map(|&p| binomial_band(copies, course.parents(p, generation), CUT))
+                    .collect();
+                rows_are_for = key;
+            }
+            let mut next = vec![0.0; copies as usize + 1];
+            for ((start, row), &mass) in rows.iter().zip(&masses).filter(|(_, m)| **m > 0.0) {
+                for (to, p) in next[*start..].iter_mut().zip(row) {
+                    *to += mass * p;
+                }
+            }
+            masses = next;
+            if places.len() != masses.len() || generation == 1 {
+                places = (0..=copies)
+                    .map(|k| f64::from(k) / f64::from(copies))
+                    .collect();
+            }
+        }
+        out.push(match generation {
+            0 => [0.0, 0.0],
+            _ => [masses[0], masses[masses.len() - 1]],
+        });
+    }
+    out
+}
+
+/// The same by the diffusion, at the constant rate that loses as much heterozygosity.
+fn by_diffusion(course: &Course, rule: &Rule, generations: &[usize]) -> Vec<[f64; 2]> {
+    let total: f64 = rule.weights.iter().sum();
+    let both: Vec<f64> = rule
+        .nodes
+        .iter()
+        .copied()
+        .chain(rule.nodes.iter().map(|p| 1.0 - p))
+        .collect();
+    generations
+        .iter()
+        .map(|&t| {
+            if t == 0 {
+                return [0.0, 0.0];
+            }
+            let logs: f64 = course.rates[..t].iter().map(|u| (-u).ln_1p()).sum();
+            let rate = -(logs / t as f64).exp_m1();
+            let gone = lost_from_many(&both, rate, t as f64);
+            let mean = |values: &[f64]| {
+                values
+                    .iter()
+                    .zip(&rule.weights)
+                    .map(|(v, w)| v * w)
+                    .sum::<f64>()
+                    / total
+            };
+            [
+                mean(&gone[..rule.nodes.len()]),
+                mean(&gone[rule.nodes.len()..]),
+            ]
+        })
+        .collect()
+}
+
+/// The same by simulated paths.
+fn by_paths(
+    course: &Course,
+    (a, b): (f64, f64),
+    generations: &[usize],
+    dice: &mut Dice,
+) -> Vec<[f64; 2]> {
+    let mut counts = vec![[0u32; 2]; generations.len()];
+    for _ in 0..PATHS {
+        let mut p = beta(dice, a, b);
+        let mut generation = 0;
+        for (count, &wanted) in counts.iter_mut().zip(generations) {
+            while generation < wanted {
+                generation += 1;
+                let copies = course.copies(generation);
+                let parents = course.parents(p, generation);
+                p = f64::from(binomial(dice, copies, parents)) / f64::from(copies);
+            }
+            count[0] += u32::from(generation > 0 && p == 0.0);
+            count[1] += u32::from(generation > 0 && p == 1.0);
+        }
+    }
+    let share = |n: u32| f64::from(n) / PATHS as f64;
+    counts
+        .into_iter()
+        .map(|[lost, fixed]| [share(lost), share(fixed)])
+        .collect()
+}
+
+/// Reads the list of watched alleles.
+///
+/// # Errors
+/// [`Error::Io`] when it cannot be read, [`Error::Sheet`] with every problem found.
+pub fn read_watched(path: &Path) -> Result<(Vec<Watched>, Vec<u8>)> {
+    let bytes = std::fs::read(path).map_err(|e| Error::io(path, "read", e))?;
+    match parse_watched(&bytes) {
+        Ok(watched) => Ok((watched, bytes)),
+        Err(problems) => Err(Error::Sheet {
+            path: path.to_path_buf(),
+            problems,
+        }),
+    }
+}
+
+const COLUMNS: [&str; 8] = [
+    "contig",
+    "position",
+    "allele",
+    "population",
+    "selection_coefficient",
+    "copies",
+    "gene_copies",
+    "source_frequency",
+];
+const NEEDED: usize = 3;
+
+/// Watched alleles from the bytes of a table delimited by tabs, semicolons or commas, or every
+/// problem in the order of the file.
+pub fn parse_watched(bytes: &[u8]) -> std::result::Result<Vec<Watched>, Vec<Problem>> {
+    let Ok(text) = std::str::from_utf8(bytes) else {
+        return Err(vec![Problem::of_all(
+            "the text is not UTF-8",
+            "save the file as UTF-8",
+        )]);
+    };
+    let text = text.strip_prefix('\u{feff}').unwrap_or(text);
+    let header = text.lines().next().unwrap_or_default();
+    let delimiter = [b'\t', b';', b',']
+        .into_iter()
+        .find(|d| header.as_bytes().contains(d));
+    let mut reader = csv::ReaderBuilder::new()
+        .delimiter(delimiter.unwrap_or(b','))
+        .trim(csv::Trim::All)
+        .flexible(true)
+        .comment(Some(b'#'))
+        .from_reader(text.as_bytes());
+    let mut problems = Vec::new();
+    let names: Vec<String> = match reader.headers() {
+        Ok(names) => names.iter().map(str::to_string).collect(),
+        Err(_) => Vec::new(),
+    };
+    for name in names.iter().filter(|n| !COLUMNS.contains(&n.as_str())) {
+        if let Some(near) = nearest(name, COLUMNS) {
+            problems.push(Problem::at(
+                1,
+                format!("unknown column '{name}'"),
+                format!("did you mean '{near}'?"),
+            ));
+        }
+    }
+    let place = |name: &str| names.iter().position(|n| n == name);
+    for name in COLUMNS[..NEEDED].iter().filter(|n| place(n).is_none()) {
+        problems.push(Problem::at(
+            1,
+            format!("no column '{name}'"),
+            format!("give a header row with {}", COLUMNS[..NEEDED].join(", ")),
+        ));
+    }
+    let mut watched = Vec::new();
+    if problems.is_empty() {
+        for record in reader.records() {
+            match record {
+                Ok(record) => {
+                    let row = record.position().map_or(0, csv::Position::line);
+                    let cell = |name: &str| {
+                        let text = record.get(place(name)?)?;
+                        (!text.is_empty()).then_some(text)
+                    };
+                    watched.extend(one(row, cell, &mut problems));
+                }
+                Err(e) => problems.push(Problem::of_all(
+                    format!("a row that cannot be read: {e}"),
+                    "mend its quotes",
+                )),
+            }
+        }
+    }
+    if problems.is_empty() && watched.is_empty() {
+        problems.push(Problem::of_all(
+            "there is no row",
+            "name an allele to watch",
+        ));
+    }
+    match problems.is_empty() {
+        true => Ok(watched),
+        false => Err(problems),
+    }
+}
+
+fn one<'t>(
+    row: u64,
+    cell: impl Fn(&str) -> Option<&'t str>,
+    problems: &mut Vec<Problem>,
+) -> Option<Watched> {
+    let before = problems.len();
+    let complain = |problems: &mut Vec<Problem>, name: &str, cure: &str| {
+        let text = cell(name).unwrap_or_default();
+        problems.push(Problem::at(row, format!("{name} '{text}' cannot be"), cure));
+    };
+    for name in &COLUMNS[..NEEDED] {
+        if cell(name).is_none() {
+            complain(problems, name, "fill the cell");
+        }
+    }
+    let whole = |problems: &mut Vec<Problem>, name: &str, least: u64| {
+        let number = cell(name)?
+            .parse::<u64>()
+            .ok()
+            .filter(|&n| n >= least && n <= 4_000_000_000);
+        if number.is_none() {
+            complain(
+                problems,
+                name,
+                &format!("write a whole number of {least} or more"),
+            );
+        }
+        number
+    };
+    let position = whole(problems, "position", 1);
+    let copies = whole(problems, "copies", 1);
+    let gene_copies = whole(problems, "gene_copies", 1);
+    let real = |problems: &mut Vec<Problem>, name: &str, low: f64, high: f64| {
+        let number = cell(name)?
+            .parse::<f64>()
+            .ok()
+            .filter(|x| (low..=high).contains(x));
+        if number.is_none() {
+            complain(
+                problems,
+                name,
+                &format!("write a number from {low} to {high}"),
+            );
+        }
+        number
+    };
+    let selection = real(problems, "selection_coefficient", -0.5, 1.0);
+    let source_frequency = real(problems, "source_frequency", 0.0, 1.0);
+    if cell("copies").is_some() != cell("gene_copies").is_some() {
+        complain(
+            problems,
+            "copies",
+            "give copies and gene_copies side by side, or neither",
+        );
+    }
+    if let (Some(copies), Some(all)) = (copies, gene_copies)
+        && copies > all
+    {
+        complain(
+            problems,
+            "copies",
+            &format!("there are only {all} gene copies"),
+        );
+    }
+    (problems.len() == before).then_some(())?;
+    Some(Watched {
+        row,
+        contig: cell("contig")?.to_string(),
+        position: position?,
+        allele: cell("allele")?.to_string(),
+        population: cell("population").map(str::to_string),
+        selection: selection.unwrap_or(0.0),
+        counts: copies.zip(gene_copies).map(|(k, n)| (k as u32, n as u32)),
+        source_frequency,
+    })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::{Arrival, DriftRate, Size, Spectrum};
+    use super::*;
+    use crate::ne::likelihood::BetaPrior;
+
+    fn start(rate: f64) -> Start {
+        let mut spectrum = Spectrum::new(&[]);
+        spectrum.prior = BetaPrior { a: 1.0, b: 1.0 };
+        Start {
+            population: "Alder".into(),
+            stratum: "Alder@2020".into(),
+            year: 2020.0,
+            generation_years: None,
+            rate: Some(DriftRate::certain(rate)),
+            expected_heterozygosity: None,
+            inbreeding_coefficient: None,
+            allelic_richness: None,
+            gene_copies: 2,
+            kept_since_baseline: None,
+            spectrum,
+            alleles: 0,
+            sources: Vec::new(),
+        }
+    }
+
+    const HORIZON: Horizon = Horizon {
+        generations: 50,
+        draws: 1,
+        seed: 5,
+        keep: 0.9,
+    };
+
+    fn watched(selection: f64) -> Watched {
+        Watched {
+            row: 2,
+            contig: "reed_1".into(),
+            position: 7,
+            allele: "1".into(),
+            population: None,
+            selection,
+            counts: None,
+            source_frequency: None,
+        }
+    }
+
+    fn lost(rate: f64, counts: (u32, u32), selection: f64, generations: &[usize]) -> Chances {
+        let quo = Scenario::status_quo();
+        chances(
+            &start(rate),
+            &quo,
+            &watched(selection),
+            counts,
+            generations,
+            &HORIZON,
+        )
+        .unwrap()
+    }
+
+    // Exact enumeration (matrix): 2 of 40 copies seen, flat prior, 2N = 100, ten generations: lost
+    // with chance 0.3389764493; the diffusion is near 0.2945, so the chain must be in use.
+    #[test]
+    fn loss_from_a_count_is_that_of_the_exact_chain() {
+        let got = lost(0.01, (2, 40), 0.0, &[0, 10]);
+        assert!(
+            (got.fates[1].lost - 0.33897644932819176).abs() < 1e-7,
+            "{got:?}"
+        );
+        assert_eq!(got.fates[0].lost, 0.0);
+        assert_eq!(got.ways, [Way::Chain]);
+        let sum = got.fates[1].lost + got.fates[1].still_there + got.fates[1].fixed;
+        assert!((sum - 1.0).abs() < 1e-12);
+        // Exact enumeration at 2N = 1600, t = 160: 0.2990190959.
+        let large = lost(1.0 / 1600.0, (2, 40), 0.0, &[160]);
+        assert!(
+            (large.fates[0].lost - 0.2990190959).abs() < 1e-5,
+            "{large:?}"
+        );
+    }
+
+    // So many copies typed that the frequency is known: 2N = 100, p = 0.05 (exact enumeration).
+    #[test]
+    fn loss_of_a_known_frequency() {
+        let got = lost(0.01, (5_000_000, 100_000_000), 0.0, &[1, 5, 10, 20, 50]);
+        let wanted = [
+            0.0059205292,
+            0.2009352230,
+            0.4094480901,
+            0.6168292712,
+            0.8081723996,
+        ];
+        for (fate, want) in got.fates.iter().zip(wanted) {
+            assert!((fate.lost - want).abs() < 2e-5, "{fate:?} is not {want}");
+        }
+        // Neutral: in the end fixed with the chance of its frequency.
+        assert!((got.fixed_in_the_end.unwrap() - 0.05).abs() < 1e-6);
+    }
+
+    // Kimura (1962), N = Ne = 50, s = 0.01, p = 0.1: 0.2096410822; s = -0.01: 0.0346534378.
+    #[test]
+    fn selection_moves_the_end() {
+        for (s, want) in [(0.01, 0.2096410822), (-0.01, 0.0346534378)] {
+            let got = lost(0.01, (10_000_000, 100_000_000), s, &[3000]);
+            assert!(
+                (got.fixed_in_the_end.unwrap() - want).abs() < 1e-5,
+                "{got:?}"
+            );
+            // The exact chain at its end: 0.2087239879 and 0.0342824892.
+            let exact = if s > 0.0 { 0.2087239879 } else { 0.0342824892 };
+            assert!((got.fates[0].fixed - exact).abs() < 1e-5, "{got:?}");
+        }
+    }
+
+    #[test]
+    fn the_three_ways_agree_where_they_meet() {
+        let generations = [5, 20, 60];
+        let chain = lost(1.0 / 2000.0, (2, 60), 0.0, &generations);
+        let diffusion = lost(1.0 / 2001.0, (2, 60), 0.0, &generations);
+        let paths = lost(1.0 / 2001.0, (2, 60), 1e-9, &generations);
+        assert_eq!(
+            (chain.ways[0], diffusion.ways[0], paths.ways[0]),
+            (Way::Chain, Way::Diffusion, Way::Paths)
+        );
+        for i in 0..3 {
+            assert!(
+                (chain.fates[i].lost - diffusion.fates[i].lost).abs() < 0.005,
+                "{chain:?} {diffusion:?}"
+            );
+            // One size here, so 2000 paths: four Monte Carlo errors.
+            let error = 4.0 * (chain.fates[i].lost / 2000.0).sqrt() + 1e-3;
+            assert!(
+                (chain.fates[i].lost - paths.fates[i].lost).abs() < error,
+                "{chain:?} {paths:?}"
+            );
+        }
+    }
+
+    #[test]
+    fn newcomers_need_a_frequency_and_bring_an_allele_back() {
+        let mut scenario = Scenario::status_quo();
+        scenario.migrants = Some(Arrival {
+            individuals: 2.0,
+            from: "Birch@2020".into(),
+        });
+        let mut allele = watched(0.0);
+        let ask =
+            |allele: &Watched| chances(&start(0.01), &scenario, allele, (2, 40), &[50], &HORIZON);
+        assert_eq!(ask(&allele), None);
+        allele.source_frequency = Some(0.5);
+        let open = ask(&allele).unwrap();
+        assert_eq!(open.fixed_in_the_end, None);
+        assert!(open.fates[0].lost < 0.2 * lost(0.01, (2, 40), 0.0, &[50]).fates[0].lost);
+    }
+
+    #[test]
+    fn a_bottleneck_costs_more_than_its_harmonic_size() {
+        let mut scenario = Scenario::status_quo();
+        scenario.size = Size::Given(vec![5.0, 50.0]);
+        let got = chances(
+            &start(0.01),
+            &scenario,
+            &watched(0.0),
+            (2, 40),
+            &[1, 2],
+            &HORIZON,
+        )
+        .unwrap();
+        let steady = lost(0.01, (2, 40), 0.0, &[1, 2]);
+        assert!(got.fates[0].lost > 3.0 * steady.fates[0].lost);
+        assert!(got.fates[1].lost >= got.fates[0].lost);
+    }
+
+    #[test]
+    fn tables_and_their_problems() {
+        let sound = "contig\tposition\tallele\tcopies\tgene_copies\nreed_1\t7\tT\t2\t40\n";
+        let got = parse_watched(sound.as_bytes()).unwrap();
+        assert_eq!((got[0].counts, got[0].row), (Some((2, 40)), 2));
+        let bad = "contig,position,allele,copies,gene_copies,selection_coefficient\n\
+            reed_1,0,T,,,\nreed_1,7,,3,2,\nreed_1,7,T,3,,9\n";
+        let problems = parse_watched(bad.as_bytes()).unwrap_err();
+        for (row, part) in [
+            (2, "position"),
+            (3, "allele"),
+            (3, "copies"),
+            (4, "copies"),
+            (4, "selection"),
+        ] {
+            assert!(
+                problems
+                    .iter()
+                    .any(|p| p.row == Some(row) && p.what.contains(part)),
+                "{row} {part}: {problems:?}"
+            );
+        }
+        let names = parse_watched(b"contig,pos,allele\n").unwrap_err();
+        assert!(
+            names.iter().any(|p| p.cure.contains("'position'")),
+            "{names:?}"
+        );
+        assert!(parse_watched(b"contig,position,allele\n").is_err());
+        assert!(parse_watched(&[0xff, 0xfe]).is_err());
+    }
+}
