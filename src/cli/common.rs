@@ -1,6 +1,9 @@
 //! Flags that several commands share, and checks of single values.
 
-use clap::Args;
+use std::path::{Path, PathBuf};
+
+use clap::error::ErrorKind;
+use clap::{Args, CommandFactory};
 
 /// Flags of every command that computes.
 #[derive(Debug, Clone, Args)]
@@ -19,6 +22,26 @@ pub(super) struct Running {
 impl Running {
     pub fn threads(&self) -> Option<usize> {
         self.threads.map(usize::from)
+    }
+}
+
+/// Refuses a file that is both read and written.
+pub(super) fn keep_apart<'a>(
+    inputs: impl IntoIterator<Item = Option<&'a PathBuf>>,
+    output: Option<&PathBuf>,
+) -> Result<(), clap::Error> {
+    match output {
+        Some(output)
+            if output != Path::new("-")
+                && inputs.into_iter().flatten().any(|input| input == output) =>
+        {
+            let text = format!(
+                "{} is both read and written: give the output another name",
+                output.display()
+            );
+            Err(super::Flags::command().error(ErrorKind::ArgumentConflict, text))
+        }
+        _ => Ok(()),
     }
 }
 

@@ -5,6 +5,7 @@
 //! variant of the flags' enum and of [`Work`], and an arm in the match of [`parse_from`].
 
 mod common;
+mod forecast;
 mod measure;
 mod page;
 mod rehearse;
@@ -29,6 +30,8 @@ pub enum Work {
     Rehearse(RehearsePlan),
     /// Judge a report against a policy.
     Verdict(VerdictPlan),
+    /// Project the diversity of a report's populations.
+    Forecast(ForecastPlan),
     /// Print the JSON Schema of what the program writes.
     Schema {
         /// Which document; all of them are listed when absent.
@@ -81,6 +84,35 @@ pub struct VerdictPlan {
     pub quiet: bool,
 }
 
+/// A report to project.
+#[derive(Debug, Clone, PartialEq)]
+pub struct ForecastPlan {
+    /// The report; `-` is standard input.
+    pub report: PathBuf,
+    /// Scenarios beside the status quo.
+    pub scenarios: Option<PathBuf>,
+    /// Alleles to watch.
+    pub watch: Option<PathBuf>,
+    /// Years ahead.
+    pub years: Option<f64>,
+    /// Generations ahead.
+    pub generations: Option<usize>,
+    /// Years in a generation; the report's when absent.
+    pub generation_years: Option<f64>,
+    /// Share of the baseline's heterozygosity to be kept, above 0 and below 1.
+    pub keep: f64,
+    /// Draws behind each band.
+    pub draws: usize,
+    /// Seed of all chance.
+    pub seed: u64,
+    /// Where the forecast goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// Threads; all cores when absent.
+    pub threads: Option<usize>,
+    /// Whether the table stays off standard error.
+    pub quiet: bool,
+}
+
 /// What "cannot tell" counts as for the exit code of a verdict.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum OnUncertain {
@@ -129,6 +161,7 @@ enum Command {
     Page(page::Flags),
     Rehearse(rehearse::Flags),
     Verdict(verdict::Flags),
+    Forecast(forecast::Flags),
     Schema(schema::Flags),
 }
 
@@ -148,6 +181,7 @@ where
         Command::Page(flags) => Ok(Work::Page(flags.plan())),
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
         Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),
+        Command::Forecast(flags) => Ok(Work::Forecast(flags.plan()?)),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
     }
 }

@@ -1,11 +1,10 @@
 //! `genewane verdict`: a report held against the limits of a programme.
 
-use std::path::{Path, PathBuf};
+use std::path::PathBuf;
 
-use clap::error::ErrorKind;
-use clap::{Args, CommandFactory, ValueEnum};
+use clap::{Args, ValueEnum};
 
-use super::{OnUncertain, VerdictPlan};
+use super::{OnUncertain, VerdictPlan, common};
 
 /// Judges a report against the limits of a policy; exit code 3 says breach
 ///
@@ -79,17 +78,8 @@ Exit status:
 impl Flags {
     /// What was typed, as what is meant.
     pub fn plan(self) -> Result<VerdictPlan, clap::Error> {
-        let inputs = || self.report.iter().chain(&self.policy);
-        if let Some(output) = &self.output
-            && output != Path::new("-")
-            && inputs().any(|input| input == output)
-        {
-            let text = format!(
-                "{} is both read and written: give the output another name",
-                output.display()
-            );
-            return Err(super::Flags::command().error(ErrorKind::ArgumentConflict, text));
-        }
+        let inputs = [self.report.as_ref(), self.policy.as_ref()];
+        common::keep_apart(inputs, self.output.as_ref())?;
         Ok(VerdictPlan {
             report: self.report,
             policy: self.policy,

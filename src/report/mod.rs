@@ -2,6 +2,7 @@
 
 pub mod assemble;
 pub mod figures;
+pub mod forecast;
 pub mod headline;
 mod json;
 pub mod page;

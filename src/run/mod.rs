@@ -1,5 +1,6 @@
 //! The story: open, read once, add up, estimate, report. Threads start only here.
 
+mod forecast;
 mod measure;
 mod pipeline;
 mod verdict;
@@ -30,6 +31,7 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
         ),
         Work::Rehearse(plan) => rehearse(&plan),
         Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
+        Work::Forecast(plan) => forecast::forecast(&plan, told_arguments(arguments)),
         Work::Schema { name } => schema(name.as_deref()),
     }
 }
@@ -56,9 +58,12 @@ fn available_threads() -> usize {
 }
 
 /// Documents that the program writes, by name, with their schemas.
-const DOCUMENTS: [(&str, fn() -> schemars::Schema); 2] = [
+const DOCUMENTS: [(&str, fn() -> schemars::Schema); 3] = [
     ("report", || {
         schemars::schema_for!(crate::report::wire::Report)
+    }),
+    ("forecast", || {
+        schemars::schema_for!(crate::report::forecast::Forecast)
     }),
     ("verdict", || {
         schemars::schema_for!(crate::report::verdict::Verdict)

@@ -9,13 +9,15 @@ mod project;
 mod rate;
 mod scenario;
 mod spectrum;
+mod watch_list;
 mod watched;
 
 pub use project::{Band, LimitTime, Projection, Row, band, project};
 pub use rate::DriftRate;
 pub use scenario::{Arrival, Scenario, Size, parse_scenarios, read_scenarios};
 pub use spectrum::Spectrum;
-pub use watched::{Chances, Fate, Watched, Way, chances, parse_watched, read_watched};
+pub use watch_list::{Watched, parse_watched, read_watched};
+pub use watched::{Chances, Fate, Way, chances};
 
 /// A population as a forecast finds it.
 #[derive(Debug, Clone, PartialEq)]
