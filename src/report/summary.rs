@@ -104,7 +104,7 @@ fn population_table(out: &mut String, report: &Report, population: &str, visits:
         let kept = &comparison.change.expected_heterozygosity_kept;
         let _ = writeln!(
             out,
-            "  since {}: {} of its expected heterozygosity; {} of {} alleles not seen again{lost}",
+            "  since {}: keeps {} of its expected heterozygosity; {} of {} alleles not seen again{lost}",
             plain(&comparison.from),
             with_interval(kept, 2),
             alleles.not_seen_again,

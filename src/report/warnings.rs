@@ -40,6 +40,7 @@ fn plan_not_stated(findings: &Findings) -> Vec<Note> {
         .map(|c| findings.strata.strata[c.from].population.as_str())
         .filter(|p| findings.programme.get(p, |s| s.plan).is_none())
         .collect();
+    populations.sort_unstable();
     populations.dedup();
     let text = "the sampling plan was not stated, so plan II is assumed (sampled before reproduction and \
                 removed, or offspring that never breed). If the sampled individuals had bred or were put \

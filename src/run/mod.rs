@@ -7,11 +7,13 @@ mod verdict;
 
 pub use measure::measure;
 
+use schemars::schema_for;
+
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
 use crate::report::summary::summary;
-use crate::report::{Output, page};
+use crate::report::{self, Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
@@ -57,27 +59,23 @@ fn available_threads() -> usize {
     std::thread::available_parallelism().map_or(1, |n| n.get())
 }
 
-/// Documents that the program writes, by name, with their schemas.
-const DOCUMENTS: [(&str, fn() -> schemars::Schema); 3] = [
-    ("report", || {
-        schemars::schema_for!(crate::report::wire::Report)
-    }),
-    ("forecast", || {
-        schemars::schema_for!(crate::report::forecast::Forecast)
-    }),
-    ("verdict", || {
-        schemars::schema_for!(crate::report::verdict::Verdict)
-    }),
+/// Documents that have a schema, by name.
+const SCHEMAS: [(&str, fn() -> schemars::Schema); 5] = [
+    ("report", || schema_for!(report::wire::Report)),
+    ("verdict", || schema_for!(report::verdict::Verdict)),
+    ("forecast", || schema_for!(report::forecast::Forecast)),
+    ("scenario", || schema_for!(outlook::rehearse::Scenario)),
+    ("truth", || schema_for!(outlook::rehearse::Truth)),
 ];
 
 /// Prints the JSON Schema of one document, or the names of all.
 fn schema(name: Option<&str>) -> Result<()> {
     let out = Output::create(None)?;
-    let names = || DOCUMENTS.map(|(name, _)| name);
+    let names = || SCHEMAS.map(|(name, _)| name);
     let Some(name) = name else {
         return out.bytes(format!("{}\n", names().join("\n")).as_bytes());
     };
-    match DOCUMENTS.iter().find(|(document, _)| *document == name) {
+    match SCHEMAS.iter().find(|(document, _)| *document == name) {
         Some((_, schema)) => out.json(&schema()),
         None => Err(Error::Usage(format!(
             "no document is called '{name}'; there are: {}",
