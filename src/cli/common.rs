@@ -64,6 +64,16 @@ pub(super) fn share(text: &str) -> Result<f64, String> {
     )
 }
 
+/// A share above 0 and below 1.
+pub(super) fn inner_share(text: &str) -> Result<f64, String> {
+    let inside = |x| x > 0.0 && x < 1.0;
+    number(
+        text,
+        inside,
+        "a share above 0 and below 1; write 0.9 for 90 %",
+    )
+}
+
 /// An even count of gene copies.
 pub(super) fn gene_copies(text: &str) -> Result<u32, String> {
     match text.trim().parse::<u32>() {

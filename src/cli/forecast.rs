@@ -53,7 +53,7 @@ pub(super) struct Flags {
     generation_years: Option<f64>,
 
     /// Share of the baseline's expected heterozygosity that is to be kept
-    #[arg(long, value_name = "X", value_parser = inner_share, default_value = "0.9")]
+    #[arg(long, value_name = "X", value_parser = common::inner_share, default_value = "0.9")]
     keep: f64,
 
     /// Draws behind each band
@@ -90,14 +90,6 @@ Examples:
     populations = \"Tarn Osk\"
     release = 10
     from = \"Quillmere@2020\"";
-
-/// A share above 0 and below 1.
-fn inner_share(text: &str) -> Result<f64, String> {
-    match common::share(text)? {
-        share if share > 0.0 && share < 1.0 => Ok(share),
-        _ => Err("not a share above 0 and below 1; write 0.9 for 90 %".to_string()),
-    }
-}
 
 impl Flags {
     /// What was typed, as what is meant.

@@ -5,6 +5,7 @@
 //! variant of the flags' enum and of [`Work`], and an arm in the match of [`parse_from`].
 
 mod common;
+mod design;
 mod forecast;
 mod measure;
 mod page;
@@ -32,6 +33,8 @@ pub enum Work {
     Verdict(VerdictPlan),
     /// Project the diversity of a report's populations.
     Forecast(ForecastPlan),
+    /// Tell what a sampling design can see.
+    Design(Box<DesignPlan>),
     /// Print the JSON Schema of what the program writes.
     Schema {
         /// Which document; all of them are listed when absent.
@@ -113,6 +116,51 @@ pub struct ForecastPlan {
     pub quiet: bool,
 }
 
+/// Sampling designs to weigh up: every combination of the lists.
+#[derive(Debug, Clone, PartialEq)]
+pub struct DesignPlan {
+    /// Individuals at each visit.
+    pub individuals: Vec<u32>,
+    /// Loci.
+    pub loci: Vec<u32>,
+    /// Generations between two visits.
+    pub generations: Vec<u32>,
+    /// True effective sizes.
+    pub effective_sizes: Vec<f64>,
+    /// Alleles a locus.
+    pub alleles: u32,
+    /// Chromosomes.
+    pub chromosomes: u32,
+    /// Coefficient of variation of 1/Ne to be reached.
+    pub cv: f64,
+    /// Frequencies of alleles to be seen.
+    pub frequencies: Vec<f64>,
+    /// Probability with which they are to be seen.
+    pub seen: f64,
+    /// Power to be reached.
+    pub power: f64,
+    /// Simulations a design; 0 for none.
+    pub simulations: u32,
+    /// Effective size below which a decline is to be declared.
+    pub size_limit: f64,
+    /// Share of richness that must be gone before a loss of richness is declared.
+    pub richness_drop: f64,
+    /// Effective size of the population whose declared declines are false alarms.
+    pub stable_size: f64,
+    /// Cost of one sampled individual.
+    pub cost_per_sample: Option<f64>,
+    /// Cost of one locus.
+    pub cost_per_locus: Option<f64>,
+    /// Seed of all chance.
+    pub seed: u64,
+    /// Where the document goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// Threads; all cores when absent.
+    pub threads: Option<usize>,
+    /// Whether the table stays off standard error.
+    pub quiet: bool,
+}
+
 /// What "cannot tell" counts as for the exit code of a verdict.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum OnUncertain {
@@ -162,6 +210,7 @@ enum Command {
     Rehearse(rehearse::Flags),
     Verdict(verdict::Flags),
     Forecast(forecast::Flags),
+    Design(Box<design::Flags>),
     Schema(schema::Flags),
 }
 
@@ -182,6 +231,7 @@ where
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
         Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),
         Command::Forecast(flags) => Ok(Work::Forecast(flags.plan()?)),
+        Command::Design(flags) => Ok(Work::Design(Box::new(flags.plan()))),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
     }
 }

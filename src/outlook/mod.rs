@@ -1,5 +1,6 @@
 //! Projections and simulations that build on the estimates.
 
+pub mod design;
 pub mod forecast;
 pub mod losses;
 pub mod outliers;

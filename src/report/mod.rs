@@ -1,6 +1,7 @@
 //! What leaves the house: wire types, and the files that carry them.
 
 pub mod assemble;
+pub mod design;
 pub mod figures;
 pub mod forecast;
 pub mod headline;

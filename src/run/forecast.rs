@@ -17,6 +17,38 @@ const DEFAULT_YEARS: f64 = 100.0;
 /// Most generations ahead.
 const MOST_GENERATIONS: f64 = 2000.0;
 
+/// How a forecast is made.
+const METHODS: [(&str, &str); 6] = [
+    (
+        "expected_heterozygosity",
+        "frequencies of up to 1000 alleles drawn from the spectrum of the latest sample drift by \
+         binomial sampling of 2Ne copies (Wright 1931); told as the share left of today's value",
+    ),
+    (
+        "effective_size",
+        "draws of 1/(2Ne) from Student's t around the estimate to quote, as wide as its interval, cut \
+         off at 0 and 1/2",
+    ),
+    (
+        "frequencies",
+        "beta posterior of each allele's copies; its prior fitted to the spectrum of the latest sample",
+    ),
+    (
+        "individuals_come_in",
+        "identity of two copies within the population, between it and the source, and within the \
+         source, one generation after the other",
+    ),
+    (
+        "sizes_needed",
+        "1/(2(1 - R^(1/t))) (Soule, Gilpin, Conway & Foose 1986)",
+    ),
+    (
+        "watched",
+        "exact Wright-Fisher chain up to 2000 gene copies, beyond it the diffusion (Kimura 1955), or \
+         paths where there is selection or newcomers; fixed in the end by Kimura (1962)",
+    ),
+];
+
 /// Projects every population under every scenario.
 pub fn forecast(plan: &ForecastPlan, arguments: Vec<String>) -> Result<()> {
     let out = Output::create(plan.output.as_deref())?;
@@ -43,24 +75,20 @@ pub fn forecast(plan: &ForecastPlan, arguments: Vec<String>) -> Result<()> {
         .iter()
         .map(|start| horizon(plan, start))
         .collect::<Result<_>>()?;
-    let jobs: Vec<(usize, Job)> = starts
+    let jobs: Vec<Job> = starts
         .iter()
         .zip(&horizons)
         .enumerate()
-        .flat_map(|(i, (start, &horizon))| {
+        .flat_map(|(index, (start, &horizon))| {
             let watched = &watched;
-            scenarios
-                .iter()
-                .filter(|s| s.is_for(&start.population))
-                .map(move |scenario| {
-                    let job = Job {
-                        start,
-                        scenario,
-                        watched,
-                        horizon,
-                    };
-                    (i, job)
-                })
+            let fitting = scenarios.iter().filter(|s| s.is_for(&start.population));
+            fitting.map(move |scenario| Job {
+                start,
+                scenario,
+                index,
+                watched,
+                horizon,
+            })
         })
         .collect();
     let threads = plan.threads.unwrap_or_else(super::available_threads);
@@ -68,7 +96,7 @@ pub fn forecast(plan: &ForecastPlan, arguments: Vec<String>) -> Result<()> {
         .num_threads(threads)
         .build()
         .map_err(|e| Error::Usage(format!("{threads} threads cannot be started: {e}")))?;
-    let done: Vec<_> = pool.install(|| jobs.par_iter().map(|(i, job)| (*i, job.run())).collect());
+    let done: Vec<_> = pool.install(|| jobs.par_iter().map(|job| (job.index, job.run())).collect());
     let mut by_population = vec![Vec::new(); starts.len()];
     for (i, scenario) in done {
         by_population[i].push(scenario);
@@ -78,7 +106,7 @@ pub fn forecast(plan: &ForecastPlan, arguments: Vec<String>) -> Result<()> {
         ("draws", plan.draws.to_string()),
         ("seed", plan.seed.to_string()),
     ];
-    let provenance = provenance(arguments, inputs, settings.into());
+    let provenance = provenance(arguments, inputs, settings.into(), &METHODS);
     let forecast = document(&report, &starts, &horizons, by_population, provenance);
     if !plan.quiet {
         eprint!("{}", text_table(&forecast));

@@ -1,5 +1,6 @@
 //! The story: open, read once, add up, estimate, report. Threads start only here.
 
+mod design;
 mod forecast;
 mod measure;
 mod pipeline;
@@ -34,6 +35,7 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
         Work::Rehearse(plan) => rehearse(&plan),
         Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
         Work::Forecast(plan) => forecast::forecast(&plan, told_arguments(arguments)),
+        Work::Design(plan) => design::design(&plan, told_arguments(arguments)),
         Work::Schema { name } => schema(name.as_deref()),
     }
 }
@@ -59,11 +61,15 @@ fn available_threads() -> usize {
     std::thread::available_parallelism().map_or(1, |n| n.get())
 }
 
+/// Makes the schema of one document.
+type MakeSchema = fn() -> schemars::Schema;
+
 /// Documents that have a schema, by name.
-const SCHEMAS: [(&str, fn() -> schemars::Schema); 5] = [
+const SCHEMAS: [(&str, MakeSchema); 6] = [
     ("report", || schema_for!(report::wire::Report)),
     ("verdict", || schema_for!(report::verdict::Verdict)),
     ("forecast", || schema_for!(report::forecast::Forecast)),
+    ("design", || schema_for!(report::design::Design)),
     ("scenario", || schema_for!(outlook::rehearse::Scenario)),
     ("truth", || schema_for!(outlook::rehearse::Truth)),
 ];

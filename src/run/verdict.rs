@@ -10,10 +10,33 @@ use sha2::{Digest, Sha256};
 use crate::cli::{self, VerdictPlan};
 use crate::error::{Error, Result};
 use crate::outlook::verdict::{DEFAULT_POLICY, parse_policy, read_policy};
+use crate::report::Output;
 use crate::report::page::parse_report;
 use crate::report::verdict::{self, OnUncertain};
 use crate::report::wire::{InputFile, Provenance, Report};
-use crate::report::{Output, methods};
+
+/// How answers are made.
+const METHODS: [(&str, &str); 4] = [
+    (
+        "answers",
+        "met or breached only where the whole interval is on one side of the limit; counts and sizes \
+         from a census as they are, compared as decimal numbers",
+    ),
+    (
+        "effective_size",
+        "the estimate to quote: temporal_likelihood, else temporal_fs, linkage, temporal_fc, \
+         temporal_fk, demographic; from the baseline to the latest visit where it spans time",
+    ),
+    (
+        "inbreeding_per_generation",
+        "1/(2Ne), the drift rate of the same estimate (Franklin 1980)",
+    ),
+    (
+        "indicator",
+        "populations with Ne above 500 over populations assessed, by species, then the mean over \
+         species (CBD headline indicator A.4)",
+    ),
+];
 
 /// Judges a report. A breach is an error of its own class, after the verdict has been written.
 pub fn verdict(plan: &VerdictPlan, arguments: Vec<String>) -> Result<()> {
@@ -50,7 +73,7 @@ pub fn verdict(plan: &VerdictPlan, arguments: Vec<String>) -> Result<()> {
     let told_policy = plan.policy.as_ref();
     let told_policy = told_policy.map_or("built in".to_owned(), |p| p.display().to_string());
     let settings = [("policy", told_policy), ("ratio", policy.ratio.to_string())];
-    let provenance = provenance(arguments, inputs, settings.into());
+    let provenance = provenance(arguments, inputs, settings.into(), &METHODS);
     let verdict = verdict::verdict(&report, &policy, plan.indicator, on_uncertain, provenance);
     if !plan.quiet {
         eprint!("{}", verdict::text_table(&verdict));
@@ -82,7 +105,9 @@ pub(super) fn provenance(
     arguments: Vec<String>,
     inputs: Vec<InputFile>,
     settings: BTreeMap<&str, String>,
+    methods: &[(&str, &str)],
 ) -> Provenance {
+    let owned = |(name, text): &(&str, &str)| ((*name).to_owned(), (*text).to_owned());
     Provenance {
         program: env!("CARGO_PKG_NAME").to_owned(),
         version: env!("CARGO_PKG_VERSION").to_owned(),
@@ -92,7 +117,7 @@ pub(super) fn provenance(
             .into_iter()
             .map(|(name, value)| (name.to_owned(), value))
             .collect(),
-        methods: methods(),
+        methods: methods.iter().map(owned).collect(),
         stamp: None,
     }
 }

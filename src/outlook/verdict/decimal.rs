@@ -66,7 +66,6 @@ mod tests {
         assert_eq!(compare_product(5001.0, 0.1, 500.0), Ordering::Greater);
         assert_eq!(compare_product(6200.0, 0.1, 500.0), Ordering::Greater);
         assert_eq!(compare_product(3.0, 0.1, 0.3), Ordering::Equal);
-        assert!(3.0 * 0.1 > 0.3);
         assert_eq!(compare_product(4999.9, 0.1, 500.0), Ordering::Less);
         assert_eq!(compare_product(-2.5, 2.0, -5.0), Ordering::Equal);
     }

@@ -8,7 +8,7 @@ pub use document::{
     Band, FORECAST_FORMAT, FORECAST_VERSION, Forecast, Limit, Population, Scenario, SizeNeeded,
     SizeToday, Step, Watched, WatchedStep,
 };
-pub use starts::{counted, starts};
+pub use starts::{Counted, counted, starts};
 pub use text::text_table;
 
 use super::wire::{Provenance, Report};
@@ -39,8 +39,10 @@ pub struct Job<'a> {
     pub start: &'a Start,
     /// The scenario.
     pub scenario: &'a outlook::Scenario,
-    /// The watched alleles of the population with their counts.
-    pub watched: &'a [(String, &'a outlook::Watched, (u32, u32))],
+    /// Its place among the populations.
+    pub index: usize,
+    /// The watched alleles of all populations.
+    pub watched: &'a [Counted<'a>],
     /// How far and how finely.
     pub horizon: Horizon,
 }
@@ -77,8 +79,8 @@ impl Job<'_> {
         out.watched = self
             .watched
             .iter()
-            .filter(|(population, ..)| *population == self.start.population)
-            .map(|(_, allele, counts)| self.watch(allele, *counts, &shown))
+            .filter(|counted| counted.start == self.index)
+            .map(|counted| self.watch(counted.allele, counted.counts, &shown))
             .collect();
         out
     }

@@ -81,13 +81,23 @@ fn sources(report: &Report, stratum: &str) -> Vec<SourceStratum> {
         .collect()
 }
 
-/// Watched alleles by population, with copies and gene copies; or every row that the report does
-/// not know.
+/// A watched allele in one population.
+#[derive(Debug, Clone, Copy)]
+pub struct Counted<'w> {
+    /// The allele.
+    pub allele: &'w Watched,
+    /// Index of the population among the starts.
+    pub start: usize,
+    /// Copies and gene copies typed at the latest visit.
+    pub counts: (u32, u32),
+}
+
+/// Watched alleles by population with their counts, or every row that the report does not know.
 pub fn counted<'w>(
     report: &Report,
     starts: &[Start],
     watched: &'w [Watched],
-) -> Result<Vec<(String, &'w Watched, (u32, u32))>, Vec<Problem>> {
+) -> Result<Vec<Counted<'w>>, Vec<Problem>> {
     let mut found = Vec::new();
     let mut problems = Vec::new();
     for allele in watched {
@@ -104,9 +114,16 @@ pub fn counted<'w>(
             continue;
         }
         let before = found.len();
-        for name in names().filter(|n| allele.population.as_deref().is_none_or(|p| p == *n)) {
+        for (start, name) in names().enumerate() {
+            if allele.population.as_deref().is_some_and(|p| p != name) {
+                continue;
+            }
             if let Some(counts) = allele.counts.or_else(|| listed(report, name, allele)) {
-                found.push((name.to_owned(), allele, counts));
+                found.push(Counted {
+                    allele,
+                    start,
+                    counts,
+                });
             }
         }
         if found.len() == before {
