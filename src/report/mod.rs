@@ -1,11 +1,15 @@
 //! What leaves the house: wire types, and the files that carry them.
 
 pub mod assemble;
+pub mod design;
 pub mod figures;
+pub mod forecast;
+pub mod headline;
 mod json;
 pub mod page;
 pub mod summary;
 pub mod table;
+pub mod verdict;
 pub mod warnings;
 pub mod wire;
 mod words;
