@@ -182,6 +182,8 @@ fn all_problems_of_a_sheet_are_told_at_once() {
     let spoilt = SHEET.replace("otter_2,Withy,2011", "otter_2,Withy,x");
     case.sheet(&spoilt.replace("otter_4", "otter_1"));
     case.fails(2, &["row 3", "row 5", "otter_1"]);
+    case.sheet(&spoilt.replace("otter_3", "stoat_3"));
+    case.fails(2, &["row 3", "row 4", "stoat_3"]);
     case.sheet(
         &SHEET
             .replace("otter_3", "stoat_3")

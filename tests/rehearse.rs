@@ -54,3 +54,20 @@ fn threads_change_no_byte() {
         "no end-of-file block"
     );
 }
+
+/// The page of scenario keys is made from the doc comments; `REMAKE=1` writes it anew.
+#[test]
+fn the_page_of_scenario_keys_is_up_to_date() {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("docs/scenario.md");
+    let page = genewane::outlook::rehearse::scenario_reference();
+    if std::env::var_os("REMAKE").is_some() {
+        std::fs::create_dir_all(path.parent().unwrap()).unwrap();
+        std::fs::write(&path, &page).unwrap();
+    }
+    let kept = std::fs::read_to_string(&path).unwrap_or_default();
+    assert!(
+        page == kept,
+        "docs/scenario.md is out of date: run REMAKE=1 cargo test --release --test rehearse"
+    );
+    assert!(!page.contains("|  |\n"), "a key without a description");
+}

@@ -84,8 +84,8 @@ pub(super) struct Flags {
 struct ProgrammeFlags {
     /// Programme file: the settings below by population; flags hold for all and win over it
     ///
-    /// TOML. Keys: baseline, generation_years, census, sampling_plan, chromosomes, breeding_males,
-    /// breeding_females, family_sizes, and the table life_history with age_at_maturity,
+    /// TOML. Keys: baseline, generation_years, census, sampling_plan, chromosomes, map_length_cm,
+    /// breeding_males, breeding_females, family_sizes, and the table life_history with age_at_maturity,
     /// adult_life_span and fecundity_cv. Tables [population."Name"] hold for one population and win
     /// over the keys at the top.
     #[arg(long, value_name = "FILE")]
@@ -115,6 +115,10 @@ struct ProgrammeFlags {
     /// Haploid number of chromosomes, to correct linkage estimates for linked loci
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(1..=1000))]
     chromosomes: Option<u32>,
+
+    /// Length of the genetic map in centimorgans, for the same where chromosomes are not counted
+    #[arg(long, value_name = "CM", value_parser = common::above_zero)]
+    map_length_cm: Option<f64>,
 }
 
 #[derive(Debug, Clone, Copy, ValueEnum)]
@@ -160,6 +164,7 @@ impl Flags {
                 Plan::Two => SamplingPlan::Two,
             }),
             chromosomes: self.programme.chromosomes,
+            map_length_cm: self.programme.map_length_cm,
             ..PopulationSettings::default()
         };
         plan.allow_absent = self.allow_absent;

@@ -9,6 +9,7 @@
 //! census = 800                     # individuals at the baseline
 //! sampling_plan = 2                # 1 or 2, also "I" or "II"
 //! chromosomes = 29                 # haploid number
+//! map_length_cm = 2900             # genetic map, where chromosomes are not counted
 //! breeding_males = 40              # per generation, with breeding_females
 //! breeding_females = 60
 //! family_sizes = [0, 2, 3, 1]      # offspring counted for each parent, zeros included
@@ -35,12 +36,13 @@ use crate::error::{Error, Result};
 use crate::model::{LifeHistory, PopulationSettings, Problem, Programme, SamplingPlan, nearest};
 
 /// Keys of a population's settings, at the top and in its table.
-const SETTINGS: [&str; 9] = [
+const SETTINGS: [&str; 10] = [
     "baseline",
     "generation_years",
     "census",
     "sampling_plan",
     "chromosomes",
+    "map_length_cm",
     "breeding_males",
     "breeding_females",
     "family_sizes",
@@ -177,6 +179,7 @@ impl Walker<'_> {
             census: self.number(table, "census", AT_LEAST_TWO),
             plan: find(table, "sampling_plan").and_then(|value| self.plan(value)),
             chromosomes: find(table, "chromosomes").and_then(|value| self.chromosomes(value)),
+            map_length_cm: self.number(table, "map_length_cm", ABOVE_ZERO),
             life_history: find(table, "life_history").and_then(|value| self.life_history(value)),
             breeders: self.breeders(table),
             family_sizes: find(table, "family_sizes")

@@ -72,6 +72,21 @@ pub fn read_sheet(path: &Path) -> Result<Sheet> {
     })
 }
 
+/// Row and name of every sample that a sheet lists and that is no replicate, whatever else is wrong
+/// with the sheet; none when it cannot be read as a table at all.
+pub fn listed_samples(path: &Path) -> Vec<(u64, String)> {
+    let Some(table) = std::fs::read(path).ok().and_then(|b| table::split(&b).ok()) else {
+        return Vec::new();
+    };
+    let (mut unused, mut notes) = (Vec::new(), Vec::new());
+    let columns = Columns::of(&table.header, &mut unused, &mut notes);
+    read_rows(&table, &columns, &mut unused)
+        .into_iter()
+        .filter(|draft| draft.replicate_of.is_none())
+        .map(|draft| (draft.row, draft.sample))
+        .collect()
+}
+
 /// The rows and notes of a sheet given as bytes, or every problem in the order of the file.
 pub fn parse_sheet(bytes: &[u8]) -> std::result::Result<(Vec<SheetRow>, Vec<Note>), Vec<Problem>> {
     let table = table::split(bytes)?;
@@ -83,15 +98,7 @@ pub fn parse_sheet(bytes: &[u8]) -> std::result::Result<(Vec<SheetRow>, Vec<Note
             "write one row for each sample",
         ));
     }
-    let mut rows = Vec::with_capacity(table.records.len());
-    for record in &table.records {
-        let mut reader = RowReader {
-            record,
-            columns: &columns,
-            problems: &mut problems,
-        };
-        rows.extend(reader.read());
-    }
+    let rows = read_rows(&table, &columns, &mut problems);
     check_together(&rows, &mut problems);
     if !problems.is_empty() {
         problems.sort_by_key(|problem| problem.row);
@@ -100,6 +107,18 @@ pub fn parse_sheet(bytes: &[u8]) -> std::result::Result<(Vec<SheetRow>, Vec<Note
     let rows: Vec<SheetRow> = rows.into_iter().filter_map(Draft::finish).collect();
     note_oddities(&rows, table.blank_records, &mut notes);
     Ok((rows, notes))
+}
+
+fn read_rows(table: &table::Table, columns: &Columns, problems: &mut Vec<Problem>) -> Vec<Draft> {
+    let read = |record| {
+        RowReader {
+            record,
+            columns,
+            problems,
+        }
+        .read()
+    };
+    table.records.iter().filter_map(read).collect()
 }
 
 /// A row as far as it could be read. Its checks against other rows need no more than names.

@@ -49,7 +49,9 @@ pub fn match_samples(
     if !present.iter().any(|row| row.replicate_of.is_none()) {
         problems.push(nothing_in_common(header_samples, rows));
     } else if !allow_absent {
-        problems.extend(told_absent(&absent, header_samples, rows));
+        let absent = absent.iter().map(|row| (row.row, row.sample.as_str()));
+        let listed = rows.iter().map(|row| row.sample.as_str());
+        problems.extend(told_absent(absent, header_samples, listed));
     }
     if !problems.is_empty() {
         return Err(problems);
@@ -116,26 +118,27 @@ fn nothing_in_common(header_samples: &[String], rows: &[SheetRow]) -> Problem {
     )
 }
 
-/// One problem for each sample without calls, with the name it may have there.
-fn told_absent(absent: &[&SheetRow], header: &[String], rows: &[SheetRow]) -> Vec<Problem> {
-    let listed: HashSet<&str> = rows.iter().map(|row| row.sample.as_str()).collect();
+/// One problem for each sample without calls (row and name), with the name it may have there:
+/// `listed` are all names of the sheet.
+pub fn told_absent<'a>(
+    absent: impl IntoIterator<Item = (u64, &'a str)>,
+    header: &[String],
+    listed: impl IntoIterator<Item = &'a str>,
+) -> Vec<Problem> {
+    let listed: HashSet<&str> = listed.into_iter().collect();
     let by_letters: HashMap<Vec<char>, &str> = header
         .iter()
         .filter(|sample| !listed.contains(sample.as_str()))
         .map(|sample| (plain_letters(sample), sample.as_str()))
         .collect();
     absent
-        .iter()
-        .map(|row| {
-            let cure = match by_letters.get(&plain_letters(&row.sample)) {
+        .into_iter()
+        .map(|(row, sample)| {
+            let cure = match by_letters.get(&plain_letters(sample)) {
                 Some(near) => format!("the calls have '{near}': write the same name in both"),
                 None => "correct the name, or allow it with --allow-absent".to_string(),
             };
-            Problem::at(
-                row.row,
-                format!("sample '{}' has no calls", row.sample),
-                cure,
-            )
+            Problem::at(row, format!("sample '{sample}' has no calls"), cure)
         })
         .collect()
 }

@@ -12,7 +12,7 @@ pub use comparisons::{Compared, comparisons};
 pub use locus::{
     CallTally, Genotypes, Locus, MAX_ALLELES, MISSING_ALLELE, MISSING_DOSAGE, Verdict,
 };
-pub use matching::{Matched, UNUSED_COLUMN, match_samples};
+pub use matching::{Matched, UNUSED_COLUMN, match_samples, told_absent};
 pub use notes::{Note, Problem, nearest, plain_letters, spell_out};
 pub use plan::{
     DEFAULT_FALSE_DISCOVERY_RATE, DEFAULT_LEVEL, DEFAULT_LIST_LOSSES, DEFAULT_MIN_CALL_RATE,

@@ -35,6 +35,8 @@ pub struct PopulationSettings {
     pub plan: Option<SamplingPlan>,
     /// Haploid number of chromosomes.
     pub chromosomes: Option<u32>,
+    /// Length of the genetic map, in centimorgans.
+    pub map_length_cm: Option<f64>,
     /// Life history.
     pub life_history: Option<LifeHistory>,
     /// Breeding males and females per generation, where counted.
@@ -79,6 +81,7 @@ impl PopulationSettings {
         take(&mut self.census, &stronger.census);
         take(&mut self.plan, &stronger.plan);
         take(&mut self.chromosomes, &stronger.chromosomes);
+        take(&mut self.map_length_cm, &stronger.map_length_cm);
         take(&mut self.life_history, &stronger.life_history);
         take(&mut self.breeders, &stronger.breeders);
         if !stronger.family_sizes.is_empty() {

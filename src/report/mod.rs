@@ -4,6 +4,7 @@ pub mod assemble;
 pub mod figures;
 mod json;
 pub mod page;
+pub mod summary;
 pub mod table;
 pub mod warnings;
 pub mod wire;

@@ -1,6 +1,6 @@
 //! The main job: genotype calls and a sample sheet in, one report out.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, HashSet};
 use std::path::Path;
 use std::sync::Arc;
 
@@ -8,16 +8,16 @@ use super::available_threads;
 use super::pipeline::{Collected, LocusTable, Source, collect};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
-use crate::ingest::sheet::{Sheet, read_sheet};
+use crate::ingest::sheet::{Sheet, listed_samples, read_sheet};
 use crate::ingest::{self, Selection};
 use crate::merge::{LocusView, Scheme};
 use crate::model::{
     Compared, Locus, Matched, MeasurePlan, Note, Programme, Verdict, comparisons,
-    default_gene_copies, match_samples,
+    default_gene_copies, match_samples, told_absent,
 };
 use crate::report::assemble::{self, Findings};
 use crate::report::table::{LocusTable as Table, TableFile};
-use crate::report::warnings::warning;
+use crate::report::warnings::{of_findings, warning};
 use crate::report::wire::{
     FORMAT, FORMAT_VERSION, InputFile, Loci, Provenance, Report, Samples, Warning,
 };
@@ -48,7 +48,7 @@ struct Inputs {
 
 impl Inputs {
     fn open(plan: &MeasurePlan) -> Result<Inputs> {
-        let sheet = read_sheet(&plan.sheet)?;
+        let sheet = read_sheet(&plan.sheet).map_err(|error| told_with_calls(error, plan))?;
         let (mut programme, programme_file) = match &plan.programme {
             Some(path) => {
                 let read = read_programme(path)?;
@@ -145,7 +145,7 @@ impl Inputs {
             at_risk: assemble::at_risk(&findings),
             carriers: assemble::carriers(&findings),
             allele_spectra: assemble::allele_spectra(&findings),
-            warnings: self.warnings(all),
+            warnings: self.warnings(all, &findings),
             cautions: CAUTIONS.iter().map(|&text| text.to_owned()).collect(),
         }
     }
@@ -225,7 +225,7 @@ impl Inputs {
         }
     }
 
-    fn warnings(&self, all: &Collected) -> Vec<Warning> {
+    fn warnings(&self, all: &Collected, findings: &Findings) -> Vec<Warning> {
         let notes = self
             .sheet
             .notes
@@ -241,8 +241,32 @@ impl Inputs {
             let told = told.chain(remarks.messages());
             warnings.extend(told.map(|text| warning(&Note::new("calls", file.clone(), text))));
         }
+        warnings.extend(of_findings(findings));
         warnings
     }
+}
+
+/// A faulty sheet's problems together with the samples that the calls lack, so that a person mends
+/// all of them in one go. The first file of calls speaks for all; where it cannot be read, the
+/// sheet's own problems are told alone.
+fn told_with_calls(error: Error, plan: &MeasurePlan) -> Error {
+    let Error::Sheet { path, mut problems } = error else {
+        return error;
+    };
+    let reader = plan
+        .calls
+        .first()
+        .and_then(|calls| ingest::open(calls).ok());
+    if let Some(reader) = reader.filter(|_| !plan.allow_absent) {
+        let header = &reader.header().samples;
+        let in_calls: HashSet<&str> = header.iter().map(String::as_str).collect();
+        let listed = listed_samples(&path);
+        let names = || listed.iter().map(|(row, sample)| (*row, sample.as_str()));
+        let absent = names().filter(|(_, name)| !in_calls.contains(name));
+        problems.extend(told_absent(absent, header, names().map(|(_, name)| name)));
+        problems.sort_by_key(|problem| problem.row);
+    }
+    Error::Sheet { path, problems }
 }
 
 /// Opens every file of calls and matches it with the sheet; all must hold the same samples in use.

@@ -5,15 +5,24 @@ mod pipeline;
 
 pub use measure::measure;
 
+use schemars::schema_for;
+
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
+use crate::report::summary::summary;
 use crate::report::{Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
     match work {
-        Work::Measure(plan) => measure(&plan, told_arguments(arguments)).map(drop),
+        Work::Measure(plan) => {
+            let report = measure(&plan, told_arguments(arguments))?;
+            if !plan.quiet {
+                eprint!("{}", summary(&report));
+            }
+            Ok(())
+        }
         Work::Page(plan) => page::write_page(
             &plan.report,
             plan.output.as_deref(),
@@ -46,14 +55,20 @@ fn available_threads() -> usize {
     std::thread::available_parallelism().map_or(1, |n| n.get())
 }
 
+/// Documents that have a schema.
+const SCHEMAS: [&str; 3] = ["report", "scenario", "truth"];
+
 /// Prints the JSON Schema of one document, or the names of all.
 fn schema(name: Option<&str>) -> Result<()> {
     let out = Output::create(None)?;
     match name {
-        None => out.bytes(b"report\n"),
-        Some("report") => out.json(&schemars::schema_for!(crate::report::wire::Report)),
+        None => out.bytes(format!("{}\n", SCHEMAS.join("\n")).as_bytes()),
+        Some("report") => out.json(&schema_for!(crate::report::wire::Report)),
+        Some("scenario") => out.json(&schema_for!(outlook::rehearse::Scenario)),
+        Some("truth") => out.json(&schema_for!(outlook::rehearse::Truth)),
         Some(other) => Err(Error::Usage(format!(
-            "no document is called '{other}'; there are: report"
+            "no document is called '{other}'; there are: {}",
+            SCHEMAS.join(", ")
         ))),
     }
 }

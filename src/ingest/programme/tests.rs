@@ -20,6 +20,7 @@ fn every_key_is_read_and_populations_overrule() {
         census = 800
         sampling_plan = "I"
         chromosomes = 29
+        map_length_cm = 2900
         breeding_males = 40
         breeding_females = 60
         family_sizes = [0, 2, 3, 1]
@@ -40,6 +41,7 @@ fn every_key_is_read_and_populations_overrule() {
         census: Some(800.0),
         plan: Some(SamplingPlan::One),
         chromosomes: Some(29),
+        map_length_cm: Some(2900.0),
         life_history: Some(LifeHistory {
             maturity: 3.0,
             adult_life_span: 6.0,

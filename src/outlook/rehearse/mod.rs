@@ -15,6 +15,8 @@ mod genome;
 mod meiosis;
 mod numbers;
 mod population;
+mod records;
+mod reference;
 mod sampling;
 mod scenario;
 mod simulation;
@@ -30,6 +32,7 @@ pub use dice::{Dice, Purpose};
 pub use families::{Scheme, realised_same_parent};
 pub use genome::Contig;
 pub use population::History;
+pub use reference::scenario_reference;
 pub use sampling::{Sample, SampledStratum, Source};
 pub use scenario::{
     Bottleneck, Chromosome, Field, Frequencies, Genotyping, LocusSet, Mating, Migration, Plan,

@@ -57,10 +57,7 @@ fn axis(subjects: &[Subject]) -> Scale {
         let n = n.clamp(1.0, LARGEST_DRAWN);
         limits = [f64::min(limits[0], n), f64::max(limits[1], n)];
     }
-    Scale::logarithmic(
-        [limits[0] / 1.15, limits[1] * 1.15],
-        [LEFT, RIGHT],
-    )
+    Scale::logarithmic([limits[0] / 1.15, limits[1] * 1.15], [LEFT, RIGHT])
 }
 
 fn panel(subject: &Subject, x: &Scale) -> Panel {
@@ -68,7 +65,12 @@ fn panel(subject: &Subject, x: &Scale) -> Panel {
     let hidden = subject.sizes.len() - shown.len();
     let bottom = TOP + ROW * shown.len() as f64 + 4.0;
     let mut d = Drawing::new();
-    d.name("name", (8.0, 17.0), Anchor::Start, (subject.population, 304.0));
+    d.name(
+        "name",
+        (8.0, 17.0),
+        Anchor::Start,
+        (subject.population, 304.0),
+    );
     limits(&mut d, x, bottom);
     for (i, size) in shown.iter().enumerate() {
         row(&mut d, size, x, TOP + ROW * i as f64);
@@ -80,9 +82,19 @@ fn panel(subject: &Subject, x: &Scale) -> Panel {
         d.text("tick", (x.at(tick), bottom + 16.0), Anchor::Middle, &label);
     }
     let below = bottom + 33.0;
-    d.text("small", (160.0, below), Anchor::Middle, "Effective size, individuals");
+    d.text(
+        "small",
+        (160.0, below),
+        Anchor::Middle,
+        "Effective size, individuals",
+    );
     d.line("limit", (12.0, below + 7.0), (12.0, below + 19.0));
-    d.text("small", (20.0, below + 17.0), Anchor::Start, "50, 500: Franklin (1980)");
+    d.text(
+        "small",
+        (20.0, below + 17.0),
+        Anchor::Start,
+        "50, 500: Franklin (1980)",
+    );
     d.line("limit dashed", (12.0, below + 24.0), (12.0, below + 36.0));
     let words = "100, 1000: Frankham et al. (2014)";
     d.text("small", (20.0, below + 34.0), Anchor::Start, words);
@@ -128,7 +140,12 @@ fn limits(d: &mut Drawing, x: &Scale, bottom: f64) {
         let y = if dashed { 46.0 } else { 33.0 };
         let class = if dashed { "limit dashed" } else { "limit" };
         d.line(class, (at, y + 3.0), (at, bottom));
-        d.text("tick", (at, y), Anchor::Middle, &numbers::count(size as u64));
+        d.text(
+            "tick",
+            (at, y),
+            Anchor::Middle,
+            &numbers::count(size as u64),
+        );
     }
 }
 
@@ -148,7 +165,12 @@ fn row(d: &mut Drawing, e: &EffectiveSize, x: &Scale, top: f64) {
     } else {
         let wide = super::drawing::width_of(&value, 11.0).min(RIGHT - LEFT);
         d.rectangle("step-0", (LEFT - 2.0, y - 9.0), (wide + 4.0, 14.0));
-        d.name("small soft", (LEFT, y + 2.0), Anchor::Start, (&value, 304.0));
+        d.name(
+            "small soft",
+            (LEFT, y + 2.0),
+            Anchor::Start,
+            (&value, 304.0),
+        );
     }
     d.end();
 }
@@ -230,7 +252,10 @@ fn table(subjects: &[Subject]) -> Table {
             ("size", "Effective size, individuals"),
             ("low", "lower limit"),
             ("high", "upper limit"),
-            ("drift_rate", "1/(2Ne), share of heterozygosity lost per generation"),
+            (
+                "drift_rate",
+                "1/(2Ne), share of heterozygosity lost per generation",
+            ),
             ("drift_rate_low", "lower limit"),
             ("drift_rate_high", "upper limit"),
             ("unbounded", "Without upper limit"),
@@ -253,7 +278,8 @@ fn table(subjects: &[Subject]) -> Table {
             Cell::from(e.to.as_str()),
             Cell::from(e.refers_to.as_str()),
             Cell::maybe(e.generations),
-            e.plan.map_or(Cell::Missing, |plan| Cell::from(plan_name(plan))),
+            e.plan
+                .map_or(Cell::Missing, |plan| Cell::from(plan_name(plan))),
             Cell::maybe(e.estimate),
             Cell::maybe(low),
             Cell::maybe(high),

@@ -39,7 +39,10 @@ pub fn subjects(report: &Report) -> Vec<Subject<'_>> {
             names.push(&stratum.population);
         }
     }
-    names.into_iter().map(|name| subject(report, name)).collect()
+    names
+        .into_iter()
+        .map(|name| subject(report, name))
+        .collect()
 }
 
 fn subject<'a>(report: &'a Report, population: &'a str) -> Subject<'a> {
@@ -130,7 +133,8 @@ impl<'a> Subject<'a> {
     pub fn drift(&self) -> Option<Drift<'a>> {
         let size = self.size?;
         let comparison = self.since_baseline?;
-        let spans = size.from.as_deref() == Some(comparison.from.as_str()) && size.to == comparison.to;
+        let spans =
+            size.from.as_deref() == Some(comparison.from.as_str()) && size.to == comparison.to;
         let generations = comparison.generations.filter(|&t| t > 0.0)?;
         let says_something = size.estimate.is_some() || size.unbounded;
         (spans && says_something).then_some(Drift { size, generations })

@@ -152,12 +152,15 @@ fn title(subjects: &[Subject]) -> String {
 fn facts(report: &Report, subjects: &[Subject]) -> Vec<String> {
     let mut facts = vec![
         counted(subjects.len() as u64, "population", "populations"),
-        counted(report.strata.len() as u64, "sample", "samples")
-            + " (population at a visit)",
+        counted(report.strata.len() as u64, "sample", "samples") + " (population at a visit)",
     ];
     facts.extend(tables::period(report));
     facts.push(counted(report.samples.used, "individual", "individuals"));
-    facts.push(counted(report.loci.polymorphic, "locus that varies", "loci that vary"));
+    facts.push(counted(
+        report.loci.polymorphic,
+        "locus that varies",
+        "loci that vary",
+    ));
     facts
 }
 
@@ -211,31 +214,50 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
     let unless = |name: &str, words: String| {
         if has(name) { Vec::new() } else { vec![words] }
     };
-    let mut alleles = section("alleles", "Alleles kept, missed and lost", &["allele-fates"], {
-        unless(
+    let mut alleles = section(
+        "alleles",
+        "Alleles kept, missed and lost",
+        &["allele-fates"],
+        {
+            unless(
             "allele-fates",
             "No population has both a baseline and a later visit, so no allele can be followed."
                 .to_owned(),
         )
-    });
+        },
+    );
     if !report.losses.is_empty() {
-        alleles.tables.push(TableView::of(&tables::losses(&report.losses)));
+        alleles
+            .tables
+            .push(TableView::of(&tables::losses(&report.losses)));
     }
-    let mut at_risk = section("at-risk", "Alleles at risk and who carries them", &["carriers"], {
-        unless(
-            "carriers",
-            "The report lists no allele at risk with carriers.".to_owned(),
-        )
-    });
+    let mut at_risk = section(
+        "at-risk",
+        "Alleles at risk and who carries them",
+        &["carriers"],
+        {
+            unless(
+                "carriers",
+                "The report lists no allele at risk with carriers.".to_owned(),
+            )
+        },
+    );
     if !report.at_risk.is_empty() {
-        at_risk.tables.push(TableView::of(&tables::at_risk(&report.at_risk)));
+        at_risk
+            .tables
+            .push(TableView::of(&tables::at_risk(&report.at_risk)));
     }
-    let mut size = section("effective-size", "Effective population size", &["effective-size"], {
-        unless(
-            "effective-size",
-            "The report holds no estimate of effective size.".to_owned(),
-        )
-    });
+    let mut size = section(
+        "effective-size",
+        "Effective population size",
+        &["effective-size"],
+        {
+            unless(
+                "effective-size",
+                "The report holds no estimate of effective size.".to_owned(),
+            )
+        },
+    );
     size.statements = statements(subjects);
     vec![
         section("diversity", "Diversity", &["diversity"], {
@@ -253,7 +275,12 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
                 false => vec!["There is only one sample, so nothing to compare.".to_owned()],
             },
         ),
-        section("outliers", "Loci out of line", &["outliers"], outlier_words(report)),
+        section(
+            "outliers",
+            "Loci out of line",
+            &["outliers"],
+            outlier_words(report),
+        ),
         section("genotyping", "Quality of the genotypes", &["genotyping"], {
             unless("genotyping", "The report holds no sample.".to_owned())
         }),
@@ -289,7 +316,8 @@ fn outlier_words(report: &Report) -> Vec<String> {
         .collect();
     if tested.is_empty() {
         return vec![
-            "Not tested: it takes two visits of a population and a known effective size.".to_owned(),
+            "Not tested: it takes two visits of a population and a known effective size."
+                .to_owned(),
         ];
     }
     let found: u64 = tested.iter().map(|o| o.found).sum();

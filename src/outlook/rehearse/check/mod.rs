@@ -26,7 +26,7 @@ pub fn read_scenario(path: &Path) -> Result<Scenario> {
         let row = e
             .span()
             .map(|s| text[..s.start.min(text.len())].matches('\n').count() as u64 + 1);
-        let cure = "see the reference of scenario keys for names and kinds of values".into();
+        let cure = "docs/scenario.md lists all keys and the kinds of their values".into();
         let problems = vec![Problem {
             row,
             what: e.message().trim().to_string(),

@@ -7,6 +7,7 @@ use crate::model::Stratum;
 use crate::ne::estimate::{Absence, quantile};
 use crate::ne::linkage::{
     LinkageEstimate, LinkagePairs, LinkagePanel, Mating, adjust_for_overlap, chromosome_ratio,
+    map_length_ratio,
 };
 use crate::report::assemble::Findings;
 use crate::report::wire;
@@ -36,10 +37,7 @@ fn of_stratum(
     let mut entries = Vec::new();
     for cutoff in FrequencyCutoff::ALL {
         let sums = gram.pairs(cutoff);
-        let pairs = match sums.contigs() < 2 {
-            true => LinkagePairs::All,
-            false => LinkagePairs::BetweenContigs,
-        };
+        let pairs = pairs(findings, stratum, sums.contigs());
         let strictest = cutoff == FrequencyCutoff::FivePercent;
         let variance = panel(findings, stratum, cutoff).individual_variance(pairs);
         let matings: &[Mating] = if strictest {
@@ -63,6 +61,19 @@ fn of_stratum(
     entries
 }
 
+/// Loci on different contigs, where contigs are chromosomes; all pairs where there is one contig, or
+/// where there are so many more contigs than chromosomes that they must be pieces of these.
+fn pairs(findings: &Findings, stratum: &Stratum, contigs: usize) -> LinkagePairs {
+    let chromosomes = findings
+        .programme
+        .get(&stratum.population, |p| p.chromosomes);
+    let pieces = chromosomes.is_some_and(|n| contigs > 2 * n as usize);
+    match contigs < 2 || pieces {
+        true => LinkagePairs::All,
+        false => LinkagePairs::BetweenContigs,
+    }
+}
+
 /// The genotypes of the panel in one stratum, for leaving out individuals.
 fn panel(findings: &Findings, stratum: &Stratum, cutoff: FrequencyCutoff) -> LinkagePanel {
     let mut panel = LinkagePanel::new(stratum.individuals(), cutoff);
@@ -77,6 +88,12 @@ fn panel(findings: &Findings, stratum: &Stratum, cutoff: FrequencyCutoff) -> Lin
         );
     }
     panel
+}
+
+/// The expected ratio of an estimate from all pairs of loci to the truth.
+struct Correction {
+    ratio: f64,
+    known: String,
 }
 
 /// What one estimate is made from.
@@ -98,14 +115,11 @@ impl Made<'_> {
                 Err(why) => return vec![absent(self.findings, self.stratum, &why.to_string())],
             };
         estimate.individual_variance = self.variance;
-        let chromosomes = self
-            .findings
-            .programme
-            .get(&self.stratum.population, |p| p.chromosomes);
-        let corrected = self.pairs == LinkagePairs::All && chromosomes.is_some();
-        if corrected && let Some(ratio) = chromosomes.and_then(chromosome_ratio) {
-            estimate.ratio = ratio;
+        let correction = self.correction();
+        if let Some(correction) = &correction {
+            estimate.ratio = correction.ratio;
         }
+        let corrected = correction.is_some();
         let headline = self.cutoff == FrequencyCutoff::FivePercent
             && self.mating == Mating::Random
             && (corrected || self.pairs == LinkagePairs::BetweenContigs);
@@ -113,15 +127,37 @@ impl Made<'_> {
             .findings
             .programme
             .get(&self.stratum.population, |p| p.life_history);
-        let mut entries = vec![self.entry(&estimate, 1.0, headline && life.is_none(), chromosomes)];
+        let mut entries = vec![self.entry(&estimate, 1.0, headline && life.is_none(), &correction)];
         // The adjustment is proportional: what it makes of an estimate of 1 is its factor.
         let factor = life
             .and_then(|life| adjust_for_overlap(1.0, &life))
             .map(|a| a.effective_size);
         if let Some(factor) = factor.filter(|_| headline) {
-            entries.push(self.entry(&estimate, factor, true, chromosomes));
+            entries.push(self.entry(&estimate, factor, true, &correction));
         }
         entries
+    }
+
+    /// What all pairs of loci are divided by, where the genome is known.
+    fn correction(&self) -> Option<Correction> {
+        let settings = self.findings.programme.settings(&self.stratum.population);
+        let by_chromosomes = || {
+            let n = settings.chromosomes?;
+            Some(Correction {
+                ratio: chromosome_ratio(n)?,
+                known: format!("{n} chromosomes"),
+            })
+        };
+        let by_map = || {
+            let cm = settings.map_length_cm?;
+            Some(Correction {
+                ratio: map_length_ratio(cm)?,
+                known: format!("a map of {cm} cM"),
+            })
+        };
+        (self.pairs == LinkagePairs::All)
+            .then(|| by_chromosomes().or_else(by_map))
+            .flatten()
     }
 
     fn entry(
@@ -129,7 +165,7 @@ impl Made<'_> {
         estimate: &LinkageEstimate,
         factor: f64,
         headline: bool,
-        chromosomes: Option<u32>,
+        correction: &Option<Correction>,
     ) -> wire::EffectiveSize {
         let level = self.findings.level;
         let normal = quantile(level, f64::INFINITY);
@@ -148,7 +184,7 @@ impl Made<'_> {
             individuals: Some(estimate.individuals),
             headline,
             variant: Some(self.variant(factor)),
-            notes: self.notes(estimate, chromosomes),
+            notes: self.notes(estimate, correction),
             ..subject(self.findings, self.stratum)
         };
         entry(subject, drift_rate)
@@ -176,18 +212,17 @@ impl Made<'_> {
         format!("{alleles}, {mating}, {pairs}{overlap}")
     }
 
-    fn notes(&self, estimate: &LinkageEstimate, chromosomes: Option<u32>) -> Vec<String> {
+    fn notes(&self, estimate: &LinkageEstimate, correction: &Option<Correction>) -> Vec<String> {
         let mut notes = Vec::new();
-        match (self.pairs, chromosomes) {
+        match (self.pairs, correction) {
             (LinkagePairs::All, None) => notes.push(
-                "all loci are on one contig, so linked pairs are in: the estimate is too low; state \
-                 the number of chromosomes to correct it"
+                "pairs of loci on one chromosome are in, so the estimate is too low; state the number \
+                 of chromosomes or the length of the genetic map to correct it"
                     .to_owned(),
             ),
-            (LinkagePairs::All, Some(n)) => notes.push(format!(
-                "linked pairs are in; divided by {:.3}, the expected ratio for {n} chromosomes \
-                 (Waples, Larson & Waples 2016)",
-                estimate.ratio
+            (LinkagePairs::All, Some(Correction { ratio, known })) => notes.push(format!(
+                "pairs of loci on one chromosome are in; divided by {ratio:.3}, the expected ratio for \
+                 {known} (Waples, Larson & Waples 2016)"
             )),
             (LinkagePairs::BetweenContigs, _) if self.sums.contigs() > MOST_CHROMOSOMES => notes
                 .push(format!(

@@ -96,7 +96,10 @@ fn overlap(a: &EffectiveSize, b: &EffectiveSize) -> bool {
 fn say(entry: &EffectiveSize) -> String {
     let number = |size: Option<f64>| size.map_or("unbounded".to_owned(), |n| format!("{n:.0}"));
     let (low, high) = entry.interval.unwrap_or_default();
-    let method = entry.method.replace('_', " ");
+    let method = match entry.method.as_str() {
+        "temporal_fs" => "temporal Fs".to_owned(),
+        other => other.replace('_', " "),
+    };
     format!(
         "{method} {} ({} to {})",
         number(entry.estimate),
