@@ -9,13 +9,14 @@ mod measure;
 mod page;
 mod rehearse;
 mod schema;
+mod screen;
 
 use std::ffi::OsString;
 use std::path::PathBuf;
 
 use clap::{CommandFactory, Parser, Subcommand};
 
-use crate::model::MeasurePlan;
+use crate::model::{MeasurePlan, ScreenPlan};
 
 /// What the program was asked to do.
 #[derive(Debug, Clone, PartialEq)]
@@ -26,6 +27,8 @@ pub enum Work {
     Page(PagePlan),
     /// Simulate a monitored population.
     Rehearse(RehearsePlan),
+    /// Look at the samples themselves.
+    Screen(Box<ScreenPlan>),
     /// Print the JSON Schema of what the program writes.
     Schema {
         /// Which document; all of them are listed when absent.
@@ -96,6 +99,7 @@ enum Command {
     Measure(measure::Flags),
     Page(page::Flags),
     Rehearse(rehearse::Flags),
+    Screen(screen::Flags),
     Schema(schema::Flags),
 }
 
@@ -114,6 +118,7 @@ where
         Command::Measure(flags) => Ok(Work::Measure(Box::new(flags.plan()?))),
         Command::Page(flags) => Ok(Work::Page(flags.plan())),
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
+        Command::Screen(flags) => Ok(Work::Screen(Box::new(flags.plan()?))),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
     }
 }

@@ -1,34 +1,6 @@
 //! Runs of homozygosity along the contigs of one individual (McQuillan et al. 2008).
 
-/// What counts as a run.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct RunRule {
-    /// Fewest typed loci.
-    pub fewest_loci: u32,
-    /// Least length in base pairs, first to last homozygous locus.
-    pub shortest: u64,
-    /// Heterozygous loci that a run may hold, for genotyping errors.
-    pub most_heterozygous: u32,
-    /// Missing loci that a run may hold.
-    pub most_missing: u32,
-    /// Largest distance between neighbouring loci in base pairs; a wider gap ends a run.
-    pub widest_gap: u64,
-}
-
-impl Default for RunRule {
-    /// 30 typed loci over 1 Mb, with one heterozygous and five missing ones inside: at one locus in
-    /// 30 kb or more, 30 loci of expected heterozygosity 0.3 are homozygous by chance in 1 of 40 000
-    /// places. A gap of 500 kb may hide a stretch that nothing tells of.
-    fn default() -> Self {
-        RunRule {
-            fewest_loci: 30,
-            shortest: 1_000_000,
-            most_heterozygous: 1,
-            most_missing: 5,
-            widest_gap: 500_000,
-        }
-    }
-}
+pub use crate::model::RunRule;
 
 /// A run of homozygosity.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -163,7 +135,10 @@ mod tests {
         assert_eq!(found(&[0, 0, 3, 0, 0]), [(0, 400, 4)]);
         assert_eq!(found(&[0, 0, 3, 3, 0, 0]), []);
         assert_eq!(found(&[0, 0, 0]), []);
-        assert_eq!(found(&[0, 0, 0, 0, 1, 1, 2, 2, 2, 2]), [(0, 300, 4), (600, 900, 4)]);
+        assert_eq!(
+            found(&[0, 0, 0, 0, 1, 1, 2, 2, 2, 2]),
+            [(0, 300, 4), (600, 900, 4)]
+        );
     }
 
     #[test]

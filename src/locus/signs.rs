@@ -64,7 +64,10 @@ pub fn homozygotes_by_chance(copies: &[u32]) -> Option<(f64, f64)> {
     let fours: f64 = copies.iter().map(|&c| falling(c, 4)).sum();
     let one = alike / falling(total, 2);
     let two = (alike * alike - squares + fours) / falling(total, 4);
-    Some((n * one, n * one * (1.0 - one) + n * (n - 1.0) * (two - one * one)))
+    Some((
+        n * one,
+        n * one * (1.0 - one) + n * (n - 1.0) * (two - one * one),
+    ))
 }
 
 /// Scores of several samples as one, each weighted by the root of its size (Stouffer et al. 1949;

@@ -4,6 +4,8 @@ pub mod assemble;
 pub mod figures;
 mod json;
 pub mod page;
+pub mod screen_wire;
+pub mod screening;
 pub mod summary;
 pub mod table;
 pub mod warnings;
@@ -11,4 +13,4 @@ pub mod wire;
 mod words;
 
 pub use json::{Output, WholeFile};
-pub use words::{CAUTIONS, methods};
+pub use words::{CAUTIONS, methods, screen_methods};

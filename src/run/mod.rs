@@ -2,15 +2,17 @@
 
 mod measure;
 mod pipeline;
+mod screen;
 
 pub use measure::measure;
+pub use screen::screen;
 
 use schemars::schema_for;
 
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
-use crate::report::summary::summary;
+use crate::report::summary::{screen_summary, summary};
 use crate::report::{Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
@@ -30,6 +32,13 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
             plan.figures.as_deref(),
         ),
         Work::Rehearse(plan) => rehearse(&plan),
+        Work::Screen(plan) => {
+            let report = screen(&plan, told_arguments(arguments))?;
+            if !plan.quiet {
+                eprint!("{}", screen_summary(&report));
+            }
+            Ok(())
+        }
         Work::Schema { name } => schema(name.as_deref()),
     }
 }
@@ -56,7 +65,7 @@ fn available_threads() -> usize {
 }
 
 /// Documents that have a schema.
-const SCHEMAS: [&str; 3] = ["report", "scenario", "truth"];
+const SCHEMAS: [&str; 4] = ["report", "scenario", "screen", "truth"];
 
 /// Prints the JSON Schema of one document, or the names of all.
 fn schema(name: Option<&str>) -> Result<()> {
@@ -65,6 +74,7 @@ fn schema(name: Option<&str>) -> Result<()> {
         None => out.bytes(format!("{}\n", SCHEMAS.join("\n")).as_bytes()),
         Some("report") => out.json(&schema_for!(crate::report::wire::Report)),
         Some("scenario") => out.json(&schema_for!(outlook::rehearse::Scenario)),
+        Some("screen") => out.json(&schema_for!(crate::report::screen_wire::ScreenReport)),
         Some("truth") => out.json(&schema_for!(outlook::rehearse::Truth)),
         Some(other) => Err(Error::Usage(format!(
             "no document is called '{other}'; there are: {}",
@@ -76,7 +86,7 @@ fn schema(name: Option<&str>) -> Result<()> {
 /// Arguments that shape the result: those that only say where it goes or how it is made are left
 /// out, so that the same input gives the same bytes.
 fn told_arguments(arguments: &[std::ffi::OsString]) -> Vec<String> {
-    const WITH_VALUE: [&str; 4] = ["--threads", "--output", "-o", "--loci"];
+    const WITH_VALUE: [&str; 5] = ["--threads", "--output", "-o", "--loci", "--write-sheet"];
     let mut told = Vec::new();
     let mut skip = false;
     for argument in arguments.iter().skip(1).map(|a| a.to_string_lossy()) {

@@ -10,7 +10,7 @@ use crate::ne::linkage::{LinkageEstimate, LinkagePairs, LinkagePanel, Mating, Si
 
 /// Loci behind the effective sizes with and without families: they are compared with each other, and
 /// individuals limit their precision.
-const LOCI: usize = 10_000;
+pub const FAMILY_LOCI: usize = 10_000;
 /// Expected opposite homozygotes of full sibs below which sibs cannot be told from parents.
 const FEWEST_OPPOSITE: f64 = 5.0;
 /// Standard normal value of 95 % intervals.
@@ -41,7 +41,10 @@ pub fn full_sib_families(
         let together = stratum_of[a] == stratum_of[b] && !left_out[a] && !left_out[b];
         if first_degree && together && sib_like(genotypes, stratum_of[a], pair) != Some(false) {
             let (keep, drop) = (family[a].min(family[b]), family[a].max(family[b]));
-            family.iter_mut().filter(|f| **f == drop).for_each(|f| *f = keep);
+            family
+                .iter_mut()
+                .filter(|f| **f == drop)
+                .for_each(|f| *f = keep);
         }
     }
     let mut members = vec![Vec::new(); family.len()];
@@ -76,24 +79,27 @@ pub struct FamilyEffect {
     pub one_each: SizeBySample,
 }
 
-/// Both effective sizes of one stratum: `slots` are its distinct individuals, `families` those of the
+/// Both effective sizes of one stratum from some loci of two alleles (hash of the contig, dosages of
+/// all slots; [`FAMILY_LOCI`] are enough): `slots` are its distinct individuals, `families` those of the
 /// stratum.
 pub fn family_effect(
-    genotypes: &ScreenGenotypes,
-    dosages: &[Vec<u8>],
+    rows: &[(u64, Vec<u8>)],
     slots: &[usize],
     families: &[Vec<usize>],
 ) -> FamilyEffect {
     let later: Vec<usize> = families.iter().flat_map(|f| f[1..].to_vec()).collect();
-    let one_each: Vec<usize> = slots.iter().copied().filter(|s| !later.contains(s)).collect();
+    let one_each: Vec<usize> = slots
+        .iter()
+        .copied()
+        .filter(|s| !later.contains(s))
+        .collect();
     FamilyEffect {
-        whole: size_of(genotypes, dosages, slots),
-        one_each: size_of(genotypes, dosages, &one_each),
+        whole: size_of(rows, slots),
+        one_each: size_of(rows, &one_each),
     }
 }
 
-/// `dosages` are rows by kept locus of two alleles, all slots each, or fewer rows.
-fn size_of(genotypes: &ScreenGenotypes, dosages: &[Vec<u8>], slots: &[usize]) -> SizeBySample {
+fn size_of(rows: &[(u64, Vec<u8>)], slots: &[usize]) -> SizeBySample {
     let absent = |why: String| SizeBySample {
         individuals: slots.len(),
         loci: 0,
@@ -108,15 +114,14 @@ fn size_of(genotypes: &ScreenGenotypes, dosages: &[Vec<u8>], slots: &[usize]) ->
     let cutoff = FrequencyCutoff::FivePercent;
     let mut panel = LinkagePanel::new(slots.len(), cutoff);
     let (mut locus, mut counts) = (Genotypes::default(), Counts::default());
-    let step = dosages.len().div_ceil(LOCI).max(1);
-    for (row, &contig) in dosages.iter().zip(&genotypes.contigs).step_by(step) {
+    for (contig, row) in rows {
         locus.reset(slots.len(), 2);
         for (out, &slot) in locus.dosages_mut().iter_mut().zip(slots) {
             *out = row.get(slot).copied().unwrap_or(MISSING_DOSAGE);
         }
         counts.recount(&locus, 0..slots.len());
-        gram.add(contig, &locus, 0..slots.len(), &counts);
-        panel.push(contig, &locus, 0..slots.len(), &counts);
+        gram.add(*contig, &locus, 0..slots.len(), &counts);
+        panel.push(*contig, &locus, 0..slots.len(), &counts);
     }
     let sums = gram.pairs(cutoff);
     let pairs = match sums.contigs() < 2 {

@@ -127,7 +127,11 @@ impl StratumFrequencies {
         let sibs_opposite = if loci > 0.0 { opposite / loci } else { 0.0 };
         for counts in repeats.iter().filter(|c| c.typed > 0) {
             let copies = f64::from(counts.gene_copies());
-            let p: Vec<f64> = counts.copies.iter().map(|&c| f64::from(c) / copies).collect();
+            let p: Vec<f64> = counts
+                .copies
+                .iter()
+                .map(|&c| f64::from(c) / copies)
+                .collect();
             differ += 1.0 - probability_of_identity_sibs(&p);
             loci += 1.0;
         }
@@ -143,6 +147,8 @@ impl StratumFrequencies {
 
 fn frequency(dosages: &[u8]) -> Option<f64> {
     let typed = dosages.iter().filter(|&&d| d < 3);
-    let (n, copies) = typed.fold((0u32, 0u32), |(n, copies), &d| (n + 1, copies + u32::from(d)));
+    let (n, copies) = typed.fold((0u32, 0u32), |(n, copies), &d| {
+        (n + 1, copies + u32::from(d))
+    });
     (n > 0).then(|| f64::from(copies) / f64::from(2 * n))
 }

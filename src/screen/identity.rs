@@ -56,7 +56,10 @@ pub fn identity(genotypes: &ScreenGenotypes, stratum: usize, individuals: u64) -
     };
     for p in of.biallelic.iter().flatten() {
         let alternate = (p * copies).round();
-        add(&[(copies - alternate) as u32, alternate as u32], &[1.0 - p, *p]);
+        add(
+            &[(copies - alternate) as u32, alternate as u32],
+            &[1.0 - p, *p],
+        );
     }
     for counts in of.repeats.iter().filter(|c| c.typed > 0) {
         let all = f64::from(counts.gene_copies());

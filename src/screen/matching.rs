@@ -42,7 +42,11 @@ impl MatchRule {
         let enough = |i: &usize| genotypes.strata[*i].individuals >= ENOUGH_INDIVIDUALS;
         let all: Vec<usize> = (0..genotypes.strata.len()).collect();
         let relied: Vec<usize> = all.iter().copied().filter(enough).collect();
-        let relied = if relied.is_empty() { all.clone() } else { relied };
+        let relied = if relied.is_empty() {
+            all.clone()
+        } else {
+            relied
+        };
         let least = relied
             .iter()
             .map(|&i| genotypes.strata[i].sibs_differ)

@@ -9,10 +9,12 @@ mod matching;
 mod rates;
 mod related;
 
-pub use families::{FamilyEffect, SizeBySample, family_effect, full_sib_families, sib_like};
+pub use families::{
+    FAMILY_LOCI, FamilyEffect, SizeBySample, family_effect, full_sib_families, sib_like,
+};
 pub use genotypes::{ScreenGenotypes, StratumFrequencies};
 pub use groups::{Grouped, groups_of};
 pub use identity::{Identity, Telling, identity};
-pub use matching::{MatchRule, Matching, PairFound, PairKind};
+pub use matching::{Found, MatchRule, Matching, PairFound, PairKind};
 pub use rates::{GenotypingRates, OutcomeTable, RateEstimate, exact_binomial};
 pub use related::{KINSHIP_LOCI, Kinship, kinship_interval};

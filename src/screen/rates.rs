@@ -80,9 +80,9 @@ impl OutcomeTable {
 
     /// Heterozygote against homozygote, and both heterozygous.
     pub fn one_and_both_heterozygous(&self) -> (u64, u64) {
-        self.classes.values().fold((0, 0), |(one, both), c| {
-            (one + c[1] + c[4], both + c[3])
-        })
+        self.classes
+            .values()
+            .fold((0, 0), |(one, both), c| (one + c[1] + c[4], both + c[3]))
     }
 
     /// Opposite homozygotes.
@@ -115,7 +115,9 @@ impl OutcomeTable {
             let p = (f64::from(class) / f64::from(CLASSES)).clamp(0.005, 0.995);
             let truth = [(1.0 - p).powi(2), 2.0 * p * (1.0 - p), p * p];
             let chance = |a: usize, b: usize| {
-                let both = (0..3).map(|t| truth[t] * called[t][a] * called[t][b]).sum::<f64>();
+                let both = (0..3)
+                    .map(|t| truth[t] * called[t][a] * called[t][b])
+                    .sum::<f64>();
                 if a == b { both } else { 2.0 * both }
             };
             let cells = [(0, 0), (0, 1), (0, 2), (1, 1), (1, 2), (2, 2)];
@@ -187,7 +189,11 @@ fn highest(function: impl Fn(f64) -> f64) -> (f64, f64) {
     }
     let inside = ((low + high) / 2.0, at_left.max(at_right));
     let none = function(0.0);
-    if none >= inside.1 { (0.0, none) } else { inside }
+    if none >= inside.1 {
+        (0.0, none)
+    } else {
+        inside
+    }
 }
 
 #[cfg(test)]

@@ -257,11 +257,15 @@ impl ScreenSums {
             let (all, none): (usize, usize) = (size.iter().sum(), missing.iter().sum());
             let chance = |g: usize| {
                 (missing[g] > 0).then(|| {
-                    let tail = self.factorials.missing_together(missing[g], size[g], none, all);
+                    let tail = self
+                        .factorials
+                        .missing_together(missing[g], size[g], none, all);
                     (tail, g)
                 })
             };
-            let lowest = (0..groups).filter_map(chance).min_by(|a, b| a.0.total_cmp(&b.0));
+            let lowest = (0..groups)
+                .filter_map(chance)
+                .min_by(|a, b| a.0.total_cmp(&b.0));
             // The lowest of several groups, held against so many chances (Bonferroni).
             let p = lowest.map_or(1.0, |(p, _)| (p * groups as f64).min(1.0));
             self.missing[which].add(p, Direction::Deficit);
@@ -282,5 +286,8 @@ impl ScreenSums {
 /// x^2 - (1 + 2p) x + 2 p^2 for dosages 0, 1, 2, and 2 p (1 - p) (Yang et al. 2011), in fixed point.
 fn uniting_terms(p: f64) -> ([i64; 3], i64) {
     let term = |x: f64| to_fixed(x * x - (1.0 + 2.0 * p) * x + 2.0 * p * p);
-    ([term(0.0), term(1.0), term(2.0)], to_fixed(2.0 * p * (1.0 - p)))
+    (
+        [term(0.0), term(1.0), term(2.0)],
+        to_fixed(2.0 * p * (1.0 - p)),
+    )
 }

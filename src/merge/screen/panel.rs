@@ -21,12 +21,17 @@ pub struct KeptLocus {
 }
 
 impl KeptLocus {
+    /// The dosage of one slot.
+    pub fn dosage(&self, slot: usize) -> u8 {
+        self.packed.get(slot / 4).map_or(MISSING_DOSAGE, |byte| {
+            (byte >> (2 * (slot % 4))) & MISSING_DOSAGE
+        })
+    }
+
     /// Dosages by slot, into a buffer of as many slots as wanted.
     pub fn unpack(&self, dosages: &mut [u8]) {
         for (slot, dosage) in dosages.iter_mut().enumerate() {
-            *dosage = self.packed.get(slot / 4).map_or(MISSING_DOSAGE, |byte| {
-                (byte >> (2 * (slot % 4))) & MISSING_DOSAGE
-            });
+            *dosage = self.dosage(slot);
         }
     }
 }
