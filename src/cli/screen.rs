@@ -44,7 +44,7 @@ pub(super) struct Flags {
     /// Share of the shared loci that may differ within one individual [default: from the panel]
     ///
     /// By default the most for which one full sib of every sample would give 0.05 false matches in
-    /// all, and never more than half of what full sibs are expected to show.
+    /// all, and never more than 0.6 of what full sibs are expected to show.
     #[arg(long, value_name = "X", value_parser = common::share, help_heading = "Samples")]
     most_mismatching: Option<f64>,
 

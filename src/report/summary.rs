@@ -174,7 +174,7 @@ pub fn screen_summary(report: &super::screen_wire::ScreenReport) -> String {
     }
     let rejected: u64 = report.odd_heterozygotes.rejected.values().sum();
     out.push_str(&format!(
-        "{} famil(ies) of full sibs; {rejected} loci with odd heterozygotes\n",
+        "families of full sibs: {}; loci with odd heterozygotes: {rejected}\n",
         report.families.families.len()
     ));
     out
