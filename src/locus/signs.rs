@@ -89,8 +89,7 @@ pub fn upper_tail(score: f64) -> f64 {
 /// The standard normal value below which a share `p` lies, `p` held away from 0 and 1.
 fn standard_normal(p: f64) -> f64 {
     const SMALLEST: f64 = 1e-300;
-    -std::f64::consts::SQRT_2 * statrs::function::erf::erfc_inv(2.0 * p.max(SMALLEST).min(0.5))
-        + 0.0
+    -std::f64::consts::SQRT_2 * statrs::function::erf::erfc_inv(2.0 * p.clamp(SMALLEST, 0.5)) + 0.0
 }
 
 /// Frequency of an allele that is never seen which would make so many heterozygotes too few:

@@ -169,12 +169,10 @@ mod tests {
     use super::*;
 
     fn locus(position: u64, dosages: &[u8]) -> Locus {
-        let mut locus = Locus {
-            contig: "lake".into(),
-            contig_hash: stable_hash(b"lake"),
-            position,
-            ..Locus::default()
-        };
+        let mut locus = Locus::default();
+        locus.contig = "lake".into();
+        locus.contig_hash = stable_hash(b"lake");
+        locus.position = position;
         locus.genotypes.reset(dosages.len(), 2);
         locus.genotypes.dosages_mut().copy_from_slice(dosages);
         locus
