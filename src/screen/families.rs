@@ -10,7 +10,7 @@ use crate::ne::linkage::{LinkageEstimate, LinkagePairs, LinkagePanel, Mating, Si
 
 /// Loci behind the effective sizes with and without families: they are compared with each other, and
 /// individuals limit their precision.
-pub const FAMILY_LOCI: usize = 10_000;
+pub const FAMILY_LOCI: usize = 3_000;
 /// Expected opposite homozygotes of full sibs below which sibs cannot be told from parents.
 const FEWEST_OPPOSITE: f64 = 5.0;
 /// Standard normal value of 95 % intervals.
