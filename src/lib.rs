@@ -20,5 +20,6 @@ pub mod ne;
 pub mod outlook;
 pub mod report;
 pub mod run;
+pub mod screen;
 
 pub use error::{Error, Result};

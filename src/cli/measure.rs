@@ -30,7 +30,8 @@ pub(super) struct Flags {
     ///
     /// A table in UTF-8 with a header row, delimited by tabs, commas or semicolons. Columns:
     /// sample, population and year (or date, as 2019-05-03); optional visit (a label that pools
-    /// years), sex (F, M), generation, replicate_of, batch. Further columns are ignored.
+    /// years), sex (F, M), generation, replicate_of, batch, use (rows with 'no' are left out and
+    /// counted). Further columns are ignored.
     #[arg(long, value_name = "SHEET")]
     samples: PathBuf,
 

@@ -11,6 +11,7 @@ mod measure;
 mod page;
 mod rehearse;
 mod schema;
+mod screen;
 mod verdict;
 
 use std::ffi::OsString;
@@ -18,7 +19,7 @@ use std::path::PathBuf;
 
 use clap::{CommandFactory, Parser, Subcommand};
 
-use crate::model::MeasurePlan;
+use crate::model::{MeasurePlan, ScreenPlan};
 
 /// What the program was asked to do.
 #[derive(Debug, Clone, PartialEq)]
@@ -35,6 +36,8 @@ pub enum Work {
     Forecast(ForecastPlan),
     /// Tell what a sampling design can see.
     Design(Box<DesignPlan>),
+    /// Look at the samples themselves.
+    Screen(Box<ScreenPlan>),
     /// Print the JSON Schema of what the program writes.
     Schema {
         /// Which document; all of them are listed when absent.
@@ -211,6 +214,7 @@ enum Command {
     Verdict(verdict::Flags),
     Forecast(forecast::Flags),
     Design(Box<design::Flags>),
+    Screen(screen::Flags),
     Schema(schema::Flags),
 }
 
@@ -232,6 +236,7 @@ where
         Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),
         Command::Forecast(flags) => Ok(Work::Forecast(flags.plan()?)),
         Command::Design(flags) => Ok(Work::Design(Box::new(flags.plan()))),
+        Command::Screen(flags) => Ok(Work::Screen(Box::new(flags.plan()?))),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
     }
 }

@@ -99,6 +99,17 @@ fn wrong_usage_exits_2_and_says_why() {
         ("measure a --sample s", "--samples"),
         ("mesure a", "'measure'"),
         ("rehearse demo.toml", "--output"),
+        ("screen calls.vcf", "--samples"),
+        ("screen a a --samples s", "given twice"),
+        (
+            "screen a --samples s --write-sheet s",
+            "both read and written",
+        ),
+        (
+            "screen a --samples s -o t --write-sheet t",
+            "give two names",
+        ),
+        ("screen a --samples s --most-mismatching 5", "a share"),
     ];
     for (line, word) in cases {
         let error = parse(line).unwrap_err();

@@ -13,9 +13,11 @@
 //! | `generation` | number, 0 for founders |
 //! | `replicate_of` | name of the sample of which this is a second genotyping |
 //! | `batch` | genotyping batch |
+//! | `use` | yes or no; rows with no are left out and counted, blank is yes |
 //!
 //! Further columns are ignored. `NA` counts as blank in optional columns.
 
+pub mod annotate;
 mod columns;
 mod fields;
 mod table;
@@ -82,7 +84,7 @@ pub fn listed_samples(path: &Path) -> Vec<(u64, String)> {
     let columns = Columns::of(&table.header, &mut unused, &mut notes);
     read_rows(&table, &columns, &mut unused)
         .into_iter()
-        .filter(|draft| draft.replicate_of.is_none())
+        .filter(|draft| draft.used && draft.replicate_of.is_none())
         .map(|draft| (draft.row, draft.sample))
         .collect()
 }
@@ -133,6 +135,7 @@ struct Draft {
     generation: Option<f64>,
     replicate_of: Option<String>,
     batch: Option<String>,
+    used: bool,
 }
 
 impl Draft {
@@ -148,6 +151,7 @@ impl Draft {
             generation: self.generation,
             replicate_of: self.replicate_of,
             batch: self.batch,
+            used: self.used,
         })
     }
 }
@@ -198,6 +202,8 @@ impl RowReader<'_> {
         let generation = generation.and_then(|text| self.accept(fields::generation(&text)));
         let replicate_of = self.optional(columns.replicate_of, "replicate_of");
         let batch = self.optional(columns.batch, "batch");
+        let used = self.optional(columns.used, "use");
+        let used = used.and_then(|text| self.accept(fields::used(&text)));
         Some(Draft {
             row: self.record.row,
             sample: sample?,
@@ -208,6 +214,7 @@ impl RowReader<'_> {
             generation,
             replicate_of,
             batch,
+            used: used.unwrap_or(true),
         })
     }
 

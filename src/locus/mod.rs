@@ -9,6 +9,8 @@ pub mod fstatistics;
 pub mod hardy_weinberg;
 pub mod individuals;
 pub mod richness;
+pub mod runs;
+pub mod signs;
 mod term_list;
 mod terms;
 

@@ -7,6 +7,7 @@ pub mod gram;
 pub mod histogram;
 pub mod panel;
 mod scheme;
+pub mod screen;
 pub mod spectrum;
 mod sums;
 mod two_way;

@@ -41,6 +41,7 @@ pub fn match_samples(
     let mut problems = told_twice(header_samples);
     let (present, absent): (Vec<&SheetRow>, Vec<&SheetRow>) = rows
         .iter()
+        .filter(|row| row.used)
         .partition(|row| in_calls.contains(row.sample.as_str()));
     let absent: Vec<&SheetRow> = absent
         .into_iter()
@@ -80,6 +81,7 @@ pub fn match_samples(
         strata: stratified.strata,
     };
     note_fit(&mut matched, &strata_of(rows).strata);
+    note_not_used(&mut matched, rows);
     Ok(matched)
 }
 
@@ -101,11 +103,31 @@ fn told_twice(header_samples: &[String]) -> Vec<Problem> {
     problems
 }
 
+fn note_not_used(matched: &mut Matched, rows: &[SheetRow]) {
+    let names = || rows.iter().filter(|row| !row.used);
+    if names().next().is_some() {
+        let text = format!(
+            "{} row(s) say no under 'use' and are left out: {}.",
+            names().count(),
+            spell_out(names().map(|row| row.sample.as_str()))
+        );
+        matched
+            .notes
+            .push(Note::new("rows_not_used", "sheet", text));
+    }
+}
+
 fn nothing_in_common(header_samples: &[String], rows: &[SheetRow]) -> Problem {
     if header_samples.is_empty() {
         return Problem::of_all(
             "the calls have no sample at all",
             "give calls with genotypes: a file of sites alone cannot be measured",
+        );
+    }
+    if !rows.is_empty() && rows.iter().all(|row| !row.used) {
+        return Problem::of_all(
+            "every row says no under 'use'",
+            "write yes in the rows that shall take part",
         );
     }
     Problem::of_all(

@@ -6,6 +6,7 @@ mod matching;
 mod notes;
 mod plan;
 mod programme;
+mod screen_plan;
 mod strata;
 
 pub use comparisons::{Compared, comparisons};
@@ -19,6 +20,10 @@ pub use plan::{
     DEFAULT_SAMPLING_PLAN, MeasurePlan, default_gene_copies,
 };
 pub use programme::{LifeHistory, PopulationSettings, Programme, SamplingPlan};
+pub use screen_plan::{
+    DEFAULT_LIST_LOCI, DEFAULT_LIST_PAIRS, DEFAULT_MIN_SAMPLE_CALL_RATE, DEFAULT_SCREEN_LOCI,
+    RunRule, SCREEN_REPEATS, ScreenPlan,
+};
 pub use strata::{
     Comparison, ComparisonKind, Individual, Replicate, Sex, SheetRow, Strata, Stratified, Stratum,
     strata_of,

@@ -27,6 +27,8 @@ pub struct SheetRow {
     pub replicate_of: Option<String>,
     /// Genotyping batch, where given.
     pub batch: Option<String>,
+    /// Whether the row takes part: false where the sheet's column `use` says no.
+    pub used: bool,
 }
 
 /// Sex of a sampled individual.
@@ -136,7 +138,7 @@ pub struct Stratified {
 pub fn strata_of(rows: &[SheetRow]) -> Stratified {
     let mut groups: BTreeMap<(&str, &str), Vec<&SheetRow>> = BTreeMap::new();
     let mut replicates = Vec::new();
-    for row in rows {
+    for row in rows.iter().filter(|row| row.used) {
         match &row.replicate_of {
             Some(of) => replicates.push(Replicate {
                 sample: row.sample.clone(),
@@ -269,6 +271,7 @@ pub(super) mod tests {
             generation: None,
             replicate_of: None,
             batch: None,
+            used: true,
         }
     }
 

@@ -7,6 +7,8 @@ pub mod forecast;
 pub mod headline;
 mod json;
 pub mod page;
+pub mod screen_wire;
+pub mod screening;
 pub mod summary;
 pub mod table;
 pub mod verdict;
@@ -15,4 +17,4 @@ pub mod wire;
 mod words;
 
 pub use json::{Output, WholeFile};
-pub use words::{CAUTIONS, methods};
+pub use words::{CAUTIONS, methods, screen_methods};

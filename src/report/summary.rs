@@ -130,3 +130,52 @@ fn plain(text: &str) -> String {
         .map(|c| if c.is_control() { ' ' } else { c })
         .collect()
 }
+
+/// A first look at a screening report, a few lines.
+pub fn screen_summary(report: &super::screen_wire::ScreenReport) -> String {
+    let groups = |kind: &str| {
+        report
+            .same_individual
+            .iter()
+            .filter(|g| g.kind == kind)
+            .count()
+    };
+    let left_out = report.samples.iter().filter(|sample| !sample.used).count();
+    let mut out = format!(
+        "{} samples at {} loci ({} vary); {left_out} should not be used\n",
+        report.samples.len(),
+        report.loci.kept,
+        report.loci.varying
+    );
+    out.push_str(&format!(
+        "one individual: {} group(s) within a visit, {} between visits, {} between populations, {} of declared replicates\n",
+        groups("within_visit"),
+        groups("between_visits"),
+        groups("between_populations"),
+        groups("declared_replicates"),
+    ));
+    let wrong = report
+        .replicates
+        .iter()
+        .filter(|check| check.matches == Some(false))
+        .count();
+    if wrong > 0 {
+        out.push_str(&format!(
+            "{wrong} declared replicate(s) do not match: check the labels\n"
+        ));
+    }
+    for stratum in &report.strata {
+        if matches!(stratum.tells.as_deref(), Some("nobody" | "unrelated_only")) {
+            out.push_str(&format!(
+                "{}: the panel cannot tell close relatives apart\n",
+                stratum.stratum
+            ));
+        }
+    }
+    let rejected: u64 = report.odd_heterozygotes.rejected.values().sum();
+    out.push_str(&format!(
+        "families of full sibs: {}; loci with odd heterozygotes: {rejected}\n",
+        report.families.families.len()
+    ));
+    out
+}

@@ -91,3 +91,44 @@ pub fn methods() -> BTreeMap<String, String> {
     })
     .into()
 }
+
+/// Unit and source of what screening reports, by field name.
+pub fn screen_methods() -> BTreeMap<String, String> {
+    let all = [
+        (
+            "inbreeding_moments",
+            "(O - E)/(L - E), expected homozygosity without bias (Nei 1978), no unit",
+        ),
+        (
+            "inbreeding_uniting",
+            "correlation of uniting gametes (Yang et al. 2011), ratio of sums, no unit",
+        ),
+        (
+            "f_roh",
+            "share of the covered genome in runs of homozygosity (McQuillan et al. 2008)",
+        ),
+        (
+            "kinship",
+            "robust, between families (Manichaikul et al. 2010); block jackknife (Busing et al. 1999)",
+        ),
+        (
+            "probability_of_identity",
+            "Paetkau & Strobeck (1994) without bias (Paetkau et al. 1998); sibs: Evett & Weir (1998); guideline: Waits, Luikart & Taberlet (2001)",
+        ),
+        (
+            "odd_heterozygotes",
+            "one-sided mid-p (Graffelman & Moreno 2013) by stratum, combined (Stouffer et al. 1949); false discovery rate by Benjamini & Hochberg (1995)",
+        ),
+        ("unseen_allele_frequency", "Brookfield (1996)"),
+        (
+            "missing_together",
+            "exact test (Fisher 1935) of the worst group, Bonferroni",
+        ),
+        (
+            "shares",
+            "exact binomial intervals (Clopper & Pearson 1934)",
+        ),
+    ];
+    all.map(|(name, text)| (name.to_owned(), text.to_owned()))
+        .into()
+}

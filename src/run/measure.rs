@@ -341,7 +341,13 @@ fn loci(all: &Collected) -> Loci {
     }
 }
 
-fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String) -> InputFile {
+pub(super) fn input_file(
+    role: &str,
+    path: &Path,
+    format: &str,
+    bytes: u64,
+    sha256: String,
+) -> InputFile {
     InputFile {
         role: role.to_owned(),
         name: path.display().to_string(),

@@ -4,16 +4,18 @@ mod design;
 mod forecast;
 mod measure;
 mod pipeline;
+mod screen;
 mod verdict;
 
 pub use measure::measure;
+pub use screen::screen;
 
 use schemars::schema_for;
 
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
-use crate::report::summary::summary;
+use crate::report::summary::{screen_summary, summary};
 use crate::report::{self, Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
@@ -36,6 +38,13 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
         Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
         Work::Forecast(plan) => forecast::forecast(&plan, told_arguments(arguments)),
         Work::Design(plan) => design::design(&plan, told_arguments(arguments)),
+        Work::Screen(plan) => {
+            let report = screen(&plan, told_arguments(arguments))?;
+            if !plan.quiet {
+                eprint!("{}", screen_summary(&report));
+            }
+            Ok(())
+        }
         Work::Schema { name } => schema(name.as_deref()),
     }
 }
@@ -65,11 +74,12 @@ fn available_threads() -> usize {
 type MakeSchema = fn() -> schemars::Schema;
 
 /// Documents that have a schema, by name.
-const SCHEMAS: [(&str, MakeSchema); 6] = [
+const SCHEMAS: [(&str, MakeSchema); 7] = [
     ("report", || schema_for!(report::wire::Report)),
     ("verdict", || schema_for!(report::verdict::Verdict)),
     ("forecast", || schema_for!(report::forecast::Forecast)),
     ("design", || schema_for!(report::design::Design)),
+    ("screen", || schema_for!(report::screen_wire::ScreenReport)),
     ("scenario", || schema_for!(outlook::rehearse::Scenario)),
     ("truth", || schema_for!(outlook::rehearse::Truth)),
 ];
@@ -93,7 +103,7 @@ fn schema(name: Option<&str>) -> Result<()> {
 /// Arguments that shape the result: those that only say where it goes or how it is made are left
 /// out, so that the same input gives the same bytes.
 fn told_arguments(arguments: &[std::ffi::OsString]) -> Vec<String> {
-    const WITH_VALUE: [&str; 4] = ["--threads", "--output", "-o", "--loci"];
+    const WITH_VALUE: [&str; 5] = ["--threads", "--output", "-o", "--loci", "--write-sheet"];
     let mut told = Vec::new();
     let mut skip = false;
     for argument in arguments.iter().skip(1).map(|a| a.to_string_lossy()) {

@@ -28,11 +28,38 @@ pub struct Source {
     pub selection: Selection,
 }
 
+/// What is gathered over loci: every worker fills its own, and merging in any order gives the same.
+pub trait Gather: Send + Sized {
+    /// Adds one locus; a row of the per-locus table, where one is asked for, goes behind `rows`.
+    fn take(&mut self, locus: &Locus, row: Option<RowMaker>, rows: &mut Vec<u8>);
+    /// Adds what another worker gathered.
+    fn merge(&mut self, other: Self);
+    /// Makes what was gathered ready to be read or merged.
+    fn flush(&mut self) {}
+}
+
+impl Gather for Sums {
+    fn take(&mut self, locus: &Locus, row: Option<RowMaker>, rows: &mut Vec<u8>) {
+        let view = self.add(locus);
+        if let Some(row) = row {
+            row(locus, &view, rows);
+        }
+    }
+
+    fn merge(&mut self, other: Self) {
+        Sums::merge(self, other);
+    }
+
+    fn flush(&mut self) {
+        Sums::flush(self);
+    }
+}
+
 /// What came out of all records.
 #[derive(Debug)]
-pub struct Collected {
+pub struct Collected<S = Sums> {
     /// Sums over loci, flushed.
-    pub sums: Sums,
+    pub sums: S,
     /// Records by verdict.
     pub verdicts: BTreeMap<Verdict, u64>,
     /// Genotypes by what became of them.
@@ -62,9 +89,24 @@ pub fn collect(
     sources: &mut [Source],
     scheme: &Arc<Scheme>,
     threads: usize,
-    mut table: Option<LocusTable>,
+    table: Option<LocusTable>,
     progress: &(dyn Fn(u64) + Sync),
 ) -> Result<Collected> {
+    let empty = || Sums::new(Arc::clone(scheme));
+    collect_into(sources, &empty, threads, table, progress)
+}
+
+/// The same for anything that gathers; `empty` makes the identity of its merge.
+///
+/// # Errors
+/// As [`collect`].
+pub fn collect_into<S: Gather>(
+    sources: &mut [Source],
+    empty: &(dyn Fn() -> S + Sync),
+    threads: usize,
+    mut table: Option<LocusTable>,
+    progress: &(dyn Fn(u64) + Sync),
+) -> Result<Collected<S>> {
     let workers = threads.max(1);
     let row = table.as_ref().map(|t| t.row);
     let stop = AtomicBool::new(false);
@@ -77,7 +119,7 @@ pub fn collect(
             .map(|_| {
                 let decoder = |s: &Source| Decoder::new(&s.reader, s.selection.clone());
                 let decoders = sources.iter().map(decoder).collect();
-                let mut worker = Worker::new(decoders, scheme, row);
+                let mut worker = Worker::new(decoders, empty(), row);
                 let (work_in, done_out, spent_out) =
                     (work_in.clone(), done_out.clone(), spent_out.clone());
                 scope.spawn(move || {
@@ -108,7 +150,7 @@ pub fn collect(
             );
         }
         outcome?;
-        Ok(add_up(scheme, parts))
+        Ok(add_up(empty(), parts))
     })
 }
 
@@ -188,25 +230,25 @@ fn in_file_order(done: Receiver<Done>, table: &mut Option<LocusTable>) -> Result
 }
 
 /// One worker: everything it needs to turn batches into sums.
-struct Worker<'a> {
+struct Worker<'a, S> {
     decoders: Vec<Decoder>,
     row: Option<RowMaker<'a>>,
     locus: Locus,
-    part: Part,
+    part: Part<S>,
 }
 
 /// What a worker has collected.
-struct Part {
-    sums: Sums,
+struct Part<S> {
+    sums: S,
     verdicts: BTreeMap<Verdict, u64>,
     tally: CallTally,
     remarks: Vec<Remarks>,
 }
 
-impl<'a> Worker<'a> {
-    fn new(decoders: Vec<Decoder>, scheme: &Arc<Scheme>, row: Option<RowMaker<'a>>) -> Self {
+impl<'a, S: Gather> Worker<'a, S> {
+    fn new(decoders: Vec<Decoder>, sums: S, row: Option<RowMaker<'a>>) -> Self {
         let part = Part {
-            sums: Sums::new(Arc::clone(scheme)),
+            sums,
             verdicts: BTreeMap::new(),
             tally: CallTally::default(),
             remarks: Vec::new(),
@@ -233,16 +275,13 @@ impl<'a> Worker<'a> {
             let verdict = decoder.decode(&work.batch, i, &mut self.locus)?;
             *self.part.verdicts.entry(verdict).or_default() += 1;
             if verdict == Verdict::Kept {
-                let view = self.part.sums.add(&self.locus);
-                if let Some(row) = self.row {
-                    row(&self.locus, &view, &mut rows);
-                }
+                self.part.sums.take(&self.locus, self.row, &mut rows);
             }
         }
         Ok(rows)
     }
 
-    fn finish(mut self) -> Part {
+    fn finish(mut self) -> Part<S> {
         for decoder in &mut self.decoders {
             self.part.tally.merge(&decoder.take_tally());
             self.part.remarks.push(decoder.take_remarks());
@@ -252,9 +291,9 @@ impl<'a> Worker<'a> {
     }
 }
 
-fn add_up(scheme: &Arc<Scheme>, parts: Vec<Part>) -> Collected {
+fn add_up<S: Gather>(sums: S, parts: Vec<Part<S>>) -> Collected<S> {
     let mut all = Collected {
-        sums: Sums::new(Arc::clone(scheme)),
+        sums,
         verdicts: BTreeMap::new(),
         tally: CallTally::default(),
         remarks: Vec::new(),

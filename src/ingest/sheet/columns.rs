@@ -20,13 +20,14 @@ const OTHER_WORDS: [(&str, &[&str]); 3] = [
 ];
 
 const REQUIRED: [&str; 3] = ["sample", "population", "year"];
-const OPTIONAL: [&str; 6] = [
+const OPTIONAL: [&str; 7] = [
     "visit",
     "sex",
     "generation",
     "replicate_of",
     "batch",
     "date",
+    "use",
 ];
 
 /// Places of the columns in use, and the number of columns of the header.
@@ -42,6 +43,7 @@ pub(super) struct Columns {
     pub generation: Option<usize>,
     pub replicate_of: Option<usize>,
     pub batch: Option<usize>,
+    pub used: Option<usize>,
 }
 
 impl Columns {
@@ -73,6 +75,7 @@ impl Columns {
             generation: find("generation"),
             replicate_of: find("replicate_of"),
             batch: find("batch"),
+            used: find("use"),
         };
         let required = [
             ("sample", columns.sample.is_some()),

@@ -96,6 +96,18 @@ pub(super) fn sex(text: &str) -> Result<Option<Sex>, Complaint> {
     }
 }
 
+/// Whether a row takes part.
+pub(super) fn used(text: &str) -> Result<bool, Complaint> {
+    match text.to_lowercase().as_str() {
+        "yes" | "y" | "true" | "1" => Ok(true),
+        "no" | "n" | "false" | "0" => Ok(false),
+        _ => Err((
+            format!("use '{text}' is neither yes nor no"),
+            "write yes or no, or leave it blank for yes",
+        )),
+    }
+}
+
 /// A generation, counted from any origin: 0 or more.
 pub(super) fn generation(text: &str) -> Result<f64, Complaint> {
     match text.parse::<f64>() {

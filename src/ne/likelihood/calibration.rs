@@ -259,7 +259,11 @@ fn ten_thousand_loci_take_seconds() {
         let by = two_way_by_interval(&panel, BetaPrior::FLAT, 0.05, 0.95).expect("a fit");
         println!("by interval: {:.2} s", started.elapsed().as_secs_f64());
         for i in &by.intervals {
-            println!("  {:?} {:?}", i.effective_size(), i.effective_size_interval());
+            println!(
+                "  {:?} {:?}",
+                i.effective_size(),
+                i.effective_size_interval()
+            );
         }
         println!("  {:?}", size_change(&one.fit, &by.fit, one.inflation));
     }
