@@ -57,7 +57,10 @@ fn table(report: &Report, all: &[(&str, Vec<&Carrier>)]) -> Table {
             ("population", "Population"),
             ("individual", "Individual"),
             ("only_carrier", "Alleles it alone carries"),
-            ("would_vanish", "Alleles expected to vanish without its offspring"),
+            (
+                "would_vanish",
+                "Alleles expected to vanish without its offspring",
+            ),
             ("listed", "Alleles at risk listed with it as a carrier"),
         ],
     );

@@ -13,20 +13,25 @@ const ROW: f64 = 36.0;
 
 /// FST between the populations of each visit.
 pub fn between_populations(report: &Report) -> Option<Figure> {
-    let pairs: Vec<Pair> = report.comparisons.iter().filter_map(|c| pair(report, c)).collect();
+    let pairs: Vec<Pair> = report
+        .comparisons
+        .iter()
+        .filter_map(|c| pair(report, c))
+        .collect();
     let first = pairs.first()?;
     let level = first.comparison.fst_weir_cockerham.level;
     let largest = pairs
         .iter()
         .filter_map(|p| p.comparison.fst_weir_cockerham.estimate)
         .fold(0.0, f64::max);
-    let mut visits: Vec<&str> = Vec::new();
+    let mut visits: Vec<(f64, &str)> = Vec::new();
     for p in &pairs {
-        if !visits.contains(&p.visit) {
-            visits.push(p.visit);
+        if !visits.iter().any(|(_, visit)| *visit == p.visit) {
+            visits.push((p.year, p.visit));
         }
     }
-    let panels = visits.iter().map(|visit| {
+    visits.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(b.1)));
+    let panels = visits.iter().map(|(_, visit)| {
         let pairs: Vec<&Pair> = pairs.iter().filter(|p| p.visit == *visit).collect();
         matrix(report, visit, &pairs, largest)
     });
@@ -54,6 +59,7 @@ pub fn between_populations(report: &Report) -> Option<Figure> {
 struct Pair<'a> {
     comparison: &'a Comparison,
     visit: &'a str,
+    year: f64,
     from: &'a str,
     to: &'a str,
 }
@@ -66,6 +72,7 @@ fn pair<'a>(report: &'a Report, comparison: &'a Comparison) -> Option<Pair<'a>> 
         .map(|(from, to)| Pair {
             comparison,
             visit: &from.visit,
+            year: from.year,
             from: &from.population,
             to: &to.population,
         })
@@ -129,16 +136,25 @@ fn matrix(report: &Report, visit: &str, pairs: &[&Pair], largest: f64) -> Panel 
 
 fn cell(d: &mut Drawing, p: &Pair, at: (f64, f64), (low, high): (usize, usize), largest: f64) {
     let e = &p.comparison.fst_weir_cockerham;
-    let corner = |row: usize, column: usize| {
-        (at.0 + column as f64 * CELL.0, at.1 + row as f64 * CELL.1)
-    };
+    let corner =
+        |row: usize, column: usize| (at.0 + column as f64 * CELL.0, at.1 + row as f64 * CELL.1);
     let (x, y) = corner(high, low);
     let middle = x + CELL.0 / 2.0;
-    d.begin(&format!("{} and {}: {}", p.from, p.to, numbers::estimate(e, 4)));
+    d.begin(&format!(
+        "{} and {}: {}",
+        p.from,
+        p.to,
+        numbers::estimate(e, 4)
+    ));
     match e.estimate {
         Some(fst) => {
             d.rectangle(&format!("step-{}", step(fst, largest)), (x, y), CELL);
-            d.text("", (middle, y + 21.0), Anchor::Middle, &numbers::decimals(fst, 3));
+            d.text(
+                "",
+                (middle, y + 21.0),
+                Anchor::Middle,
+                &numbers::decimals(fst, 3),
+            );
         }
         None => d.text("small soft", (middle, y + 21.0), Anchor::Middle, "none"),
     }
@@ -147,7 +163,12 @@ fn cell(d: &mut Drawing, p: &Pair, at: (f64, f64), (low, high): (usize, usize), 
     if let Some(limits) = e.interval {
         for (i, limit) in limits.into_iter().enumerate() {
             let y = y + 14.0 + 14.0 * i as f64;
-            d.text("tick", (middle, y), Anchor::Middle, &numbers::decimals(limit, 3));
+            d.text(
+                "tick",
+                (middle, y),
+                Anchor::Middle,
+                &numbers::decimals(limit, 3),
+            );
         }
     }
     d.end();
@@ -182,7 +203,9 @@ pub fn in_time(subjects: &[Subject]) -> Option<Figure> {
     let level = all().next()?.fst_weir_cockerham.level;
     let values = all().flat_map(|c| {
         let e = &c.fst_weir_cockerham;
-        e.estimate.into_iter().chain(e.interval.into_iter().flatten())
+        e.estimate
+            .into_iter()
+            .chain(e.interval.into_iter().flatten())
     });
     let limits = extent(values.chain([0.0]), 0.08, [0.0, 0.1]);
     let x = Scale::linear(limits, [LEFT, RIGHT]);
@@ -212,7 +235,12 @@ const RIGHT: f64 = PANEL_WIDTH - 12.0;
 
 fn rows(subject: &Subject, x: &Scale) -> Panel {
     let mut d = Drawing::new();
-    d.name("name", (8.0, 17.0), Anchor::Start, (subject.population, 304.0));
+    d.name(
+        "name",
+        (8.0, 17.0),
+        Anchor::Start,
+        (subject.population, 304.0),
+    );
     let top = 28.0;
     let bottom = top + ROW * subject.in_time.len() as f64 + 2.0;
     d.line("limit", (x.at(0.0), top), (x.at(0.0), bottom));
@@ -236,7 +264,12 @@ fn rows(subject: &Subject, x: &Scale) -> Panel {
         let label = numbers::decimals(tick, places);
         d.text("tick", (x.at(tick), bottom + 16.0), Anchor::Middle, &label);
     }
-    d.text("small", (160.0, bottom + 33.0), Anchor::Middle, "FST, no unit");
+    d.text(
+        "small",
+        (160.0, bottom + 33.0),
+        Anchor::Middle,
+        "FST, no unit",
+    );
     Panel {
         title: subject.population.to_owned(),
         description: words.join("; "),

@@ -81,7 +81,12 @@ fn limits_of(e: &Estimate) -> impl Iterator<Item = f64> {
 
 fn panel(subject: &Subject, limits: &Limits, richness: &str) -> Panel {
     let mut d = Drawing::new();
-    d.name("name", (8.0, 17.0), Anchor::Start, (subject.population, 304.0));
+    d.name(
+        "name",
+        (8.0, 17.0),
+        Anchor::Start,
+        (subject.population, 304.0),
+    );
     legend(&mut d, subject);
     let years = subject.strata.iter().map(|s| s.year);
     let [first, last] = extent(years, 0.08, [0.0, 1.0]);
@@ -91,23 +96,46 @@ fn panel(subject: &Subject, limits: &Limits, richness: &str) -> Panel {
     };
     let x = Scale::linear(years, [LEFT, RIGHT]);
     let y = Scale::linear(limits.heterozygosity, UPPER);
-    d.text("small", (8.0, 82.0), Anchor::Start, "Heterozygosity, 0 to 1");
+    d.text(
+        "small",
+        (8.0, 82.0),
+        Anchor::Start,
+        "Heterozygosity, 0 to 1",
+    );
     frame(&mut d, &y, UPPER);
     if let Some(drift) = subject.drift() {
         expectation(&mut d, subject, &drift, &x, &y);
     }
-    series(&mut d, subject, "plum hollow", Shape::Diamond, ASIDE, (&x, &y), |s| {
-        ("observed heterozygosity", &s.observed_heterozygosity)
-    });
-    series(&mut d, subject, "deep solid", Shape::Circle, -ASIDE, (&x, &y), |s| {
-        ("expected heterozygosity", &s.expected_heterozygosity)
-    });
+    series(
+        &mut d,
+        subject,
+        "plum hollow",
+        Shape::Diamond,
+        ASIDE,
+        (&x, &y),
+        |s| ("observed heterozygosity", &s.observed_heterozygosity),
+    );
+    series(
+        &mut d,
+        subject,
+        "deep solid",
+        Shape::Circle,
+        -ASIDE,
+        (&x, &y),
+        |s| ("expected heterozygosity", &s.expected_heterozygosity),
+    );
     let y = Scale::linear(limits.richness, LOWER);
     d.text("small", (8.0, LOWER[1] - 10.0), Anchor::Start, richness);
     frame(&mut d, &y, LOWER);
-    series(&mut d, subject, "ochre solid", Shape::Triangle, 0.0, (&x, &y), |s| {
-        ("allelic richness", &s.allelic_richness)
-    });
+    series(
+        &mut d,
+        subject,
+        "ochre solid",
+        Shape::Triangle,
+        0.0,
+        (&x, &y),
+        |s| ("allelic richness", &s.allelic_richness),
+    );
     year_ticks(&mut d, subject, &x);
     Panel {
         title: subject.population.to_owned(),
@@ -134,8 +162,9 @@ fn legend(d: &mut Drawing, subject: &Subject) {
 }
 
 fn frame(d: &mut Drawing, y: &Scale, pixels: [f64; 2]) {
-    let places = y.places(4);
-    for tick in y.ticks(4) {
+    let most = ((pixels[0] - pixels[1]) / 18.0) as usize;
+    let places = y.places(most);
+    for tick in y.ticks(most) {
         let at = y.at(tick);
         d.line("grid", (LEFT, at), (RIGHT, at));
         let label = numbers::decimals(tick, places);
@@ -159,7 +188,12 @@ fn year_ticks(d: &mut Drawing, subject: &Subject, x: &Scale) {
         }
     }
     let middle = (LEFT + RIGHT) / 2.0;
-    d.text("small", (middle, bottom + 33.0), Anchor::Middle, "Year of sampling");
+    d.text(
+        "small",
+        (middle, bottom + 33.0),
+        Anchor::Middle,
+        "Year of sampling",
+    );
 }
 
 /// The line and band of drift from the baseline to the latest visit.
@@ -206,9 +240,17 @@ fn series<'a>(
         let (what, e) = pick(stratum);
         let Some(value) = e.estimate else { continue };
         let at = x.at(stratum.year) + aside;
-        d.begin(&format!("{}, {what}: {}", stratum.visit, numbers::estimate(e, 3)));
+        d.begin(&format!(
+            "{}, {what}: {}",
+            stratum.visit,
+            numbers::estimate(e, 3)
+        ));
         if let Some([low, high]) = e.interval {
-            d.line(&format!("{colour} whisker"), (at, y.at(low)), (at, y.at(high)));
+            d.line(
+                &format!("{colour} whisker"),
+                (at, y.at(low)),
+                (at, y.at(high)),
+            );
         }
         d.mark(class, shape, (at, y.at(value)));
         d.end();
@@ -257,7 +299,10 @@ fn table(report: &Report, subjects: &[Subject], richness: &str) -> Table {
             ("inbreeding", "Inbreeding coefficient FIS"),
             ("inbreeding_low", "lower limit"),
             ("inbreeding_high", "upper limit"),
-            ("drift_expectation", "Expected heterozygosity by drift alone"),
+            (
+                "drift_expectation",
+                "Expected heterozygosity by drift alone",
+            ),
             ("drift_low", "lower limit"),
             ("drift_high", "upper limit"),
             ("expected_per_site", "Expected heterozygosity per record"),

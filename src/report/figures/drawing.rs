@@ -202,11 +202,7 @@ impl Drawing {
 
 /// A length with at most two decimals; whatever is not a sane length is held at the edge.
 pub fn length(x: f64) -> String {
-    let held = if x.is_nan() {
-        0.0
-    } else {
-        x.clamp(-1e5, 1e5)
-    };
+    let held = if x.is_nan() { 0.0 } else { x.clamp(-1e5, 1e5) };
     let text = format!("{held:.2}");
     let text = text.trim_end_matches('0').trim_end_matches('.');
     if text == "-0" { "0" } else { text }.to_owned()
@@ -319,9 +315,9 @@ mod tests {
         let long = "Aldermere & ".repeat(40);
         let mut d = Drawing::new();
         d.name("name", (0.0, 0.0), Anchor::Start, (&long, 200.0));
-        assert!(d.into_body().contains(&format!(
-            "<title>{}</title>",
-            long.replace('&', "&amp;")
-        )));
+        assert!(
+            d.into_body()
+                .contains(&format!("<title>{}</title>", long.replace('&', "&amp;")))
+        );
     }
 }

@@ -9,7 +9,6 @@ use crate::report::wire::{AlleleFates, LossCall, Report};
 
 const LEFT: f64 = 8.0;
 const RIGHT: f64 = PANEL_WIDTH - 8.0;
-const HEIGHT: f64 = 196.0;
 const BAR: f64 = 22.0;
 
 /// Kept alleles, and those not seen again by what probably happened to them.
@@ -75,7 +74,10 @@ fn fates<'a>(report: &'a Report, subject: &Subject<'a>) -> Option<Fates<'a>> {
     let comparison = subject.since_baseline?;
     let all = comparison.alleles.as_ref()?;
     let gone = all.not_seen_again.min(all.baseline);
-    let listed = report.losses.iter().filter(|l| l.population == subject.population);
+    let listed = report
+        .losses
+        .iter()
+        .filter(|l| l.population == subject.population);
     let mut of_call = [0u64; 3];
     let mut complete = 0u64;
     for loss in listed {
@@ -112,7 +114,12 @@ fn fates<'a>(report: &'a Report, subject: &Subject<'a>) -> Option<Fates<'a>> {
 
 fn panel(fates: &Fates) -> Panel {
     let mut d = Drawing::new();
-    d.name("name", (8.0, 17.0), Anchor::Start, (fates.population, 304.0));
+    d.name(
+        "name",
+        (8.0, 17.0),
+        Anchor::Start,
+        (fates.population, 304.0),
+    );
     let baseline = fates.all.baseline;
     let gone = baseline - fates.kept;
     let words = format!(
@@ -139,11 +146,12 @@ fn panel(fates: &Fates) -> Panel {
         .iter()
         .map(|p| format!("{} {}", numbers::count(p.alleles), p.fate.name()));
     let parts: Vec<_> = parts.collect();
+    let shown = fates.parts.iter().filter(|p| p.alleles > 0).count();
     Panel {
         title: fates.population.to_owned(),
         description: format!("{words}: {}", parts.join(", ")),
         width: PANEL_WIDTH,
-        height: HEIGHT,
+        height: 140.0 + 17.0 * shown as f64,
         body: d.into_body(),
     }
 }
@@ -162,10 +170,18 @@ fn expected(d: &mut Drawing, fates: &Fates, x: &Scale) {
         for at in [start, end] {
             d.line("ink whisker", (at, y - 3.0), (at, y + 3.0));
         }
-        words = format!("{words} ({} to {})", numbers::size(low), numbers::size(high));
+        words = format!(
+            "{words} ({} to {})",
+            numbers::size(low),
+            numbers::size(high)
+        );
     }
     d.begin(&words);
-    d.mark("ink solid", super::drawing::Shape::Diamond, (x.at(baseline - expected), y));
+    d.mark(
+        "ink solid",
+        super::drawing::Shape::Diamond,
+        (x.at(baseline - expected), y),
+    );
     d.end();
 }
 
@@ -218,7 +234,10 @@ fn table(fates: &[Fates]) -> Table {
             ("expected_not_seen_again", "Expected out of sight"),
             ("expected_low", "lower limit"),
             ("expected_high", "upper limit"),
-            ("expected_share_wrong", "Expected share of wrong calls of loss"),
+            (
+                "expected_share_wrong",
+                "Expected share of wrong calls of loss",
+            ),
             ("absent_because", "Why a value is absent"),
         ],
     );

@@ -54,9 +54,19 @@ fn excess_share(s: &Stratum) -> f64 {
 
 fn panel(subject: &Subject, most: f64) -> Panel {
     let mut d = Drawing::new();
-    d.name("name", (8.0, 17.0), Anchor::Start, (subject.population, 304.0));
+    d.name(
+        "name",
+        (8.0, 17.0),
+        Anchor::Start,
+        (subject.population, 304.0),
+    );
     d.text("small", (RATE[0], 36.0), Anchor::Start, "Call rate, %");
-    d.text("small", (REJECTED[0], 36.0), Anchor::Start, "Loci that depart, %");
+    d.text(
+        "small",
+        (REJECTED[0], 36.0),
+        Anchor::Start,
+        "Loci that depart, %",
+    );
     let rate = Scale::linear([0.0, 1.0], RATE);
     let rejected = Scale::linear([0.0, most], REJECTED);
     let mut words = Vec::new();
@@ -90,8 +100,17 @@ fn row(d: &mut Drawing, s: &Stratum, (rate, rejected): (&Scale, &Scale), top: f6
         s.visit,
         numbers::counted(s.individuals, "individual", "individuals")
     );
-    d.name("small", (RATE[0], top + 14.0), Anchor::Start, (&visit, 150.0));
-    let counts = format!("{} of {}", numbers::count(hw.rejected), numbers::count(hw.tested));
+    d.name(
+        "small",
+        (RATE[0], top + 14.0),
+        Anchor::Start,
+        (&visit, 150.0),
+    );
+    let counts = format!(
+        "{} of {}",
+        numbers::count(hw.rejected),
+        numbers::count(hw.tested)
+    );
     d.text("small", (REJECTED[0], top + 14.0), Anchor::Start, &counts);
     let y = top + 26.0;
     let words = format!(

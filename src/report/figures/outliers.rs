@@ -27,7 +27,10 @@ pub fn figure(report: &Report) -> Option<Figure> {
             ("to", "To"),
             ("contig", "Contig"),
             ("position", "Position"),
-            ("frequency_from", "Frequency of the first alternate allele before"),
+            (
+                "frequency_from",
+                "Frequency of the first alternate allele before",
+            ),
             ("frequency_to", "Frequency after"),
             ("p", "p"),
             ("q", "q (false discovery rate)"),
@@ -79,12 +82,17 @@ fn panel(c: &Comparison, outliers: &Outliers) -> Panel {
     );
     d.text("small", (8.0, 34.0), Anchor::Start, &found);
     let last = extent(outliers.list.iter().map(|l| millions(l)), 0.0, [0.0, 1.0])[1];
-    let x = Scale::linear([0.0, last.max(1e-6)], [NAME_WIDTH + 14.0, PANEL_WIDTH - 14.0]);
+    let x = Scale::linear(
+        [0.0, last.max(1e-6)],
+        [NAME_WIDTH + 14.0, PANEL_WIDTH - 14.0],
+    );
     for (i, contig) in shown.iter().enumerate() {
         let y = 54.0 + ROW * i as f64;
         d.name("small", (8.0, y + 4.0), Anchor::Start, (contig, NAME_WIDTH));
         let on_contig = || outliers.list.iter().filter(|l| l.contig == *contig);
-        let end = on_contig().map(|l| x.at(millions(l))).fold(x.at(0.0), f64::max);
+        let end = on_contig()
+            .map(|l| x.at(millions(l)))
+            .fold(x.at(0.0), f64::max);
         d.line("grid", (x.at(0.0), y), (end, y));
         for locus in on_contig() {
             mark(&mut d, locus, x.at(millions(locus)), y);
@@ -98,16 +106,26 @@ fn panel(c: &Comparison, outliers: &Outliers) -> Panel {
         let label = numbers::decimals(tick, places);
         d.text("tick", (x.at(tick), bottom + 16.0), Anchor::Middle, &label);
     }
-    d.text("small", (200.0, bottom + 33.0), Anchor::Middle, "Position, Mb");
+    d.text(
+        "small",
+        (200.0, bottom + 33.0),
+        Anchor::Middle,
+        "Position, Mb",
+    );
     let mut height = bottom + 42.0;
     if contigs.len() > shown.len() {
         let more = (contigs.len() - shown.len()) as u64;
-        let words = format!("{} more in the table", numbers::counted(more, "contig", "contigs"));
+        let words = format!(
+            "{} more in the table",
+            numbers::counted(more, "contig", "contigs")
+        );
         d.text("small soft", (8.0, bottom + 51.0), Anchor::Start, &words);
         height += 17.0;
     }
     let places = outliers.list.iter().take(20);
-    let places: Vec<_> = places.map(|l| format!("{}:{}", l.contig, l.position)).collect();
+    let places: Vec<_> = places
+        .map(|l| format!("{}:{}", l.contig, l.position))
+        .collect();
     Panel {
         title,
         description: format!("{found}. The least likely: {}", places.join(", ")),

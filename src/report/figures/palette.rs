@@ -188,10 +188,7 @@ mod tests {
                 for (i, a) in series.iter().enumerate() {
                     for b in &series[..i] {
                         let (a3, b3) = (seen(a, vision), seen(b, vision));
-                        let distance = (0..3)
-                            .map(|k| (a3[k] - b3[k]).powi(2))
-                            .sum::<f64>()
-                            .sqrt();
+                        let distance = (0..3).map(|k| (a3[k] - b3[k]).powi(2)).sum::<f64>().sqrt();
                         // 0.02 is about the least difference that is seen side by side.
                         assert!(distance >= 0.2, "{a} {b} {distance}");
                     }

@@ -44,9 +44,7 @@ impl Scale {
         let [low, high] = self.values;
         let share = match self.spread {
             Spread::Linear => (value - low) / (high - low),
-            Spread::Logarithmic => {
-                (value.max(f64::MIN_POSITIVE) / low).ln() / (high / low).ln()
-            }
+            Spread::Logarithmic => (value.max(f64::MIN_POSITIVE) / low).ln() / (high / low).ln(),
         };
         let share = if share.is_finite() {
             share.clamp(0.0, 1.0)
@@ -99,7 +97,9 @@ fn round_step(step: f64) -> f64 {
     }
     let power = 10f64.powf(step.log10().floor());
     let factors = [1.0, 2.0, 5.0, 10.0];
-    let factor = factors.into_iter().find(|f| f * power >= step * (1.0 - 1e-9));
+    let factor = factors
+        .into_iter()
+        .find(|f| f * power >= step * (1.0 - 1e-9));
     factor.unwrap_or(10.0) * power
 }
 
@@ -143,14 +143,23 @@ mod tests {
     #[test]
     fn a_scale_maps_its_ends_and_middle() {
         let linear = Scale::linear([10.0, 20.0], [0.0, 100.0]);
-        assert_eq!([10.0, 15.0, 20.0, 99.0].map(|x| linear.at(x)), [0.0, 50.0, 100.0, 100.0]);
+        assert_eq!(
+            [10.0, 15.0, 20.0, 99.0].map(|x| linear.at(x)),
+            [0.0, 50.0, 100.0, 100.0]
+        );
         let log = Scale::logarithmic([1.0, 100.0], [0.0, 100.0]);
         assert!((log.at(10.0) - 50.0).abs() < 1e-9);
     }
 
     #[test]
     fn odd_limits_still_make_a_scale() {
-        for values in [[0.0, 0.0], [3.0, 1.0], [1e300, 1e300], [-1e-300, 0.0], [f64::NAN, 1.0]] {
+        for values in [
+            [0.0, 0.0],
+            [3.0, 1.0],
+            [1e300, 1e300],
+            [-1e-300, 0.0],
+            [f64::NAN, 1.0],
+        ] {
             for scale in [
                 Scale::linear(values, [0.0, 10.0]),
                 Scale::logarithmic(values, [0.0, 10.0]),

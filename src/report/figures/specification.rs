@@ -13,7 +13,11 @@ const SCHEMA: &str = "https://vega.github.io/schema/vega-lite/v6.json";
 
 /// A chart a population: `layers` over the rows of the table.
 fn by_population(table: &Table, layers: Value) -> Value {
-    facet(table, json!({"field": "population", "type": "nominal", "title": null}), layers)
+    facet(
+        table,
+        json!({"field": "population", "type": "nominal", "title": null}),
+        layers,
+    )
 }
 
 fn facet(table: &Table, by: Value, layers: Value) -> Value {
@@ -47,7 +51,12 @@ fn over_years(field: &str, title: &str, colour: &str, shape: &str) -> Vec<Value>
 pub fn diversity(table: &Table) -> Value {
     let heterozygosity = "Heterozygosity, 0 to 1";
     let mut upper = over_years("expected", heterozygosity, LIGHT.deep, "circle");
-    upper.extend(over_years("observed", heterozygosity, LIGHT.plum, "diamond"));
+    upper.extend(over_years(
+        "observed",
+        heterozygosity,
+        LIGHT.plum,
+        "diamond",
+    ));
     let x = upper[0]["encoding"]["x"].clone();
     upper.push(json!({
         "mark": {"type": "area", "color": LIGHT.deep, "opacity": 0.22},
@@ -57,7 +66,12 @@ pub fn diversity(table: &Table) -> Value {
         "mark": {"type": "line", "color": LIGHT.deep, "strokeDash": [4, 3]},
         "encoding": {"x": x, "y": quantity("drift_expectation", heterozygosity)}
     }));
-    let lower = over_years("richness", "Allelic richness, alleles", LIGHT.ochre, "triangle-up");
+    let lower = over_years(
+        "richness",
+        "Allelic richness, alleles",
+        LIGHT.ochre,
+        "triangle-up",
+    );
     let mut whole = by_population(table, json!([]));
     whole["spec"] = json!({"vconcat": [
         {"width": 260, "height": 140, "layer": upper},

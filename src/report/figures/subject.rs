@@ -39,7 +39,10 @@ pub fn subjects(report: &Report) -> Vec<Subject<'_>> {
             names.push(&stratum.population);
         }
     }
-    names.into_iter().map(|name| subject(report, name)).collect()
+    names
+        .into_iter()
+        .map(|name| subject(report, name))
+        .collect()
 }
 
 fn subject<'a>(report: &'a Report, population: &'a str) -> Subject<'a> {
@@ -130,7 +133,8 @@ impl<'a> Subject<'a> {
     pub fn drift(&self) -> Option<Drift<'a>> {
         let size = self.size?;
         let comparison = self.since_baseline?;
-        let spans = size.from.as_deref() == Some(comparison.from.as_str()) && size.to == comparison.to;
+        let spans =
+            size.from.as_deref() == Some(comparison.from.as_str()) && size.to == comparison.to;
         let generations = comparison.generations.filter(|&t| t > 0.0)?;
         let says_something = size.estimate.is_some() || size.unbounded;
         (spans && says_something).then_some(Drift { size, generations })
@@ -164,19 +168,4 @@ impl Drift<'_> {
 fn kept(size: Option<f64>, t: f64) -> f64 {
     let rate = size.map_or(0.0, |n| 0.5 / n);
     (1.0 - rate.clamp(0.0, 1.0)).powf(t)
-}
-
-/// The method in words, with authors and year.
-pub fn method_name(method: &str) -> &str {
-    match method {
-        "temporal_fs" => "Change of frequencies (Jorde & Ryman 2007)",
-        "temporal_fc" => "Change of frequencies (Nei & Tajima 1981)",
-        "temporal_fk" => "Change of frequencies (Pollak 1983)",
-        "temporal_likelihood" => "Likelihood of all visits",
-        "temporal_likelihood_by_interval" => "Likelihood, each interval",
-        "linkage" => "Linkage",
-        "heterozygote_excess" => "Heterozygote excess",
-        "demographic" => "Counts of breeders",
-        other => other,
-    }
 }

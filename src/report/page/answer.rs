@@ -1,10 +1,10 @@
 //! The answer for one population in two sentences, made from the numbers and worded no more surely
 //! than they allow.
 
+use crate::report::figures::isolated;
 use crate::report::figures::numbers::{
     count, counted, effective_size, estimate, percent_with_interval, reason, size, size_range, year,
 };
-use crate::report::figures::isolated;
 use crate::report::figures::subject::Subject;
 use crate::report::wire::{AlleleFates, Comparison, EffectiveSize, Report, Stratum};
 
@@ -50,9 +50,8 @@ fn change(subject: &Subject, comparison: &Comparison) -> (String, Fit) {
     let kept = &comparison.change.expected_heterozygosity_kept;
     let Some(value) = kept.estimate else {
         let why = reason(kept.absent_because.as_deref());
-        let words = format!(
-            "nothing can be said of a change of expected heterozygosity in {who}: {why}"
-        );
+        let words =
+            format!("nothing can be said of a change of expected heterozygosity in {who}: {why}");
         return (words, Fit::Open);
     };
     let loss = 1.0 - value;
@@ -112,7 +111,9 @@ fn size_clause(e: &EffectiveSize, fit: Fit) -> String {
                 _ => String::new(),
             };
             let what = match e.method.as_str() {
-                _ if is_temporal => "allele frequencies changed no more than sampling alone makes them",
+                _ if is_temporal => {
+                    "allele frequencies changed no more than sampling alone makes them"
+                }
                 "linkage" => "loci are no more linked than sampling alone makes them",
                 _ => "the sample shows nothing that a large population would not",
             };
@@ -215,7 +216,9 @@ fn basis(report: &Report, subject: &Subject) -> String {
     };
     words += match subject.summary.and_then(|s| s.agree) {
         Some(true) => "; the methods for effective size agree",
-        Some(false) => "; the methods for effective size do not agree, so read their section before using any",
+        Some(false) => {
+            "; the methods for effective size do not agree, so read their section before using any"
+        }
         None => "",
     };
     let warnings = warnings_of(report, subject.population);

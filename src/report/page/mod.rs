@@ -70,7 +70,9 @@ impl Page {
         let mut environment = Environment::new();
         environment.set_auto_escape_callback(|_| AutoEscape::Html);
         environment.add_filter("name", name);
-        environment.add_template("page", TEMPLATE).map_err(refused)?;
+        environment
+            .add_template("page", TEMPLATE)
+            .map_err(refused)?;
         let context = minijinja::context! {
             page => Value::from(Serde(&self.view)),
             policy => policy(&style),
@@ -135,8 +137,7 @@ fn policy(style: &str) -> String {
 
 /// Base64 with padding (RFC 4648, section 4).
 fn base64(bytes: &[u8]) -> String {
-    const ALPHABET: &[u8; 64] =
-        b"ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789+/";
+    const ALPHABET: &[u8; 64] = b"ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789+/";
     let mut out = String::with_capacity(bytes.len().div_ceil(3) * 4);
     for chunk in bytes.chunks(3) {
         let mut three = [0u8; 3];

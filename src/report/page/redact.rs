@@ -41,7 +41,10 @@ pub fn without_samples(mut report: Report) -> Report {
             warning.place = LEFT_OUT.to_owned();
         }
         // A name without quotes, where it stands as a word of its own.
-        for name in names.iter().filter(|n| n.len() > 2 && !places.contains(n.as_str())) {
+        for name in names
+            .iter()
+            .filter(|n| n.len() > 2 && !places.contains(n.as_str()))
+        {
             warning.text = without_word(&warning.text, name);
         }
     }

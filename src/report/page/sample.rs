@@ -165,7 +165,11 @@ pub fn two_populations() -> Report {
             kept: 1500,
             polymorphic: 1400,
             set_aside: [("one_allele_only".to_owned(), 12)].into(),
-            genotypes: [("diploid".to_owned(), 155_981), ("missing".to_owned(), 3019)].into(),
+            genotypes: [
+                ("diploid".to_owned(), 155_981),
+                ("missing".to_owned(), 3019),
+            ]
+            .into(),
             panel: 1400,
         },
         strata,
@@ -282,9 +286,7 @@ fn at_risk() -> Vec<AtRisk> {
 fn provenance() -> Provenance {
     let words = |pairs: &[(&str, &str)]| {
         let owned = pairs.iter();
-        owned
-            .map(|&(a, b)| (a.to_owned(), b.to_owned()))
-            .collect()
+        owned.map(|&(a, b)| (a.to_owned(), b.to_owned())).collect()
     };
     Provenance {
         program: "genewane".to_owned(),

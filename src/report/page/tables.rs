@@ -200,10 +200,19 @@ pub fn samples(samples: &Samples) -> Table {
         ("in the genotype calls", samples.in_calls),
         ("in the sample sheet", samples.in_sheet),
         ("used", samples.used),
-        ("in the calls but not in the sheet", samples.not_listed.len() as u64),
-        ("in the sheet but not in the calls", samples.absent.len() as u64),
+        (
+            "in the calls but not in the sheet",
+            samples.not_listed.len() as u64,
+        ),
+        (
+            "in the sheet but not in the calls",
+            samples.absent.len() as u64,
+        ),
         ("set aside as replicates", samples.replicates.len() as u64),
-        ("used, without a single called genotype", samples.without_calls.len() as u64),
+        (
+            "used, without a single called genotype",
+            samples.without_calls.len() as u64,
+        ),
     ];
     table
         .rows
@@ -298,7 +307,13 @@ pub fn interval_level(report: &Report) -> Option<String> {
 
 /// Years as plain text, for the head of the page.
 pub fn period(report: &Report) -> Option<String> {
-    let years = || report.strata.iter().map(|s| s.year).filter(|y| y.is_finite());
+    let years = || {
+        report
+            .strata
+            .iter()
+            .map(|s| s.year)
+            .filter(|y| y.is_finite())
+    };
     let first = years().min_by(f64::total_cmp)?.floor();
     let last = years().max_by(f64::total_cmp)?.floor();
     Some(match first == last {

@@ -14,7 +14,15 @@ fn renamed(prefix: &str) -> Report {
     let quoted = serde_json::to_string(prefix).unwrap();
     let inner = &quoted[1..quoted.len() - 1];
     let mut text = text;
-    for name in ["Aldermere", "Birkholm", "elk ", "chr1", "chr2", "chr3", "X1"] {
+    for name in [
+        "Aldermere",
+        "Birkholm",
+        "elk ",
+        "chr1",
+        "chr2",
+        "chr3",
+        "X1",
+    ] {
         text = text.replace(&format!("\"{name}"), &format!("\"{inner}{name}"));
     }
     serde_json::from_str(&text).unwrap()
@@ -109,7 +117,10 @@ fn nothing_in_a_page_asks_for_anything_outside() {
             assert!(!outside.contains(attribute), "{tag}");
         }
         if let Some((_, link)) = tag.split_once("href=") {
-            assert!(link.starts_with("\"#") || link.starts_with("\"data:"), "{tag}");
+            assert!(
+                link.starts_with("\"#") || link.starts_with("\"data:"),
+                "{tag}"
+            );
         }
     }
     assert!(html.contains("default-src &#x27;none&#x27;") || html.contains("default-src 'none'"));
@@ -162,7 +173,10 @@ fn names_are_words_whatever_they_hold() {
         for figure in Page::of(report, false).figures {
             let svg = figure.file();
             is_balanced(&svg);
-            assert!(!svg.contains("<script") && !svg.contains("<img"), "{prefix}");
+            assert!(
+                !svg.contains("<script") && !svg.contains("<img"),
+                "{prefix}"
+            );
             assert!(!svg.contains(is_forbidden), "{prefix}");
         }
     }
@@ -299,7 +313,9 @@ fn without_samples_no_name_is_on_the_page_or_in_a_figure() {
     let html = page.html().unwrap();
     assert!(html.contains("Sample names were left out of this page."));
     let figures = page.figures.iter();
-    let all = figures.fold(html, |all, f| all + &f.file() + &f.specification.to_string());
+    let all = figures.fold(html, |all, f| {
+        all + &f.file() + &f.specification.to_string()
+    });
     for name in ["elk", "X1", "X2", "A7b"] {
         assert!(!all.contains(name), "{name}");
     }
@@ -314,14 +330,21 @@ fn figures_are_written_as_drawings_and_specifications() {
     let out = folder.path().join("page.html");
     let figures = folder.path().join("figures");
     write_page(&report, Some(&out), false, Some(&figures)).unwrap();
-    assert!(std::fs::read_to_string(out).unwrap().starts_with("<!doctype html>"));
+    assert!(
+        std::fs::read_to_string(out)
+            .unwrap()
+            .starts_with("<!doctype html>")
+    );
     let svg = std::fs::read_to_string(figures.join("diversity.svg")).unwrap();
     is_balanced(&svg);
     assert!(svg.contains("prefers-color-scheme"));
     let text = std::fs::read_to_string(figures.join("allele-fates.vl.json")).unwrap();
     let specification: serde_json::Value = serde_json::from_str(&text).unwrap();
     let values = specification["data"]["values"].as_array().unwrap();
-    let lost = values.iter().find(|v| v["fate"] == "probably lost").unwrap();
+    let lost = values
+        .iter()
+        .find(|v| v["fate"] == "probably lost")
+        .unwrap();
     assert_eq!(lost["alleles"], 14);
     assert_eq!(std::fs::read_dir(figures).unwrap().count(), 16);
 }

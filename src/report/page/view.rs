@@ -6,8 +6,9 @@ use serde::Serialize;
 
 use super::answer::sentences;
 use super::tables::{self, TableView};
-use crate::report::figures::numbers::{chance, counted};
+use crate::report::figures::numbers::{chance, count, counted};
 use crate::report::figures::subject::Subject;
+use crate::report::figures::table::Table;
 use crate::report::figures::{Figure, PANEL_WIDTH};
 use crate::report::wire::{Report, Warning};
 
@@ -69,7 +70,14 @@ struct Section {
     words: Vec<String>,
     statements: Vec<PlacedText>,
     figures: Vec<FigureView>,
-    tables: Vec<TableView>,
+    tables: Vec<Listing>,
+}
+
+/// A long table that opens with a touch.
+#[derive(Debug, Serialize)]
+struct Listing {
+    title: String,
+    table: TableView,
 }
 
 #[derive(Debug, Serialize)]
@@ -152,17 +160,22 @@ fn title(subjects: &[Subject]) -> String {
 fn facts(report: &Report, subjects: &[Subject]) -> Vec<String> {
     let mut facts = vec![
         counted(subjects.len() as u64, "population", "populations"),
-        counted(report.strata.len() as u64, "sample", "samples")
-            + " (population at a visit)",
+        counted(report.strata.len() as u64, "sample", "samples") + " (population at a visit)",
     ];
     facts.extend(tables::period(report));
     facts.push(counted(report.samples.used, "individual", "individuals"));
-    facts.push(counted(report.loci.polymorphic, "locus that varies", "loci that vary"));
+    facts.push(counted(
+        report.loci.polymorphic,
+        "locus that varies",
+        "loci that vary",
+    ));
     facts
 }
 
 fn answer(report: &Report, subject: &Subject) -> Answer {
-    let notes = subject.size.map(|e| e.notes.clone()).unwrap_or_default();
+    let mut notes = subject.size.map(|e| e.notes.clone()).unwrap_or_default();
+    // The sentence says it already.
+    notes.retain(|note| !note.ends_with("no upper bound"));
     Answer {
         population: subject.population.to_owned(),
         sentences: sentences(report, subject),
@@ -211,31 +224,52 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
     let unless = |name: &str, words: String| {
         if has(name) { Vec::new() } else { vec![words] }
     };
-    let mut alleles = section("alleles", "Alleles kept, missed and lost", &["allele-fates"], {
-        unless(
+    let mut alleles = section(
+        "alleles",
+        "Alleles kept, missed and lost",
+        &["allele-fates"],
+        {
+            unless(
             "allele-fates",
             "No population has both a baseline and a later visit, so no allele can be followed."
                 .to_owned(),
         )
-    });
+        },
+    );
     if !report.losses.is_empty() {
-        alleles.tables.push(TableView::of(&tables::losses(&report.losses)));
+        alleles.tables.push(listing(
+            "Alleles not seen again, one by one",
+            &tables::losses(&report.losses),
+        ));
     }
-    let mut at_risk = section("at-risk", "Alleles at risk and who carries them", &["carriers"], {
-        unless(
-            "carriers",
-            "The report lists no allele at risk with carriers.".to_owned(),
-        )
-    });
+    let mut at_risk = section(
+        "at-risk",
+        "Alleles at risk and who carries them",
+        &["carriers"],
+        {
+            unless(
+                "carriers",
+                "The report lists no allele at risk with carriers.".to_owned(),
+            )
+        },
+    );
     if !report.at_risk.is_empty() {
-        at_risk.tables.push(TableView::of(&tables::at_risk(&report.at_risk)));
+        at_risk.tables.push(listing(
+            "Alleles in few copies, one by one, with their carriers",
+            &tables::at_risk(&report.at_risk),
+        ));
     }
-    let mut size = section("effective-size", "Effective population size", &["effective-size"], {
-        unless(
-            "effective-size",
-            "The report holds no estimate of effective size.".to_owned(),
-        )
-    });
+    let mut size = section(
+        "effective-size",
+        "Effective population size",
+        &["effective-size"],
+        {
+            unless(
+                "effective-size",
+                "The report holds no estimate of effective size.".to_owned(),
+            )
+        },
+    );
     size.statements = statements(subjects);
     vec![
         section("diversity", "Diversity", &["diversity"], {
@@ -253,7 +287,12 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
                 false => vec!["There is only one sample, so nothing to compare.".to_owned()],
             },
         ),
-        section("outliers", "Loci out of line", &["outliers"], outlier_words(report)),
+        section(
+            "outliers",
+            "Loci out of line",
+            &["outliers"],
+            outlier_words(report),
+        ),
         section("genotyping", "Quality of the genotypes", &["genotyping"], {
             unless("genotyping", "The report holds no sample.".to_owned())
         }),
@@ -264,7 +303,10 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
 fn statements(subjects: &[Subject]) -> Vec<PlacedText> {
     let statement = |s: &Subject| {
         let summary = s.summary?;
-        let mut text = summary.text.clone();
+        let mut text = summary.text.trim_end().to_owned();
+        if !text.ends_with(['.', '!', '?']) {
+            text.push('.');
+        }
         if let Some(test) = &summary.has_changed {
             let df = counted(u64::from(test.degrees), "degree", "degrees");
             text += &format!(
@@ -289,7 +331,8 @@ fn outlier_words(report: &Report) -> Vec<String> {
         .collect();
     if tested.is_empty() {
         return vec![
-            "Not tested: it takes two visits of a population and a known effective size.".to_owned(),
+            "Not tested: it takes two visits of a population and a known effective size."
+                .to_owned(),
         ];
     }
     let found: u64 = tested.iter().map(|o| o.found).sum();
@@ -305,10 +348,17 @@ fn outlier_words(report: &Report) -> Vec<String> {
     }
 }
 
+fn listing(title: &str, table: &Table) -> Listing {
+    Listing {
+        title: format!("{title} ({})", count(table.rows.len() as u64)),
+        table: TableView::of(table),
+    }
+}
+
 fn figure(figure: &Figure) -> FigureView {
     let panel = |p: &crate::report::figures::Panel| PanelView {
         title: p.title.clone(),
-        svg: p.element(p.width <= PANEL_WIDTH),
+        svg: p.element(figure.name != "differentiation"),
         wide: p.width > PANEL_WIDTH,
     };
     FigureView {

@@ -22,7 +22,8 @@ fn latest(report: &mut Report) -> &mut Comparison {
 
 fn size_of(report: &mut Report) -> &mut EffectiveSize {
     let mut all = report.effective_size.iter_mut();
-    all.find(|e| e.headline && e.to == "Aldermere@2024").unwrap()
+    all.find(|e| e.headline && e.to == "Aldermere@2024")
+        .unwrap()
 }
 
 #[test]
@@ -92,7 +93,9 @@ fn a_loss_without_interval_says_so() {
         latest(r).change.expected_heterozygosity_kept.interval = None;
     });
     assert!(
-        words.contains("shows 11 % less expected heterozygosity, but how sure that is could not be computed"),
+        words.contains(
+            "shows 11 % less expected heterozygosity, but how sure that is could not be computed"
+        ),
         "{words}"
     );
 }
@@ -161,5 +164,8 @@ fn a_labelled_visit_has_its_year_beside_it() {
             }
         }
     });
-    assert!(words.starts_with("Since first survey (2004) the"), "{words}");
+    assert!(
+        words.starts_with("Since first survey (2004) the"),
+        "{words}"
+    );
 }
