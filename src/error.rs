@@ -55,14 +55,19 @@ pub enum Error {
         /// What the user can do.
         cure: String,
     },
+    /// A verdict that found a breach: the work was done, its answer is this. Exit code 3.
+    #[error("{0}")]
+    Breach(String),
 }
 
 impl Error {
-    /// The process exit code of this class: 1 the work failed, 2 usage or an invalid sheet.
+    /// The process exit code of this class: 1 the work failed, 2 usage or an invalid sheet, 3 a
+    /// breach.
     pub fn exit_code(&self) -> u8 {
         match self {
             Error::Usage(_) | Error::Sheet { .. } => 2,
             Error::Calls { .. } | Error::Io { .. } | Error::Document { .. } => 1,
+            Error::Breach(_) => 3,
         }
     }
 

@@ -1,6 +1,9 @@
 //! Flags that several commands share, and checks of single values.
 
-use clap::Args;
+use std::path::{Path, PathBuf};
+
+use clap::error::ErrorKind;
+use clap::{Args, CommandFactory};
 
 /// Flags of every command that computes.
 #[derive(Debug, Clone, Args)]
@@ -22,6 +25,26 @@ impl Running {
     }
 }
 
+/// Refuses a file that is both read and written.
+pub(super) fn keep_apart<'a>(
+    inputs: impl IntoIterator<Item = Option<&'a PathBuf>>,
+    output: Option<&PathBuf>,
+) -> Result<(), clap::Error> {
+    match output {
+        Some(output)
+            if output != Path::new("-")
+                && inputs.into_iter().flatten().any(|input| input == output) =>
+        {
+            let text = format!(
+                "{} is both read and written: give the output another name",
+                output.display()
+            );
+            Err(super::Flags::command().error(ErrorKind::ArgumentConflict, text))
+        }
+        _ => Ok(()),
+    }
+}
+
 /// A finite number above 0.
 pub(super) fn above_zero(text: &str) -> Result<f64, String> {
     number(text, |x| x > 0.0, "a number above 0")
@@ -38,6 +61,16 @@ pub(super) fn share(text: &str) -> Result<f64, String> {
         text,
         |x| (0.0..=1.0).contains(&x),
         "a share from 0 to 1; write 0.8 for 80 %",
+    )
+}
+
+/// A share above 0 and below 1.
+pub(super) fn inner_share(text: &str) -> Result<f64, String> {
+    let inside = |x| x > 0.0 && x < 1.0;
+    number(
+        text,
+        inside,
+        "a share above 0 and below 1; write 0.9 for 90 %",
     )
 }
 

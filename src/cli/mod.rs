@@ -5,11 +5,14 @@
 //! variant of the flags' enum and of [`Work`], and an arm in the match of [`parse_from`].
 
 mod common;
+mod design;
+mod forecast;
 mod measure;
 mod page;
 mod rehearse;
 mod schema;
 mod screen;
+mod verdict;
 
 use std::ffi::OsString;
 use std::path::PathBuf;
@@ -27,6 +30,12 @@ pub enum Work {
     Page(PagePlan),
     /// Simulate a monitored population.
     Rehearse(RehearsePlan),
+    /// Judge a report against a policy.
+    Verdict(VerdictPlan),
+    /// Project the diversity of a report's populations.
+    Forecast(ForecastPlan),
+    /// Tell what a sampling design can see.
+    Design(Box<DesignPlan>),
     /// Look at the samples themselves.
     Screen(Box<ScreenPlan>),
     /// Print the JSON Schema of what the program writes.
@@ -64,6 +73,108 @@ pub struct RehearsePlan {
     pub quiet: bool,
 }
 
+/// A report to judge.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct VerdictPlan {
+    /// The report; `-` is standard input. Absent when the built-in policy is to be printed.
+    pub report: Option<PathBuf>,
+    /// The policy file; the built-in policy when absent.
+    pub policy: Option<PathBuf>,
+    /// Whether the share of populations above 500 is added.
+    pub indicator: bool,
+    /// What "cannot tell" counts as for the exit code.
+    pub on_uncertain: OnUncertain,
+    /// Where the verdict goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// Whether the table stays off standard error.
+    pub quiet: bool,
+}
+
+/// A report to project.
+#[derive(Debug, Clone, PartialEq)]
+pub struct ForecastPlan {
+    /// The report; `-` is standard input.
+    pub report: PathBuf,
+    /// Scenarios beside the status quo.
+    pub scenarios: Option<PathBuf>,
+    /// Alleles to watch.
+    pub watch: Option<PathBuf>,
+    /// Years ahead.
+    pub years: Option<f64>,
+    /// Generations ahead.
+    pub generations: Option<usize>,
+    /// Years in a generation; the report's when absent.
+    pub generation_years: Option<f64>,
+    /// Share of the baseline's heterozygosity to be kept, above 0 and below 1.
+    pub keep: f64,
+    /// Draws behind each band.
+    pub draws: usize,
+    /// Seed of all chance.
+    pub seed: u64,
+    /// Where the forecast goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// Threads; all cores when absent.
+    pub threads: Option<usize>,
+    /// Whether the table stays off standard error.
+    pub quiet: bool,
+}
+
+/// Sampling designs to weigh up: every combination of the lists.
+#[derive(Debug, Clone, PartialEq)]
+pub struct DesignPlan {
+    /// Individuals at each visit.
+    pub individuals: Vec<u32>,
+    /// Loci.
+    pub loci: Vec<u32>,
+    /// Generations between two visits.
+    pub generations: Vec<u32>,
+    /// True effective sizes.
+    pub effective_sizes: Vec<f64>,
+    /// Alleles a locus.
+    pub alleles: u32,
+    /// Chromosomes.
+    pub chromosomes: u32,
+    /// Coefficient of variation of 1/Ne to be reached.
+    pub cv: f64,
+    /// Frequencies of alleles to be seen.
+    pub frequencies: Vec<f64>,
+    /// Probability with which they are to be seen.
+    pub seen: f64,
+    /// Power to be reached.
+    pub power: f64,
+    /// Simulations a design; 0 for none.
+    pub simulations: u32,
+    /// Effective size below which a decline is to be declared.
+    pub size_limit: f64,
+    /// Share of richness that must be gone before a loss of richness is declared.
+    pub richness_drop: f64,
+    /// Effective size of the population whose declared declines are false alarms.
+    pub stable_size: f64,
+    /// Cost of one sampled individual.
+    pub cost_per_sample: Option<f64>,
+    /// Cost of one locus.
+    pub cost_per_locus: Option<f64>,
+    /// Seed of all chance.
+    pub seed: u64,
+    /// Where the document goes; standard output when absent.
+    pub output: Option<PathBuf>,
+    /// Threads; all cores when absent.
+    pub threads: Option<usize>,
+    /// Whether the table stays off standard error.
+    pub quiet: bool,
+}
+
+/// What "cannot tell" counts as for the exit code of a verdict.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum OnUncertain {
+    /// As met.
+    Met,
+    /// As breached.
+    Breached,
+    /// As neither.
+    Tell,
+}
+
 /// Genetic monitoring of wild and captive populations.
 ///
 /// Genotype calls of several visits and a sample sheet come in; diversity with its change since the
@@ -92,13 +203,17 @@ const EXIT_STATUS: &str = "\
 Exit status:
   0  done
   1  the work failed: a file that cannot be read, written or trusted
-  2  wrong usage, or an input sheet or settings file with problems";
+  2  wrong usage, or an input sheet or settings file with problems
+  3  a verdict found a breach";
 
 #[derive(Subcommand)]
 enum Command {
     Measure(measure::Flags),
     Page(page::Flags),
     Rehearse(rehearse::Flags),
+    Verdict(verdict::Flags),
+    Forecast(forecast::Flags),
+    Design(Box<design::Flags>),
     Screen(screen::Flags),
     Schema(schema::Flags),
 }
@@ -118,6 +233,9 @@ where
         Command::Measure(flags) => Ok(Work::Measure(Box::new(flags.plan()?))),
         Command::Page(flags) => Ok(Work::Page(flags.plan())),
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
+        Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),
+        Command::Forecast(flags) => Ok(Work::Forecast(flags.plan()?)),
+        Command::Design(flags) => Ok(Work::Design(Box::new(flags.plan()))),
         Command::Screen(flags) => Ok(Work::Screen(Box::new(flags.plan()?))),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
     }

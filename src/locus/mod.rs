@@ -11,8 +11,10 @@ pub mod individuals;
 pub mod richness;
 pub mod runs;
 pub mod signs;
+mod term_list;
 mod terms;
 
 pub use classes::GenotypeClasses;
 pub use counts::Counts;
+pub use term_list::Terms;
 pub use terms::{PairTerms, PrivateTerms, StratumTerms, pair_terms, private_terms, stratum_terms};

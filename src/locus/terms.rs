@@ -6,7 +6,7 @@ use super::change::temporal_terms;
 use super::diversity::{expected_heterozygosity, heterozygote_excess, observed_heterozygosity};
 use super::fstatistics::{hudson, nei, weir_cockerham_pair};
 use super::richness::{Rarefaction, private_richness, richness};
-use crate::terms;
+use super::term_list::terms;
 
 terms! {
     /// One stratum at one locus. Loci that vary among all individuals in use enter everything;

@@ -25,41 +25,6 @@ pub fn from_fixed(sum: i128) -> f64 {
     sum as f64 / (1u64 << FRACTION_BITS) as f64
 }
 
-/// A set of named per-locus terms that are summed over loci.
-pub trait Terms: Copy + Default {
-    /// Number of terms.
-    const LEN: usize;
-    /// Writes the terms in declaration order; `out` has length [`Terms::LEN`].
-    fn write(&self, out: &mut [f64]);
-    /// Reads what [`Terms::write`] wrote.
-    fn read(values: &[f64]) -> Self;
-}
-
-/// Declares a struct of `f64` terms with its place in the sums.
-#[macro_export]
-macro_rules! terms {
-    ($(#[$meta:meta])* $name:ident { $($(#[$field_meta:meta])* $field:ident),+ $(,)? }) => {
-        $(#[$meta])*
-        #[derive(Debug, Clone, Copy, Default, PartialEq)]
-        pub struct $name {
-            $($(#[$field_meta])* pub $field: f64),+
-        }
-
-        impl $crate::merge::Terms for $name {
-            const LEN: usize = [$(stringify!($field)),+].len();
-
-            fn write(&self, out: &mut [f64]) {
-                out.copy_from_slice(&[$(self.$field),+]);
-            }
-
-            fn read(values: &[f64]) -> Self {
-                let mut values = values.iter().copied();
-                $name { $($field: values.next().unwrap_or_default()),+ }
-            }
-        }
-    };
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;

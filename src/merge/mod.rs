@@ -13,7 +13,8 @@ mod sums;
 mod two_way;
 mod windows;
 
-pub use fixed::{BATCH_LOCI, FRACTION_BITS, Terms, from_fixed, to_fixed};
+pub use crate::locus::Terms;
+pub use fixed::{BATCH_LOCI, FRACTION_BITS, from_fixed, to_fixed};
 pub use scheme::{Pair, Scheme};
 pub use sums::{LocusView, PairSums, StratumSums, Sums};
 pub use two_way::TwoWay;

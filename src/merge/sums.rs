@@ -4,13 +4,13 @@ use std::sync::Arc;
 
 use super::carriers::Carriers;
 use super::fates::Fates;
-use super::fixed::Terms;
 use super::gram::{GramAbsent, GramStratum};
 use super::histogram::PValueHistogram;
 use super::panel::Panel;
 use super::scheme::{Pair, Scheme};
 use super::spectrum::Spectrum;
 use super::two_way::TwoWay;
+use crate::locus::Terms;
 use crate::locus::hardy_weinberg::{HardyWeinbergCache, test_many_alleles};
 use crate::locus::richness::Rarefaction;
 use crate::locus::{

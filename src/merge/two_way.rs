@@ -3,8 +3,9 @@
 use std::marker::PhantomData;
 use std::ops::Range;
 
-use super::fixed::{BATCH_LOCI, Terms, from_fixed, to_fixed};
+use super::fixed::{BATCH_LOCI, from_fixed, to_fixed};
 use super::windows::{Blocking, Windows};
+use crate::locus::Terms;
 
 /// Sums of the terms `T` over loci: in all, by genome window, and what each individual's absence
 /// would change. Merging is associative and commutative; an empty one is the identity.

@@ -210,7 +210,7 @@ impl Grid {
     /// derivatives with respect to u.
     ///
     /// One generation is exact at whole 2N and a polynomial in u, so between them it is interpolated
-    /// in u through the nearest [`SUPPORT`] whole sizes. Fractions of a generation mix the two
+    /// in u through the nearest `SUPPORT` whole sizes. Fractions of a generation mix the two
     /// neighbouring numbers of generations. `u` must be above 0 and at most 1.
     pub fn chain(&self, points: &[f64], generations: f64, u: f64) -> Drift {
         let first = ((1.0 / u).round() as u32)

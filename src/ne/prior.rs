@@ -35,13 +35,23 @@ pub struct FittedPrior {
 /// The allele counted must be chosen without regard to its count, for instance the first one listed
 /// as alternate; the others then have the prior with its shapes exchanged.
 pub fn fit_prior(counts: impl IntoIterator<Item = (u32, u32)>) -> Option<FittedPrior> {
+    fit_prior_to_classes(counts.into_iter().map(|(x, n)| (x, n, 1)))
+}
+
+/// The same from (copies, copies typed, loci).
+pub fn fit_prior_to_classes(
+    classes: impl IntoIterator<Item = (u32, u32, u64)>,
+) -> Option<FittedPrior> {
     let mut distinct: BTreeMap<(u32, u32), u64> = BTreeMap::new();
-    for (x, n) in counts {
+    for (x, n, loci) in classes {
         if x > 0 && x < n && n > 2 {
-            *distinct.entry((n, x)).or_default() += 1;
+            let sum = distinct.entry((n, x)).or_default();
+            *sum = sum.saturating_add(loci);
         }
     }
-    let loci: u64 = distinct.values().sum();
+    let loci = distinct
+        .values()
+        .fold(0u64, |sum, &n| sum.saturating_add(n));
     if loci == 0 {
         return None;
     }

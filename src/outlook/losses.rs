@@ -3,7 +3,7 @@
 //! P(lost | not seen) = P(lost by now | baseline count) / P(not seen now | baseline count), with the
 //! baseline frequency uncertain (the fitted prior, updated by the baseline count) and the effective
 //! size uncertain (a list of weighted drift rates). "Lost" means absent from all 2N copies of the
-//! population, so small populations use the exact Wright-Fisher chain (see [`super::passage`]).
+//! population, so small populations use the exact Wright-Fisher chain (see `passage`).
 
 use std::collections::HashMap;
 

@@ -160,7 +160,7 @@ fn lost_exactly(frequencies: &[f64], copies: u32, generations: f64) -> Vec<f64> 
 /// For many gene copies. Within short scaled times only rare alleles are lost, and each copy dies
 /// out for itself. Beyond, the diffusion, at the time at which it gives rare alleles that same
 /// chance: taken as it is it runs some two generations late.
-fn lost_from_many(frequencies: &[f64], u: f64, generations: f64) -> Vec<f64> {
+pub(super) fn lost_from_many(frequencies: &[f64], u: f64, generations: f64) -> Vec<f64> {
     let whole = generations.floor();
     let fraction = generations - whole;
     let by = |generations: u32| {

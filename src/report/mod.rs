@@ -1,13 +1,17 @@
 //! What leaves the house: wire types, and the files that carry them.
 
 pub mod assemble;
+pub mod design;
 pub mod figures;
+pub mod forecast;
+pub mod headline;
 mod json;
 pub mod page;
 pub mod screen_wire;
 pub mod screening;
 pub mod summary;
 pub mod table;
+pub mod verdict;
 pub mod warnings;
 pub mod wire;
 mod words;

@@ -1,8 +1,11 @@
 //! The story: open, read once, add up, estimate, report. Threads start only here.
 
+mod design;
+mod forecast;
 mod measure;
 mod pipeline;
 mod screen;
+mod verdict;
 
 pub use measure::measure;
 pub use screen::screen;
@@ -13,7 +16,7 @@ use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
 use crate::report::summary::{screen_summary, summary};
-use crate::report::{Output, page};
+use crate::report::{self, Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
@@ -32,6 +35,9 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
             plan.figures.as_deref(),
         ),
         Work::Rehearse(plan) => rehearse(&plan),
+        Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
+        Work::Forecast(plan) => forecast::forecast(&plan, told_arguments(arguments)),
+        Work::Design(plan) => design::design(&plan, told_arguments(arguments)),
         Work::Screen(plan) => {
             let report = screen(&plan, told_arguments(arguments))?;
             if !plan.quiet {
@@ -64,21 +70,32 @@ fn available_threads() -> usize {
     std::thread::available_parallelism().map_or(1, |n| n.get())
 }
 
-/// Documents that have a schema.
-const SCHEMAS: [&str; 4] = ["report", "scenario", "screen", "truth"];
+/// Makes the schema of one document.
+type MakeSchema = fn() -> schemars::Schema;
+
+/// Documents that have a schema, by name.
+const SCHEMAS: [(&str, MakeSchema); 7] = [
+    ("report", || schema_for!(report::wire::Report)),
+    ("verdict", || schema_for!(report::verdict::Verdict)),
+    ("forecast", || schema_for!(report::forecast::Forecast)),
+    ("design", || schema_for!(report::design::Design)),
+    ("screen", || schema_for!(report::screen_wire::ScreenReport)),
+    ("scenario", || schema_for!(outlook::rehearse::Scenario)),
+    ("truth", || schema_for!(outlook::rehearse::Truth)),
+];
 
 /// Prints the JSON Schema of one document, or the names of all.
 fn schema(name: Option<&str>) -> Result<()> {
     let out = Output::create(None)?;
-    match name {
-        None => out.bytes(format!("{}\n", SCHEMAS.join("\n")).as_bytes()),
-        Some("report") => out.json(&schema_for!(crate::report::wire::Report)),
-        Some("scenario") => out.json(&schema_for!(outlook::rehearse::Scenario)),
-        Some("screen") => out.json(&schema_for!(crate::report::screen_wire::ScreenReport)),
-        Some("truth") => out.json(&schema_for!(outlook::rehearse::Truth)),
-        Some(other) => Err(Error::Usage(format!(
-            "no document is called '{other}'; there are: {}",
-            SCHEMAS.join(", ")
+    let names = || SCHEMAS.map(|(name, _)| name);
+    let Some(name) = name else {
+        return out.bytes(format!("{}\n", names().join("\n")).as_bytes());
+    };
+    match SCHEMAS.iter().find(|(document, _)| *document == name) {
+        Some((_, schema)) => out.json(&schema()),
+        None => Err(Error::Usage(format!(
+            "no document is called '{name}'; there are: {}",
+            names().join(", ")
         ))),
     }
 }

@@ -4,6 +4,8 @@
 use rand::{Rng, RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
+use super::engine::Engine;
+use super::fit::climb;
 use super::*;
 
 /// A population of separate sexes in equal numbers and of free loci.
@@ -156,25 +158,113 @@ fn bias_spread_and_coverage() {
     study(100, 500, &[0, 10], 50, 0.2, 100);
 }
 
-/// 10 000 loci, three visits: estimate and interval within five seconds on one core.
+/// Both kernels on the same simulated populations: where the chain is needed.
+#[test]
+#[ignore = "minutes: simulates hundreds of populations"]
+fn small_populations_by_both_kernels() {
+    for (size, loci, visits, sample) in [
+        (10, 300, &[0, 3][..], 25),
+        (25, 300, &[0, 2], 25),
+        (50, 500, &[0, 4], 50),
+    ] {
+        let runs = 600;
+        let mut means = [0.0; 2];
+        for run in 0..runs {
+            let mut random = ChaCha8Rng::seed_from_u64(77_000 * size as u64 + run);
+            let counts = simulate(size, loci, visits, sample, 0.0, &mut random).counts();
+            let mut engine = Engine::new(&counts, BetaPrior::FLAT, 0.05).expect("loci");
+            for (mean, kernel) in means.iter_mut().zip([Kernel::Diffusion, Kernel::Chain]) {
+                engine.kernel = kernel;
+                *mean += climb(&engine, 0.0, 0.5 / size as f64, 0.5).0 / runs as f64;
+            }
+        }
+        let [diffusion, chain] = means.map(|u| 0.5 / u);
+        println!("N {size}: diffusion {diffusion:.2}, chain {chain:.2}");
+    }
+}
+
+/// Every pair of counts with its exact chance as weight: what infinitely many loci would be under
+/// the chain of `copies` gene copies.
+fn infinite_panel(copies: u32, generations: u32, sample: u32) -> CountPanel {
+    use crate::ne::wright_fisher::{Chain, binomial_probabilities, founder_copies};
+    let chain = Chain::neutral(copies);
+    let later: Vec<Vec<f64>> = (0..=copies)
+        .map(|k| binomial_probabilities(sample, f64::from(k) / f64::from(copies)))
+        .collect();
+    let mut panel = CountPanel::new(vec![f64::from(generations)]);
+    for x in 0..=sample {
+        let mut f = founder_copies(copies, 1.0 + f64::from(x), 1.0 + f64::from(sample - x));
+        for _ in 1..generations {
+            f = chain.forward(&f);
+        }
+        for y in 0..=sample {
+            let chance: f64 = f.iter().zip(&later).map(|(p, l)| p * l[y as usize]).sum();
+            panel.push(&[x, y], &[sample, sample], 1e4 * chance);
+        }
+    }
+    panel
+}
+
+/// Where the diffusion stops being good: the size it finds from infinitely many loci of the exact
+/// chain. The chain's own kernel finds the truth, which proves its interpolation.
+#[test]
+#[ignore = "a measurement"]
+fn diffusion_against_the_chain() {
+    for sample in [20, 50, 100] {
+        for copies in [4, 6, 10, 20, 40, 100, 200] {
+            let mut line = format!("n {sample:3}, 2N {copies:3}:");
+            for generations in [1, 2, 5, 10] {
+                let panel = infinite_panel(copies, generations, sample);
+                let found = |kernel| {
+                    let mut engine = Engine::new(&panel, BetaPrior::FLAT, 0.05).unwrap();
+                    engine.kernel = kernel;
+                    let (u, _) = climb(
+                        &engine,
+                        0.3 / f64::from(copies),
+                        1.2 / f64::from(copies),
+                        0.5,
+                    );
+                    1.0 / u
+                };
+                line += &format!(
+                    "  t {generations}: {:.4} {:.4}",
+                    found(Kernel::Diffusion) / f64::from(copies),
+                    found(Kernel::Chain) / f64::from(copies)
+                );
+            }
+            println!("{line}");
+        }
+    }
+}
+
+/// 10 000 loci: estimate and interval, asked for within five seconds on one core for three visits.
 #[test]
 #[ignore = "a measurement of time"]
 fn ten_thousand_loci_take_seconds() {
-    let mut random = ChaCha8Rng::seed_from_u64(7);
-    let panel = simulate(100, 10_000, &[0, 5, 10], 50, 0.03, &mut random);
-    let started = std::time::Instant::now();
-    let one = two_way(&panel, BetaPrior::FLAT, 0.05, 0.95).expect("a fit");
-    println!(
-        "one size: {:.2} s, {:?}",
-        started.elapsed().as_secs_f64(),
-        one.intervals[0]
-    );
-    let started = std::time::Instant::now();
-    let by = two_way_by_interval(&panel, BetaPrior::FLAT, 0.05, 0.95).expect("a fit");
-    println!(
-        "by interval: {:.2} s, {:?}",
-        started.elapsed().as_secs_f64(),
-        by.intervals
-    );
-    println!("{:?}", size_change(&one.fit, &by.fit, one.inflation));
+    for (size, visits) in [
+        (100, &[0, 5, 10][..]),
+        (40, &[0, 5, 10]),
+        (100, &[0, 2, 4, 6, 8, 10]),
+    ] {
+        let mut random = ChaCha8Rng::seed_from_u64(7);
+        let panel = simulate(size, 10_000, visits, 50, 0.03, &mut random);
+        let started = std::time::Instant::now();
+        let one = two_way(&panel, BetaPrior::FLAT, 0.05, 0.95).expect("a fit");
+        println!(
+            "N {size}, visits {visits:?}: {:.2} s, {:?}",
+            started.elapsed().as_secs_f64(),
+            one.intervals[0]
+        );
+        let started = std::time::Instant::now();
+        let by = two_way_by_interval(&panel, BetaPrior::FLAT, 0.05, 0.95).expect("a fit");
+        println!("by interval: {:.2} s", started.elapsed().as_secs_f64());
+        for i in &by.intervals {
+            println!(
+                "  {:?} {:?}",
+                i.effective_size(),
+                i.effective_size_interval()
+            );
+        }
+        println!("  {:?}", size_change(&one.fit, &by.fit, one.inflation));
+    }
 }

@@ -14,6 +14,7 @@ mod change;
 mod columns;
 mod engine;
 mod fit;
+mod jet;
 mod two_way;
 mod weights;
 

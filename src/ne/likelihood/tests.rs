@@ -249,3 +249,70 @@ fn absence_has_a_reason() {
     let rare = panel_of(&[1.0], &[(&[1, 5], &[40, 40]), (&[9, 0], &[40, 0])]);
     assert_eq!(fit_constant(&rare, flat, 0.05), Err(NoFit::NoLoci));
 }
+
+/// One Newton step a deletion against fitting anew without the individual, over 25 + 25 individuals.
+#[test]
+fn newton_steps_are_refits_to_a_hundredth_of_the_standard_error() {
+    let mut random = rand::SeedableRng::seed_from_u64(5);
+    let panel = super::calibration::simulate(60, 400, &[0, 3, 6], 25, 0.05, &mut random);
+    let prior = BetaPrior { a: 0.8, b: 0.9 };
+    let full = two_way(&panel, prior, 0.05, 0.95).unwrap();
+    let counts = panel.counts();
+    let used: Vec<bool> = (0..counts.len()).map(|i| counts.usable(i, 0.05)).collect();
+    let kept = panel.keep_rows(&used);
+    let mut variance = 0.0;
+    for i in 0..75 {
+        // The choice of loci stays that of the full sample.
+        let fit = fit_constant(&kept.without(i).counts(), prior, 0.0).unwrap();
+        variance += 24.0 / 25.0 * (fit.signed_rates[0] - full.fit.signed_rates[0]).powi(2);
+    }
+    let ratio = (full.intervals[0].variance_individuals / variance).sqrt();
+    assert!((ratio - 1.0).abs() < 0.01, "{ratio}");
+    let mut by_block = Vec::new();
+    for block in 0..50 {
+        let rows: Vec<bool> = (0..counts.len())
+            .map(|i| used[i] && i * 50 / 400 != block)
+            .collect();
+        let size = used.iter().zip(&rows).filter(|(u, r)| **u && !**r).count() as f64;
+        if size > 0.0 {
+            let fit = fit_constant(&panel.keep_rows(&rows).counts(), prior, 0.05).unwrap();
+            by_block.push((size, fit.signed_rates[0]));
+        }
+    }
+    // The weighted delete-one-block jackknife, written out once more.
+    let n: f64 = by_block.iter().map(|b| b.0).sum();
+    let (g, theta) = (by_block.len() as f64, full.fit.signed_rates[0]);
+    let centre = g * theta - by_block.iter().map(|(m, d)| (1.0 - m / n) * d).sum::<f64>();
+    let variance: f64 = by_block
+        .iter()
+        .map(|(m, d)| {
+            let h = n / m;
+            (h * theta - (h - 1.0) * d - centre).powi(2) / (h - 1.0) / g
+        })
+        .sum();
+    let ratio = (full.intervals[0].variance_loci / variance).sqrt();
+    assert!((ratio - 1.0).abs() < 0.02, "{ratio}");
+}
+
+/// Weights add up, centre on the estimate, and are as wide as its standard error.
+#[test]
+fn weights_are_as_wide_as_the_interval() {
+    let mut random = rand::SeedableRng::seed_from_u64(6);
+    let panel = super::calibration::simulate(60, 400, &[0, 4], 40, 0.0, &mut random);
+    let result = two_way(&panel, BetaPrior::FLAT, 0.05, 0.95).unwrap();
+    let weights = rate_weights(&panel, BetaPrior::FLAT, 0.05, &result, 41).unwrap();
+    let moment = |k: i32| -> f64 {
+        weights
+            .iter()
+            .map(|w| w.weight * (w.rate - result.intervals[0].rate).powi(k))
+            .sum()
+    };
+    assert!((moment(0) - 1.0).abs() < 1e-12);
+    let error = result.intervals[0].standard_error();
+    assert!(moment(1).abs() < 0.3 * error, "{} {error}", moment(1));
+    let width = moment(2).sqrt() / error;
+    assert!((0.8..1.25).contains(&width), "{width}");
+    let by = two_way_by_interval(&panel, BetaPrior::FLAT, 0.05, 0.95).unwrap();
+    assert!((by.intervals[0].low - result.intervals[0].low).abs() < 1e-6);
+    assert_eq!(size_change(&result.fit, &by.fit, result.inflation), None);
+}

@@ -8,8 +8,9 @@
 
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
-use super::engine::{Engine, pair};
+use super::engine::Engine;
 use super::fit::{by_interval, constant};
+use super::jet::pair;
 use super::{BetaPrior, CountPanel, Fit, NoFit};
 use crate::model::MISSING_DOSAGE;
 use crate::ne::matrix::{Matrix, solve};
@@ -84,6 +85,28 @@ impl DosagePanel {
             panel.push(&copies, &totals, self.weights[i]);
         }
         panel
+    }
+}
+
+#[cfg(test)]
+impl DosagePanel {
+    /// The rows for which `keep` holds.
+    pub(super) fn keep_rows(&self, keep: &[bool]) -> Self {
+        let mut out = DosagePanel::new(self.gaps.clone(), self.individuals.clone());
+        for i in (0..self.weights.len()).filter(|&i| keep[i]) {
+            out.push(self.row(i), self.weights[i], self.blocks[i]);
+        }
+        out
+    }
+
+    /// The panel with one individual's genotypes missing.
+    pub(super) fn without(&self, individual: usize) -> Self {
+        let mut out = self.clone();
+        let width = self.width();
+        for d in out.dosages.iter_mut().skip(individual).step_by(width) {
+            *d = MISSING_DOSAGE;
+        }
+        out
     }
 }
 

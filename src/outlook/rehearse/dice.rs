@@ -29,6 +29,8 @@ pub enum Purpose {
     Genotyping = 9,
     /// Texts of the alleles of a unit.
     AlleleTexts = 10,
+    /// Draws of a forecast.
+    Forecast = 11,
 }
 
 /// A stream of chance.

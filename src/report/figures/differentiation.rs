@@ -24,13 +24,14 @@ pub fn between_populations(report: &Report) -> Option<Figure> {
         .iter()
         .filter_map(|p| p.comparison.fst_weir_cockerham.estimate)
         .fold(0.0, f64::max);
-    let mut visits: Vec<&str> = Vec::new();
+    let mut visits: Vec<(f64, &str)> = Vec::new();
     for p in &pairs {
-        if !visits.contains(&p.visit) {
-            visits.push(p.visit);
+        if !visits.iter().any(|(_, visit)| *visit == p.visit) {
+            visits.push((p.year, p.visit));
         }
     }
-    let panels = visits.iter().map(|visit| {
+    visits.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(b.1)));
+    let panels = visits.iter().map(|(_, visit)| {
         let pairs: Vec<&Pair> = pairs.iter().filter(|p| p.visit == *visit).collect();
         matrix(report, visit, &pairs, largest)
     });
@@ -58,6 +59,7 @@ pub fn between_populations(report: &Report) -> Option<Figure> {
 struct Pair<'a> {
     comparison: &'a Comparison,
     visit: &'a str,
+    year: f64,
     from: &'a str,
     to: &'a str,
 }
@@ -70,6 +72,7 @@ fn pair<'a>(report: &'a Report, comparison: &'a Comparison) -> Option<Pair<'a>> 
         .map(|(from, to)| Pair {
             comparison,
             visit: &from.visit,
+            year: from.year,
             from: &from.population,
             to: &to.population,
         })

@@ -162,8 +162,9 @@ fn legend(d: &mut Drawing, subject: &Subject) {
 }
 
 fn frame(d: &mut Drawing, y: &Scale, pixels: [f64; 2]) {
-    let places = y.places(4);
-    for tick in y.ticks(4) {
+    let most = ((pixels[0] - pixels[1]) / 18.0) as usize;
+    let places = y.places(most);
+    for tick in y.ticks(most) {
         let at = y.at(tick);
         d.line("grid", (LEFT, at), (RIGHT, at));
         let label = numbers::decimals(tick, places);

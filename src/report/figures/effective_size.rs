@@ -2,19 +2,19 @@
 
 use super::drawing::{Anchor, Drawing, Shape};
 use super::scale::Scale;
-use super::subject::{Subject, method_name};
+use super::subject::Subject;
 use super::table::{Cell, Table, cells};
 use super::{Figure, PANEL_WIDTH, Panel, numbers, specification};
 use crate::report::wire::{EffectiveSize, Plan};
 
 const LEFT: f64 = 8.0;
-const RIGHT: f64 = PANEL_WIDTH - 8.0;
+const RIGHT: f64 = PANEL_WIDTH - 22.0;
 const TOP: f64 = 62.0;
 const ROW: f64 = 36.0;
 /// Rows drawn of one population; the table has all.
-const MOST_ROWS: usize = 16;
+const MOST_ROWS: usize = 14;
 /// Beyond this a size is as good as without bound, and is drawn as an arrow.
-const LARGEST_DRAWN: f64 = 100_000.0;
+const LARGEST_DRAWN: f64 = 10_000.0;
 
 /// Sizes that the literature sets as limits, each with its source. Rules of thumb, not law.
 pub const LIMITS: [(f64, &str); 4] = [
@@ -35,7 +35,9 @@ pub fn figure(subjects: &[Subject]) -> Option<Figure> {
         title: "Effective population size".to_owned(),
         caption: format!(
             "Effective size Ne in diploid individuals, logarithmic axis; bars are {} % intervals, an \
-             arrow means that the data set no upper limit. Filled marks are the values to quote. \
+             arrow means that the data set no upper limit, or one above 10\u{202f}000. Filled marks are \
+             the values to quote of each method; the name of the one quoted above is bold. The table \
+             has all variants. \
              Upright lines are published rules of thumb, not law: 50 against inbreeding in the short \
              term and 500 to keep the power to adapt (Franklin 1980; full lines), 100 and 1000 for the \
              same (Frankham et al. 2014; dashed lines).",
@@ -73,7 +75,14 @@ fn panel(subject: &Subject, x: &Scale) -> Panel {
     );
     limits(&mut d, x, bottom);
     for (i, size) in shown.iter().enumerate() {
-        row(&mut d, size, x, TOP + ROW * i as f64);
+        let quoted = subject.size.is_some_and(|s| std::ptr::eq(s, *size));
+        row(
+            &mut d,
+            size,
+            (short_label(subject, size), quoted),
+            x,
+            TOP + ROW * i as f64,
+        );
     }
     d.line("axis", (LEFT, bottom), (RIGHT, bottom));
     for tick in x.ticks(9) {
@@ -104,9 +113,13 @@ fn panel(subject: &Subject, x: &Scale) -> Panel {
         d.text("small soft", (20.0, below + 51.0), Anchor::Start, &words);
         height += 17.0;
     }
-    let values = shown
-        .iter()
-        .map(|e| format!("{}: {}", label(e), numbers::effective_size(e)));
+    let values = shown.iter().map(|e| {
+        format!(
+            "{}: {}",
+            short_label(subject, e),
+            numbers::effective_size(e)
+        )
+    });
     Panel {
         title: subject.population.to_owned(),
         description: values.collect::<Vec<_>>().join("; "),
@@ -116,9 +129,17 @@ fn panel(subject: &Subject, x: &Scale) -> Panel {
     }
 }
 
-/// Values to quote first, then those since the baseline, then the others, as far as there is room.
+/// The value quoted above first, then those to quote of their method, then those since the baseline,
+/// as far as there is room. Variants of a method that has a value to quote are for the table.
 fn rows<'a>(subject: &Subject<'a>) -> Vec<&'a EffectiveSize> {
+    let is_variant = |e: &EffectiveSize| {
+        let same = |o: &&EffectiveSize| {
+            o.headline && (&o.method, &o.from, &o.to) == (&e.method, &e.from, &e.to)
+        };
+        !e.headline && e.variant.is_some() && subject.sizes.iter().any(|o| same(&o))
+    };
     let mut rows = subject.sizes.clone();
+    rows.retain(|e| !is_variant(e));
     let quoted = |e: &EffectiveSize| subject.size.is_some_and(|s| std::ptr::eq(s, e));
     let since_baseline = |e: &EffectiveSize| {
         let c = subject.since_baseline;
@@ -149,11 +170,10 @@ fn limits(d: &mut Drawing, x: &Scale, bottom: f64) {
     }
 }
 
-fn row(d: &mut Drawing, e: &EffectiveSize, x: &Scale, top: f64) {
-    let words = label(e);
+fn row(d: &mut Drawing, e: &EffectiveSize, (words, quoted): (String, bool), x: &Scale, top: f64) {
     let value = numbers::effective_size(e);
     d.begin(&format!("{words}: {value}"));
-    let class = if e.headline { "small strong" } else { "small" };
+    let class = if quoted { "small strong" } else { "small" };
     let has_mark = e.estimate.is_some() || e.unbounded;
     // The label stands on the ground colour, so that the upright lines do not cross it.
     let wide = super::drawing::width_of(&words, 11.0).min(RIGHT - LEFT);
@@ -213,21 +233,49 @@ fn look(method: &str) -> (&'static str, Shape) {
     }
 }
 
-/// Method, visits and plan in a line.
+/// Visits and method in a line, with the plan where a population has estimates under both.
+fn short_label(subject: &Subject, e: &EffectiveSize) -> String {
+    let other_plan = |o: &&EffectiveSize| o.plan.is_some() && o.plan != e.plan;
+    let plan = e
+        .plan
+        .filter(|_| subject.sizes.iter().any(|o| other_plan(o)));
+    let plan = plan.map_or_else(String::new, |plan| format!(", plan {}", plan_name(plan)));
+    format!("{}: {}{plan}", when(e), method_name(&e.method))
+}
+
+/// Visits, method, variant and plan in a line.
 fn label(e: &EffectiveSize) -> String {
+    let variant = e.variant.iter().map(|v| format!(", {v}"));
+    let plan = e.plan.map(|plan| format!(", plan {}", plan_name(plan)));
+    let tail: String = variant.chain(plan).collect();
+    format!("{}: {}{tail}", when(e), method_name(&e.method))
+}
+
+fn when(e: &EffectiveSize) -> String {
     let visit = |stratum: &str| {
         let own = stratum.strip_prefix(e.population.as_str());
         let visit = own.and_then(|rest| rest.strip_prefix('@'));
         visit.unwrap_or(stratum).to_owned()
     };
-    let when = match &e.from {
+    match &e.from {
         Some(from) => format!("{} to {}", visit(from), visit(&e.to)),
         None => visit(&e.to),
-    };
-    let variant = e.variant.iter().map(|v| format!(", {v}"));
-    let plan = e.plan.map(|plan| format!(", plan {}", plan_name(plan)));
-    let tail: String = variant.chain(plan).collect();
-    format!("{}: {when}{tail}", method_name(&e.method))
+    }
+}
+
+/// The method in words, with authors and year where a name alone would not tell it.
+fn method_name(method: &str) -> &str {
+    match method {
+        "temporal_fs" => "frequencies, Jorde & Ryman 2007",
+        "temporal_fc" => "frequencies, Nei & Tajima 1981",
+        "temporal_fk" => "frequencies, Pollak 1983",
+        "temporal_likelihood" => "likelihood of all visits",
+        "temporal_likelihood_by_interval" => "likelihood of this interval",
+        "linkage" => "linkage",
+        "heterozygote_excess" => "heterozygote excess",
+        "demographic" => "counts of breeders",
+        other => other,
+    }
 }
 
 fn plan_name(plan: Plan) -> &'static str {

@@ -9,7 +9,6 @@ use crate::report::wire::{AlleleFates, LossCall, Report};
 
 const LEFT: f64 = 8.0;
 const RIGHT: f64 = PANEL_WIDTH - 8.0;
-const HEIGHT: f64 = 196.0;
 const BAR: f64 = 22.0;
 
 /// Kept alleles, and those not seen again by what probably happened to them.
@@ -147,11 +146,12 @@ fn panel(fates: &Fates) -> Panel {
         .iter()
         .map(|p| format!("{} {}", numbers::count(p.alleles), p.fate.name()));
     let parts: Vec<_> = parts.collect();
+    let shown = fates.parts.iter().filter(|p| p.alleles > 0).count();
     Panel {
         title: fates.population.to_owned(),
         description: format!("{words}: {}", parts.join(", ")),
         width: PANEL_WIDTH,
-        height: HEIGHT,
+        height: 140.0 + 17.0 * shown as f64,
         body: d.into_body(),
     }
 }

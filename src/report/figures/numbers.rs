@@ -19,7 +19,7 @@ fn grouped(digits: &str) -> String {
     }
     let mut out = String::with_capacity(digits.len() + 8);
     for (i, digit) in whole.chars().enumerate() {
-        if i > 0 && (whole.len() - i) % 3 == 0 {
+        if i > 0 && (whole.len() - i).is_multiple_of(3) {
             out.push(THOUSANDS);
         }
         out.push(digit);

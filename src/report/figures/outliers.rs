@@ -81,7 +81,7 @@ fn panel(c: &Comparison, outliers: &Outliers) -> Panel {
         numbers::counted(outliers.tested, "locus", "loci")
     );
     d.text("small", (8.0, 34.0), Anchor::Start, &found);
-    let last = extent(outliers.list.iter().map(|l| millions(l)), 0.0, [0.0, 1.0])[1];
+    let last = extent(outliers.list.iter().map(millions), 0.0, [0.0, 1.0])[1];
     let x = Scale::linear(
         [0.0, last.max(1e-6)],
         [NAME_WIDTH + 14.0, PANEL_WIDTH - 14.0],

@@ -169,18 +169,3 @@ fn kept(size: Option<f64>, t: f64) -> f64 {
     let rate = size.map_or(0.0, |n| 0.5 / n);
     (1.0 - rate.clamp(0.0, 1.0)).powf(t)
 }
-
-/// The method in words, with authors and year.
-pub fn method_name(method: &str) -> &str {
-    match method {
-        "temporal_fs" => "Change of frequencies (Jorde & Ryman 2007)",
-        "temporal_fc" => "Change of frequencies (Nei & Tajima 1981)",
-        "temporal_fk" => "Change of frequencies (Pollak 1983)",
-        "temporal_likelihood" => "Likelihood of all visits",
-        "temporal_likelihood_by_interval" => "Likelihood, each interval",
-        "linkage" => "Linkage",
-        "heterozygote_excess" => "Heterozygote excess",
-        "demographic" => "Counts of breeders",
-        other => other,
-    }
-}

@@ -6,8 +6,9 @@ use serde::Serialize;
 
 use super::answer::sentences;
 use super::tables::{self, TableView};
-use crate::report::figures::numbers::{chance, counted};
+use crate::report::figures::numbers::{chance, count, counted};
 use crate::report::figures::subject::Subject;
+use crate::report::figures::table::Table;
 use crate::report::figures::{Figure, PANEL_WIDTH};
 use crate::report::wire::{Report, Warning};
 
@@ -69,7 +70,14 @@ struct Section {
     words: Vec<String>,
     statements: Vec<PlacedText>,
     figures: Vec<FigureView>,
-    tables: Vec<TableView>,
+    tables: Vec<Listing>,
+}
+
+/// A long table that opens with a touch.
+#[derive(Debug, Serialize)]
+struct Listing {
+    title: String,
+    table: TableView,
 }
 
 #[derive(Debug, Serialize)]
@@ -165,7 +173,9 @@ fn facts(report: &Report, subjects: &[Subject]) -> Vec<String> {
 }
 
 fn answer(report: &Report, subject: &Subject) -> Answer {
-    let notes = subject.size.map(|e| e.notes.clone()).unwrap_or_default();
+    let mut notes = subject.size.map(|e| e.notes.clone()).unwrap_or_default();
+    // The sentence says it already.
+    notes.retain(|note| !note.ends_with("no upper bound"));
     Answer {
         population: subject.population.to_owned(),
         sentences: sentences(report, subject),
@@ -227,9 +237,10 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
         },
     );
     if !report.losses.is_empty() {
-        alleles
-            .tables
-            .push(TableView::of(&tables::losses(&report.losses)));
+        alleles.tables.push(listing(
+            "Alleles not seen again, one by one",
+            &tables::losses(&report.losses),
+        ));
     }
     let mut at_risk = section(
         "at-risk",
@@ -243,9 +254,10 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
         },
     );
     if !report.at_risk.is_empty() {
-        at_risk
-            .tables
-            .push(TableView::of(&tables::at_risk(&report.at_risk)));
+        at_risk.tables.push(listing(
+            "Alleles in few copies, one by one, with their carriers",
+            &tables::at_risk(&report.at_risk),
+        ));
     }
     let mut size = section(
         "effective-size",
@@ -291,7 +303,10 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
 fn statements(subjects: &[Subject]) -> Vec<PlacedText> {
     let statement = |s: &Subject| {
         let summary = s.summary?;
-        let mut text = summary.text.clone();
+        let mut text = summary.text.trim_end().to_owned();
+        if !text.ends_with(['.', '!', '?']) {
+            text.push('.');
+        }
         if let Some(test) = &summary.has_changed {
             let df = counted(u64::from(test.degrees), "degree", "degrees");
             text += &format!(
@@ -333,10 +348,17 @@ fn outlier_words(report: &Report) -> Vec<String> {
     }
 }
 
+fn listing(title: &str, table: &Table) -> Listing {
+    Listing {
+        title: format!("{title} ({})", count(table.rows.len() as u64)),
+        table: TableView::of(table),
+    }
+}
+
 fn figure(figure: &Figure) -> FigureView {
     let panel = |p: &crate::report::figures::Panel| PanelView {
         title: p.title.clone(),
-        svg: p.element(p.width <= PANEL_WIDTH),
+        svg: p.element(figure.name != "differentiation"),
         wide: p.width > PANEL_WIDTH,
     };
     FigureView {
