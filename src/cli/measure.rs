@@ -18,11 +18,14 @@ use crate::model::{MeasurePlan, PopulationSettings, SamplingPlan};
 #[derive(Debug, Clone, Args)]
 #[command(after_long_help = EXAMPLES, arg_required_else_help = true)]
 pub(super) struct Flags {
-    /// Genotype calls: VCF or BCF, plain or compressed; '-' is standard input
+    /// Genotype calls: VCF, BCF or a tidy table; '-' is standard input
     ///
     /// Several files are shards of one set of calls: the same samples, different contigs. The
     /// format is found by content, never by name. Diploid genotypes count; partly missing ones are
     /// missing; haploid and polyploid ones are left out and counted.
+    ///
+    /// Or a tidy table (CSV, TSV) with the columns sample, locus, allele_1, allele_2: bases or
+    /// fragment lengths, blank or NA where missing.
     #[arg(value_name = "CALLS", required = true)]
     calls: Vec<PathBuf>,
 
@@ -34,6 +37,12 @@ pub(super) struct Flags {
     /// counted). Further columns are ignored.
     #[arg(long, value_name = "SHEET")]
     samples: PathBuf,
+
+    /// Where the loci of a tidy genotype table are: columns locus, contig, position
+    ///
+    /// Without it each locus counts as unlinked to all others.
+    #[arg(long, value_name = "FILE")]
+    locus_map: Option<PathBuf>,
 
     /// Let samples of the sheet lack calls: they are left out with a note
     #[arg(long)]
@@ -153,6 +162,7 @@ impl Flags {
     pub fn plan(self) -> Result<MeasurePlan, clap::Error> {
         self.check_files()?;
         let mut plan = MeasurePlan::new(self.calls, self.samples);
+        plan.locus_map = self.locus_map;
         plan.programme = self.programme.programme;
         plan.output = self.output.filter(|path| path.as_os_str() != "-");
         plan.loci_output = self.loci;

@@ -17,9 +17,12 @@ use crate::model::{RunRule, ScreenPlan};
 #[derive(Debug, Clone, Args)]
 #[command(after_long_help = EXAMPLES, arg_required_else_help = true)]
 pub(super) struct Flags {
-    /// Genotype calls: VCF or BCF, plain or compressed; '-' is standard input
+    /// Genotype calls: VCF, BCF or a tidy table; '-' is standard input
     ///
     /// Several files are shards of one set of calls: the same samples, different contigs.
+    ///
+    /// Or a tidy table (CSV, TSV) with the columns sample, locus, allele_1, allele_2: bases or
+    /// fragment lengths, blank or NA where missing.
     #[arg(value_name = "CALLS", required = true)]
     calls: Vec<PathBuf>,
 
@@ -28,6 +31,12 @@ pub(super) struct Flags {
     /// As for 'measure'. Replicates are read too, and so are rows with 'no' under 'use'.
     #[arg(long, value_name = "SHEET")]
     samples: PathBuf,
+
+    /// Where the loci of a tidy genotype table are: columns locus, contig, position
+    ///
+    /// Without it each locus counts as unlinked to all others.
+    #[arg(long, value_name = "FILE")]
+    locus_map: Option<PathBuf>,
 
     /// Let samples of the sheet lack calls: they are left out with a note
     #[arg(long)]
@@ -115,6 +124,7 @@ impl Flags {
         self.check_files()?;
         let mut plan = ScreenPlan::new(self.calls, self.samples);
         plan.output = self.output.filter(|path| path.as_os_str() != "-");
+        plan.locus_map = self.locus_map;
         plan.clean_sheet = self.write_sheet;
         plan.allow_absent = self.allow_absent;
         let number = |n: Option<u32>, default| n.map_or(default, |n| n as usize);

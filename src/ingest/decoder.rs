@@ -50,6 +50,7 @@ pub struct Decoder {
     runs: Vec<Run>,
     tally: CallTally,
     remarks: Remarks,
+    tidy: bool,
     contig: Contig,
     format: (Vec<u8>, Format),
     kinds: Vec<AlleleKind>,
@@ -87,6 +88,7 @@ impl Decoder {
             runs,
             tally: CallTally::default(),
             remarks: Remarks::default(),
+            tidy: reader.is_tidy(),
             contig: Contig::default(),
             format: (Vec::new(), Format::default()),
             kinds: Vec::new(),
@@ -136,7 +138,13 @@ impl Decoder {
 
     /// What was remarked on records since the last call.
     pub fn take_remarks(&mut self) -> Remarks {
-        std::mem::take(&mut self.remarks)
+        let remarks = std::mem::take(&mut self.remarks);
+        // A tidy table names contigs and alleles in its own way: nothing of that breaks a standard.
+        if self.tidy {
+            Remarks::default()
+        } else {
+            remarks
+        }
     }
 
     fn text(

@@ -40,11 +40,12 @@ pub mod sheet;
 mod source;
 mod split;
 mod text;
+mod tidy;
 
 pub use batch::RecordBatch;
 pub use decoder::{Decoder, Selection};
 pub use header::CallsHeader;
 pub use inflate::Packing;
-pub use reader::{CallsReader, open, open_stream};
+pub use reader::{CallsReader, open, open_stream, open_with_map};
 pub use remarks::{Remark, Remarks};
 pub use source::InputDigest;

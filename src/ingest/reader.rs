@@ -14,7 +14,11 @@ use super::preamble::{NO_LINE_END, read_preamble};
 use super::remarks::Remarks;
 use super::source::{InputDigest, Source};
 use super::split::Split;
+use super::tidy;
 use crate::error::{Error, Place, Result};
+
+/// Bytes of which the first line tells whether they are a tidy table.
+const TIDY_BYTES: usize = 4096;
 
 /// A file of genotype calls, opened and past its header.
 pub struct CallsReader {
@@ -29,6 +33,8 @@ pub struct CallsReader {
     ended: bool,
     /// An error that waits for the records before it.
     failure: Option<Error>,
+    /// The table from which the records were made, if any.
+    tidy: Option<InputDigest>,
 }
 
 /// Opens a file of calls, or standard input for `-`, and reads its header.
@@ -37,7 +43,41 @@ pub struct CallsReader {
 /// [`crate::Error::Io`] when the system refuses, [`crate::Error::Calls`] when the file is not VCF or BCF or its
 /// header cannot be used.
 pub fn open(path: &Path) -> Result<CallsReader> {
-    CallsReader::new(Source::open(path)?)
+    open_with_map(path, None)
+}
+
+/// Like [`open`], with the file that says where the loci of a tidy table are.
+///
+/// # Errors
+/// As [`open`]; [`crate::Error::Sheet`] for problems of a tidy table or its map, and
+/// [`crate::Error::Usage`] for a map beside calls that say themselves where their loci are.
+pub fn open_with_map(path: &Path, locus_map: Option<&Path>) -> Result<CallsReader> {
+    let mut source = Source::open(path)?;
+    if !tidy::looks_tidy(source.peek(TIDY_BYTES)?) {
+        return match locus_map {
+            None => CallsReader::new(source),
+            Some(map) => Err(Error::Usage(format!(
+                "{} is no tidy genotype table, so the map of loci {} has no use: leave it out",
+                path.display(),
+                map.display()
+            ))),
+        };
+    }
+    let mut bytes = Vec::new();
+    loop {
+        let more = source.peek(1)?;
+        if more.is_empty() {
+            break;
+        }
+        bytes.extend_from_slice(more);
+        let taken = more.len();
+        source.consume(taken);
+    }
+    let map = locus_map.map(tidy::read_locus_map).transpose()?;
+    let text = tidy::as_calls(path, &bytes, map.as_ref())?;
+    let mut reader = open_stream(path, Box::new(std::io::Cursor::new(text)))?;
+    reader.tidy = Some(source.digest());
+    Ok(reader)
 }
 
 /// Like [`open`], from any stream; `name` stands for it in messages.
@@ -62,6 +102,7 @@ impl CallsReader {
             empty_line: false,
             ended: false,
             failure: None,
+            tidy: None,
         })
     }
 
@@ -73,6 +114,19 @@ impl CallsReader {
     /// The header, to be shared with decoders.
     pub(super) fn shared_header(&self) -> Arc<CallsHeader> {
         Arc::clone(&self.header)
+    }
+
+    /// The format for messages and reports, as in `VCF 4.2, BGZF`.
+    pub fn format(&self) -> String {
+        match self.tidy {
+            Some(_) => "tidy genotype table".to_owned(),
+            None => self.header.format(),
+        }
+    }
+
+    /// Whether the records were made from a tidy table, whose names need not be those of VCF.
+    pub(super) fn is_tidy(&self) -> bool {
+        self.tidy.is_some()
     }
 
     /// The file as the user named it.
@@ -103,7 +157,7 @@ impl CallsReader {
     /// Size and SHA-256 of the file as it is on disk; of the whole file once
     /// [`CallsReader::next_batch`] has returned `false`.
     pub fn digest(&self) -> InputDigest {
-        self.inflater.digest()
+        self.tidy.clone().unwrap_or_else(|| self.inflater.digest())
     }
 
     /// Fills `batch` with the next whole records, about 256 KiB of them and at least one; `false`,

@@ -20,7 +20,7 @@
 pub mod annotate;
 mod columns;
 mod fields;
-mod table;
+pub(super) mod table;
 
 use std::collections::HashMap;
 use std::path::{Path, PathBuf};

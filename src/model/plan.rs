@@ -33,6 +33,8 @@ pub struct MeasurePlan {
     pub calls: Vec<PathBuf>,
     /// The sample sheet.
     pub sheet: PathBuf,
+    /// Where the loci of a tidy genotype table are.
+    pub locus_map: Option<PathBuf>,
     /// The programme file.
     pub programme: Option<PathBuf>,
     /// Where the report goes; standard output when absent.
@@ -68,6 +70,7 @@ impl MeasurePlan {
         MeasurePlan {
             calls,
             sheet,
+            locus_map: None,
             programme: None,
             output: None,
             loci_output: None,

@@ -52,6 +52,8 @@ pub struct ScreenPlan {
     pub calls: Vec<PathBuf>,
     /// The sample sheet.
     pub sheet: PathBuf,
+    /// Where the loci of a tidy genotype table are.
+    pub locus_map: Option<PathBuf>,
     /// Where the report goes; standard output when absent.
     pub output: Option<PathBuf>,
     /// Where the sheet with `use` and `why` goes, if anywhere.
@@ -86,6 +88,7 @@ impl ScreenPlan {
         ScreenPlan {
             calls,
             sheet,
+            locus_map: None,
             output: None,
             clean_sheet: None,
             allow_absent: false,

@@ -158,7 +158,7 @@ impl Inputs {
     ) -> Provenance {
         let calls = self.sources.iter().map(|source| {
             let digest = source.reader.digest();
-            let format = source.reader.header().format();
+            let format = source.reader.format();
             input_file(
                 "calls",
                 source.reader.path(),
@@ -256,7 +256,7 @@ fn told_with_calls(error: Error, plan: &MeasurePlan) -> Error {
     let reader = plan
         .calls
         .first()
-        .and_then(|calls| ingest::open(calls).ok());
+        .and_then(|calls| ingest::open_with_map(calls, plan.locus_map.as_deref()).ok());
     if let Some(reader) = reader.filter(|_| !plan.allow_absent) {
         let header = &reader.header().samples;
         let in_calls: HashSet<&str> = header.iter().map(String::as_str).collect();
@@ -274,7 +274,7 @@ fn open_calls(plan: &MeasurePlan, sheet: &Sheet) -> Result<(Vec<Source>, Matched
     let mut sources = Vec::new();
     let mut first: Option<Matched> = None;
     for path in &plan.calls {
-        let reader = ingest::open(path)?;
+        let reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
         let matched = match_samples(&reader.header().samples, &sheet.rows, plan.allow_absent)
             .map_err(|problems| Error::Sheet {
                 path: plan.sheet.clone(),

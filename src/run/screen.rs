@@ -160,7 +160,7 @@ impl Inputs<'_> {
         let plan = self.plan;
         let calls = self.sources.iter().map(|source| {
             let digest = source.reader.digest();
-            let format = source.reader.header().format();
+            let format = source.reader.format();
             let path = source.reader.path();
             input_file("calls", path, &format, digest.bytes, digest.sha256)
         });

@@ -7,7 +7,7 @@ const DELIMITERS: [(u8, &str); 3] = [(b'\t', "tab"), (b',', "comma"), (b';', "se
 
 /// One record: its fields as bytes, trimmed of nothing.
 #[derive(Debug, Clone, PartialEq, Eq)]
-pub(super) struct Record {
+pub(in crate::ingest) struct Record {
     /// 1-based line on which the record starts.
     pub row: u64,
     /// The fields.
@@ -25,7 +25,7 @@ impl Record {
 
 /// A table: its header row and the records below, blank ones left out and counted.
 #[derive(Debug, Clone, PartialEq, Eq)]
-pub(super) struct Table {
+pub(in crate::ingest) struct Table {
     /// The first record that is not blank.
     pub header: Record,
     /// All others that are not blank.
@@ -40,7 +40,7 @@ pub(super) struct Table {
 /// # Errors
 /// What is no table at all (compressed, UTF-16, genotype calls, empty), or a quotation mark that is
 /// never closed.
-pub(super) fn split(bytes: &[u8]) -> Result<Table, Vec<Problem>> {
+pub(in crate::ingest) fn split(bytes: &[u8]) -> Result<Table, Vec<Problem>> {
     let text = bytes.strip_prefix(b"\xEF\xBB\xBF").unwrap_or(bytes);
     refuse_other_formats(text)?;
     let mut lines = Lines::new(text);

@@ -29,7 +29,7 @@ pub(super) fn open_calls(plan: &ScreenPlan, sheet: &Sheet) -> Result<(Vec<Source
     let mut sources = Vec::new();
     let mut first: Option<Matched> = None;
     for path in &plan.calls {
-        let reader = ingest::open(path)?;
+        let reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
         let matched = match_samples(&reader.header().samples, &rows, plan.allow_absent);
         let matched = matched.map_err(|problems| Error::Sheet {
             path: plan.sheet.clone(),
