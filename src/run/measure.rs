@@ -112,7 +112,14 @@ impl Inputs {
             failed: &failed,
         });
         let threads = plan.threads.unwrap_or_else(available_threads);
-        let collected = collect(&mut self.sources, &scheme, threads, table, &|_| ())?;
+        let collected = collect(
+            &mut self.sources,
+            &scheme,
+            &plan.masks,
+            threads,
+            table,
+            &|_| (),
+        )?;
         if collected.sums.kept == 0 {
             return Err(nothing_kept(plan, &collected));
         }
@@ -195,8 +202,10 @@ impl Inputs {
                 .chain(self.programme_file.clone())
                 .collect(),
             settings: settings
+                .into_iter()
+                .chain(plan.masks.settings())
                 .map(|(name, value)| (name.to_owned(), value))
-                .into(),
+                .collect(),
             methods: methods(),
             stamp: None,
         }
@@ -312,6 +321,11 @@ fn open_calls(plan: &MeasurePlan, sheet: &Sheet) -> Result<(Vec<Source>, Matched
     }
 }
 
+/// What was masked, by reason.
+fn told(masked: &BTreeMap<&'static str, u64>) -> impl Iterator<Item = (String, u64)> {
+    masked.iter().map(|(name, n)| ((*name).to_owned(), *n))
+}
+
 fn loci(all: &Collected) -> Loci {
     let set_aside = Verdict::ALL.iter().filter(|&&v| v != Verdict::Kept);
     let tally = &all.tally;
@@ -335,8 +349,13 @@ fn loci(all: &Collected) -> Loci {
                     all.verdicts.get(v).copied().unwrap_or(0),
                 )
             })
+            .chain(told(&all.masked.records))
             .collect::<BTreeMap<_, _>>(),
-        genotypes: genotypes.map(|(name, n)| (name.to_owned(), n)).into(),
+        genotypes: genotypes
+            .map(|(name, n)| (name.to_owned(), n))
+            .into_iter()
+            .chain(told(&all.masked.genotypes))
+            .collect(),
         panel: all.sums.panel.loci().len() as u64,
     }
 }
@@ -364,6 +383,7 @@ fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
         .verdicts
         .iter()
         .map(|(verdict, n)| format!("{} {n}", verdict.name()))
+        .chain(told(&all.masked.records).map(|(name, n)| format!("{name} {n}")))
         .collect();
     let problem = match records {
         0 => "there is no record".to_owned(),
