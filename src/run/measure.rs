@@ -1,11 +1,10 @@
 //! The main job: genotype calls and a sample sheet in, one report out.
 
 use std::collections::{BTreeMap, HashSet};
-use std::path::Path;
 use std::sync::Arc;
 
-use super::available_threads;
 use super::pipeline::{Collected, LocusTable, Source, collect};
+use super::{available_threads, input_file};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
 use crate::ingest::sheet::{Sheet, listed_samples, read_sheet};
@@ -357,22 +356,6 @@ fn loci(all: &Collected) -> Loci {
             .chain(told(&all.masked.genotypes))
             .collect(),
         panel: all.sums.panel.loci().len() as u64,
-    }
-}
-
-pub(super) fn input_file(
-    role: &str,
-    path: &Path,
-    format: &str,
-    bytes: u64,
-    sha256: String,
-) -> InputFile {
-    InputFile {
-        role: role.to_owned(),
-        name: path.display().to_string(),
-        format: format.to_owned(),
-        bytes,
-        sha256,
     }
 }
 

@@ -7,8 +7,7 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 use std::thread;
 
-use super::available_threads;
-use super::measure::input_file;
+use super::{available_threads, input_file};
 use inputs::{open_calls, scheme, verdicts, words};
 
 use super::pipeline::{Collected, Gather, RowMaker, Source, collect_into};
