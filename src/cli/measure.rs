@@ -7,6 +7,7 @@ use clap::error::ErrorKind;
 use clap::{Args, CommandFactory, ValueEnum};
 
 use super::common::{self, Running};
+use super::masks::MaskFlags;
 use crate::model::{MeasurePlan, PopulationSettings, SamplingPlan};
 
 /// Measures diversity, its change and effective size from genotype calls
@@ -83,6 +84,9 @@ pub(super) struct Flags {
     /// Put the time of the run into the report, which then differs from run to run
     #[arg(long, help_heading = "Output")]
     stamp: bool,
+
+    #[command(flatten)]
+    masks: MaskFlags,
 
     #[command(flatten)]
     running: Running,
@@ -163,6 +167,7 @@ impl Flags {
         self.check_files()?;
         let mut plan = MeasurePlan::new(self.calls, self.samples);
         plan.locus_map = self.locus_map;
+        plan.masks = self.masks.masks();
         plan.programme = self.programme.programme;
         plan.output = self.output.filter(|path| path.as_os_str() != "-");
         plan.loci_output = self.loci;

@@ -7,6 +7,7 @@
 mod common;
 mod design;
 mod forecast;
+mod masks;
 mod measure;
 mod page;
 mod rehearse;

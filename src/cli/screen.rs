@@ -6,6 +6,7 @@ use clap::error::ErrorKind;
 use clap::{Args, CommandFactory};
 
 use super::common::{self, Running};
+use super::masks::MaskFlags;
 use crate::model::{RunRule, ScreenPlan};
 
 /// Looks at the samples and loci themselves, before anything is measured
@@ -85,6 +86,9 @@ pub(super) struct Flags {
     list_loci: Option<u32>,
 
     #[command(flatten)]
+    masks: MaskFlags,
+
+    #[command(flatten)]
     running: Running,
 }
 
@@ -125,6 +129,7 @@ impl Flags {
         let mut plan = ScreenPlan::new(self.calls, self.samples);
         plan.output = self.output.filter(|path| path.as_os_str() != "-");
         plan.locus_map = self.locus_map;
+        plan.masks = self.masks.masks();
         plan.clean_sheet = self.write_sheet;
         plan.allow_absent = self.allow_absent;
         let number = |n: Option<u32>, default| n.map_or(default, |n| n as usize);

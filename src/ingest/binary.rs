@@ -85,6 +85,22 @@ impl<'a> Site<'a> {
         fully_read(&rest)
     }
 
+    /// Numbers of the filters; empty where none was applied.
+    pub fn filters(&self) -> Result<Vec<i32>, Fault> {
+        let mut rest = self.rest;
+        for _ in 0..self.allele_count {
+            rest.text()?;
+        }
+        let (kind, places) = rest.typed()?;
+        let width = kind.width();
+        let bytes = rest.values(kind, places, 1)?;
+        let number = |bytes: &[u8]| integer(width, bytes);
+        Ok(bytes
+            .chunks_exact(width.max(1))
+            .filter_map(number)
+            .collect())
+    }
+
     /// The values of the key with number `wanted`, among `samples` samples.
     pub fn genotypes(
         &self,
@@ -141,6 +157,15 @@ fn fully_read(block: &Cursor) -> Result<(), Fault> {
 }
 
 impl GenotypeBlock<'_> {
+    /// One value of a sample; none when missing or not there.
+    pub fn integer(&self, column: usize, place: usize) -> Option<i32> {
+        if place >= self.places || self.width == 0 {
+            return None;
+        }
+        let at = (column * self.places + place) * self.width;
+        integer(self.width, self.values.get(at..at + self.width)?)
+    }
+
     /// Reads all columns; those in use go to `row`.
     pub fn scan(&self, slots: &[u32], alleles: u32, row: &mut Row) -> Result<(), RowFlaw> {
         let size = self.width * self.places;
@@ -186,6 +211,17 @@ impl GenotypeBlock<'_> {
         }
         good
     }
+}
+
+/// An integer that is not one of the two reserved values.
+fn integer(width: usize, bytes: &[u8]) -> Option<i32> {
+    let value = match width {
+        1 => value::<1>(bytes),
+        2 => value::<2>(bytes),
+        4 => value::<4>(bytes),
+        _ => return None,
+    };
+    (value > i32::MIN + 1).then_some(value)
 }
 
 /// One value, with the two reserved ones for "end" and "missing" made alike in all widths.

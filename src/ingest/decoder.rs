@@ -1,5 +1,7 @@
 //! From an undecoded record to a locus and its verdict.
 
+mod masks;
+
 use std::path::PathBuf;
 use std::sync::Arc;
 

@@ -19,6 +19,8 @@ pub(super) struct Line<'a> {
     pub reference: &'a [u8],
     /// As written: parted by commas, or `.`.
     pub alternates: &'a [u8],
+    /// Names of filters, parted by semicolons.
+    pub filter: &'a [u8],
     pub format: &'a [u8],
     /// All sample columns.
     pub samples: &'a [u8],
@@ -42,7 +44,17 @@ impl<'a> Line<'a> {
             *field = &line[at..at + length];
             at += length + 1;
         }
-        let [contig, position, id, reference, alternates, _, _, _, format] = fields;
+        let [
+            contig,
+            position,
+            id,
+            reference,
+            alternates,
+            _,
+            filter,
+            _,
+            format,
+        ] = fields;
         let position = read_position(position).map_err(|fault| {
             // Columns that are not parted by tabs are the better explanation.
             let (found, expected) = (count_columns(line), samples + COLUMNS.len());
@@ -58,6 +70,7 @@ impl<'a> Line<'a> {
             id,
             reference,
             alternates,
+            filter,
             format,
             samples: &line[at..],
         })

@@ -11,12 +11,16 @@
 //! alleles named as written, in ascending order, the locus as identifier. Without a map of loci each
 //! locus stands on a contig of its own, which is what unlinked loci are. The table is held in memory.
 
+mod map;
+
 use std::collections::{BTreeMap, BTreeSet, HashMap};
 use std::path::Path;
 
 use super::sheet::table::{self, Record, Table};
 use crate::error::{Error, Result};
 use crate::model::{Problem, nearest};
+
+pub(super) use map::{LocusMap, read_locus_map};
 
 /// More alleles than this are no locus: a column is in the wrong place, or lengths are not binned.
 const MOST_ALLELES: usize = 200;
@@ -39,55 +43,6 @@ pub(super) fn looks_tidy(start: &[u8]) -> bool {
         cells.map(|cell| cell.trim().trim_matches('"').to_lowercase())
     };
     !line.starts_with('#') && words().any(|w| w == "sample") && words().any(|w| w == "locus")
-}
-
-/// Where a locus is: contig and position.
-pub(super) type LocusMap = HashMap<String, (String, u64)>;
-
-/// Reads a map of loci: a table with `locus`, `contig` and `position`.
-///
-/// # Errors
-/// [`Error::Io`] and [`Error::Sheet`] with every problem.
-pub(super) fn read_locus_map(path: &Path) -> Result<LocusMap> {
-    let bytes = std::fs::read(path).map_err(|e| Error::io(path, "read", e))?;
-    locus_map(&bytes).map_err(|problems| sheet(path, problems))
-}
-
-fn locus_map(bytes: &[u8]) -> std::result::Result<LocusMap, Vec<Problem>> {
-    let table = table::split(bytes)?;
-    let [locus, contig, position] = columns(&table.header, ["locus", "contig", "position"])?;
-    let (mut map, mut problems) = (LocusMap::new(), Vec::new());
-    for record in &table.records {
-        let at = |column| cell(record, column);
-        let place = (at(locus), at(contig), at(position));
-        let (Ok(name), Ok(contig), Ok(text)) = place else {
-            problems.push(not_text(record.row));
-            continue;
-        };
-        match text.parse::<u64>() {
-            Ok(position) if position > 0 && !name.is_empty() && !contig.is_empty() => {
-                if map
-                    .insert(name.to_string(), (contig.to_string(), position))
-                    .is_some()
-                {
-                    problems.push(Problem::at(
-                        record.row,
-                        format!("locus '{name}' is listed twice"),
-                        "keep one row",
-                    ));
-                }
-            }
-            _ => problems.push(Problem::at(
-                record.row,
-                format!("locus '{name}', contig '{contig}', position '{text}' is no place"),
-                "write all three; positions are whole numbers from 1 up",
-            )),
-        }
-    }
-    match problems.is_empty() {
-        true => Ok(map),
-        false => Err(problems),
-    }
 }
 
 /// The text of calls that a tidy table stands for.
@@ -432,7 +387,7 @@ mod tests {
     use super::*;
 
     fn text(table: &str, map: Option<&str>) -> String {
-        let map = map.map(|map| locus_map(map.as_bytes()).unwrap());
+        let map = map.map(|map| map::locus_map(map.as_bytes()).unwrap());
         String::from_utf8(calls(table.as_bytes(), map.as_ref()).unwrap()).unwrap()
     }
 
@@ -463,7 +418,7 @@ mod tests {
         let text = text(TABLE, Some(map));
         let places: Vec<&str> = records(&text)[1..].iter().map(|r| &r[..6]).collect();
         assert_eq!(places, ["c1\t70\t", "c1\t500"]);
-        let short = locus_map(b"locus,contig,position\nms1,c1,5\n").unwrap();
+        let short = map::locus_map(b"locus,contig,position\nms1,c1,5\n").unwrap();
         let problems = calls(TABLE.as_bytes(), Some(&short)).unwrap_err();
         assert_eq!(problems[0].row, Some(3));
     }

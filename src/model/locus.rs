@@ -110,6 +110,15 @@ impl Genotypes {
         }
     }
 
+    /// Makes the genotype of a slot missing.
+    pub fn clear(&mut self, slot: usize) {
+        if self.is_biallelic() {
+            self.dosages[slot] = MISSING_DOSAGE;
+        } else {
+            self.pairs[slot] = [MISSING_ALLELE; 2];
+        }
+    }
+
     /// The genotype of a slot as two allele codes, the lower first; `None` when missing.
     pub fn pair(&self, slot: usize) -> Option<[u16; 2]> {
         if self.is_biallelic() {

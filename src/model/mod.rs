@@ -2,6 +2,7 @@
 
 mod comparisons;
 mod locus;
+mod masks;
 mod matching;
 mod notes;
 mod plan;
@@ -13,6 +14,7 @@ pub use comparisons::{Compared, comparisons};
 pub use locus::{
     CallTally, Genotypes, Locus, MAX_ALLELES, MISSING_ALLELE, MISSING_DOSAGE, Verdict,
 };
+pub use masks::{MaskTally, Masks};
 pub use matching::{Matched, UNUSED_COLUMN, match_samples, told_absent};
 pub use notes::{Note, Problem, nearest, plain_letters, spell_out};
 pub use plan::{

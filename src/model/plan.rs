@@ -2,7 +2,7 @@
 
 use std::path::PathBuf;
 
-use super::{PopulationSettings, SamplingPlan, Strata};
+use super::{Masks, PopulationSettings, SamplingPlan, Strata};
 
 /// Level of every interval. The level that management plans and the literature report.
 pub const DEFAULT_LEVEL: f64 = 0.95;
@@ -33,6 +33,8 @@ pub struct MeasurePlan {
     pub calls: Vec<PathBuf>,
     /// The sample sheet.
     pub sheet: PathBuf,
+    /// What is masked while reading.
+    pub masks: Masks,
     /// Where the loci of a tidy genotype table are.
     pub locus_map: Option<PathBuf>,
     /// The programme file.
@@ -71,6 +73,7 @@ impl MeasurePlan {
             calls,
             sheet,
             locus_map: None,
+            masks: Masks::default(),
             programme: None,
             output: None,
             loci_output: None,

@@ -2,6 +2,8 @@
 
 use std::path::PathBuf;
 
+use super::Masks;
+
 /// Loci of two alleles whose genotypes are kept for pairs. Pairs gain nothing beyond; 2000 samples
 /// take 25 MB.
 pub const DEFAULT_SCREEN_LOCI: usize = 50_000;
@@ -52,6 +54,8 @@ pub struct ScreenPlan {
     pub calls: Vec<PathBuf>,
     /// The sample sheet.
     pub sheet: PathBuf,
+    /// What is masked while reading.
+    pub masks: Masks,
     /// Where the loci of a tidy genotype table are.
     pub locus_map: Option<PathBuf>,
     /// Where the report goes; standard output when absent.
@@ -89,6 +93,7 @@ impl ScreenPlan {
             calls,
             sheet,
             locus_map: None,
+            masks: Masks::default(),
             output: None,
             clean_sheet: None,
             allow_absent: false,

@@ -68,6 +68,8 @@ pub struct ScreenedLoci {
     pub varying: u64,
     /// Records set aside, by reason.
     pub set_aside: BTreeMap<String, u64>,
+    /// Genotypes taken as missing by masks, by reason.
+    pub masked_genotypes: BTreeMap<String, u64>,
     /// Loci of two alleles on which pairs are compared.
     pub compared_biallelic: u64,
     /// Loci of more alleles on which pairs are compared.

@@ -1,11 +1,10 @@
 //! The main job: genotype calls and a sample sheet in, one report out.
 
 use std::collections::{BTreeMap, HashSet};
-use std::path::Path;
 use std::sync::Arc;
 
-use super::available_threads;
 use super::pipeline::{Collected, LocusTable, Source, collect};
+use super::{available_threads, input_file};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
 use crate::ingest::sheet::{Sheet, listed_samples, read_sheet};
@@ -112,7 +111,14 @@ impl Inputs {
             failed: &failed,
         });
         let threads = plan.threads.unwrap_or_else(available_threads);
-        let collected = collect(&mut self.sources, &scheme, threads, table, &|_| ())?;
+        let collected = collect(
+            &mut self.sources,
+            &scheme,
+            &plan.masks,
+            threads,
+            table,
+            &|_| (),
+        )?;
         if collected.sums.kept == 0 {
             return Err(nothing_kept(plan, &collected));
         }
@@ -195,8 +201,10 @@ impl Inputs {
                 .chain(self.programme_file.clone())
                 .collect(),
             settings: settings
+                .into_iter()
+                .chain(plan.masks.settings())
                 .map(|(name, value)| (name.to_owned(), value))
-                .into(),
+                .collect(),
             methods: methods(),
             stamp: None,
         }
@@ -312,6 +320,11 @@ fn open_calls(plan: &MeasurePlan, sheet: &Sheet) -> Result<(Vec<Source>, Matched
     }
 }
 
+/// What was masked, by reason.
+fn told(masked: &BTreeMap<&'static str, u64>) -> impl Iterator<Item = (String, u64)> {
+    masked.iter().map(|(name, n)| ((*name).to_owned(), *n))
+}
+
 fn loci(all: &Collected) -> Loci {
     let set_aside = Verdict::ALL.iter().filter(|&&v| v != Verdict::Kept);
     let tally = &all.tally;
@@ -335,25 +348,14 @@ fn loci(all: &Collected) -> Loci {
                     all.verdicts.get(v).copied().unwrap_or(0),
                 )
             })
+            .chain(told(&all.masked.records))
             .collect::<BTreeMap<_, _>>(),
-        genotypes: genotypes.map(|(name, n)| (name.to_owned(), n)).into(),
+        genotypes: genotypes
+            .map(|(name, n)| (name.to_owned(), n))
+            .into_iter()
+            .chain(told(&all.masked.genotypes))
+            .collect(),
         panel: all.sums.panel.loci().len() as u64,
-    }
-}
-
-pub(super) fn input_file(
-    role: &str,
-    path: &Path,
-    format: &str,
-    bytes: u64,
-    sha256: String,
-) -> InputFile {
-    InputFile {
-        role: role.to_owned(),
-        name: path.display().to_string(),
-        format: format.to_owned(),
-        bytes,
-        sha256,
     }
 }
 
@@ -364,6 +366,7 @@ fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
         .verdicts
         .iter()
         .map(|(verdict, n)| format!("{} {n}", verdict.name()))
+        .chain(told(&all.masked.records).map(|(name, n)| format!("{name} {n}")))
         .collect();
     let problem = match records {
         0 => "there is no record".to_owned(),

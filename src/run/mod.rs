@@ -10,12 +10,15 @@ mod verdict;
 pub use measure::measure;
 pub use screen::screen;
 
+use std::path::Path;
+
 use schemars::schema_for;
 
 use crate::cli::{RehearsePlan, Work};
 use crate::error::{Error, Result};
 use crate::outlook;
 use crate::report::summary::{screen_summary, summary};
+use crate::report::wire::InputFile;
 use crate::report::{self, Output, page};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
@@ -63,6 +66,17 @@ fn rehearse(plan: &RehearsePlan) -> Result<()> {
         }
     }
     Ok(())
+}
+
+/// An input file, for provenance.
+fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String) -> InputFile {
+    InputFile {
+        role: role.to_owned(),
+        name: path.display().to_string(),
+        format: format.to_owned(),
+        bytes,
+        sha256,
+    }
 }
 
 /// The threads used when none are asked for: as many as the machine grants.

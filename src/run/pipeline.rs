@@ -15,7 +15,7 @@ use crossbeam_channel::{Receiver, Sender, bounded, unbounded};
 use crate::error::Result;
 use crate::ingest::{CallsReader, Decoder, RecordBatch, Remarks, Selection};
 use crate::merge::{LocusView, Scheme, Sums};
-use crate::model::{CallTally, Locus, Verdict};
+use crate::model::{CallTally, Locus, MaskTally, Masks, Verdict};
 
 /// Batches in flight for each worker: enough that nobody waits, few enough to bound memory.
 const BATCHES_A_WORKER: usize = 3;
@@ -64,6 +64,8 @@ pub struct Collected<S = Sums> {
     pub verdicts: BTreeMap<Verdict, u64>,
     /// Genotypes by what became of them.
     pub tally: CallTally,
+    /// Records and genotypes by what masked them.
+    pub masked: MaskTally,
     /// What was remarked on records, by source.
     pub remarks: Vec<Remarks>,
 }
@@ -88,12 +90,13 @@ pub struct LocusTable<'a> {
 pub fn collect(
     sources: &mut [Source],
     scheme: &Arc<Scheme>,
+    masks: &Masks,
     threads: usize,
     table: Option<LocusTable>,
     progress: &(dyn Fn(u64) + Sync),
 ) -> Result<Collected> {
     let empty = || Sums::new(Arc::clone(scheme));
-    collect_into(sources, &empty, threads, table, progress)
+    collect_into(sources, &empty, masks, threads, table, progress)
 }
 
 /// The same for anything that gathers; `empty` makes the identity of its merge.
@@ -103,6 +106,7 @@ pub fn collect(
 pub fn collect_into<S: Gather>(
     sources: &mut [Source],
     empty: &(dyn Fn() -> S + Sync),
+    masks: &Masks,
     threads: usize,
     mut table: Option<LocusTable>,
     progress: &(dyn Fn(u64) + Sync),
@@ -119,7 +123,7 @@ pub fn collect_into<S: Gather>(
             .map(|_| {
                 let decoder = |s: &Source| Decoder::new(&s.reader, s.selection.clone());
                 let decoders = sources.iter().map(decoder).collect();
-                let mut worker = Worker::new(decoders, empty(), row);
+                let mut worker = Worker::new(decoders, empty(), masks, row);
                 let (work_in, done_out, spent_out) =
                     (work_in.clone(), done_out.clone(), spent_out.clone());
                 scope.spawn(move || {
@@ -231,6 +235,7 @@ fn in_file_order(done: Receiver<Done>, table: &mut Option<LocusTable>) -> Result
 
 /// One worker: everything it needs to turn batches into sums.
 struct Worker<'a, S> {
+    masks: Option<&'a Masks>,
     decoders: Vec<Decoder>,
     row: Option<RowMaker<'a>>,
     locus: Locus,
@@ -242,18 +247,21 @@ struct Part<S> {
     sums: S,
     verdicts: BTreeMap<Verdict, u64>,
     tally: CallTally,
+    masked: MaskTally,
     remarks: Vec<Remarks>,
 }
 
 impl<'a, S: Gather> Worker<'a, S> {
-    fn new(decoders: Vec<Decoder>, sums: S, row: Option<RowMaker<'a>>) -> Self {
+    fn new(decoders: Vec<Decoder>, sums: S, masks: &'a Masks, row: Option<RowMaker<'a>>) -> Self {
         let part = Part {
             sums,
             verdicts: BTreeMap::new(),
             tally: CallTally::default(),
+            masked: MaskTally::default(),
             remarks: Vec::new(),
         };
         Worker {
+            masks: (!masks.is_empty()).then_some(masks),
             decoders,
             row,
             locus: Locus::default(),
@@ -273,6 +281,12 @@ impl<'a, S: Gather> Worker<'a, S> {
         let mut rows = Vec::new();
         for i in 0..work.batch.len() {
             let verdict = decoder.decode(&work.batch, i, &mut self.locus)?;
+            if let Some(masks) = self.masks.filter(|_| verdict == Verdict::Kept) {
+                let masked = &mut self.part.masked;
+                if !decoder.mask(masks, &work.batch, i, &mut self.locus, masked)? {
+                    continue;
+                }
+            }
             *self.part.verdicts.entry(verdict).or_default() += 1;
             if verdict == Verdict::Kept {
                 self.part.sums.take(&self.locus, self.row, &mut rows);
@@ -296,11 +310,13 @@ fn add_up<S: Gather>(sums: S, parts: Vec<Part<S>>) -> Collected<S> {
         sums,
         verdicts: BTreeMap::new(),
         tally: CallTally::default(),
+        masked: MaskTally::default(),
         remarks: Vec::new(),
     };
     for part in parts {
         all.sums.merge(part.sums);
         all.tally.merge(&part.tally);
+        all.masked.merge(&part.masked);
         for (verdict, n) in part.verdicts {
             *all.verdicts.entry(verdict).or_default() += n;
         }

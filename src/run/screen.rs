@@ -7,8 +7,7 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 use std::thread;
 
-use super::available_threads;
-use super::measure::input_file;
+use super::{available_threads, input_file};
 use inputs::{open_calls, scheme, verdicts, words};
 
 use super::pipeline::{Collected, Gather, RowMaker, Source, collect_into};
@@ -58,7 +57,7 @@ pub fn screen(plan: &ScreenPlan, arguments: Vec<String>) -> Result<ScreenReport>
     let scheme = Arc::new(scheme(plan, &matched.strata, &words));
     let threads = plan.threads.unwrap_or_else(available_threads);
     let empty = || ScreenSums::new(Arc::clone(&scheme));
-    let all = collect_into(&mut sources, &empty, threads, None, &|_| ())?;
+    let all = collect_into(&mut sources, &empty, &plan.masks, threads, None, &|_| ())?;
     if all.sums.kept == 0 {
         return Err(nothing_kept(plan));
     }
@@ -204,8 +203,10 @@ impl Inputs<'_> {
             arguments,
             inputs: calls.chain([sheet]).collect(),
             settings: settings
+                .into_iter()
+                .chain(plan.masks.settings())
                 .map(|(name, value)| (name.to_owned(), value))
-                .into(),
+                .collect(),
             methods: screen_methods(),
             stamp: None,
         }
@@ -319,7 +320,17 @@ fn loci(
         read: all.verdicts.values().sum(),
         kept: all.sums.kept,
         varying: all.sums.varying,
-        set_aside: set_aside.map(|v| (v.name().to_owned(), count(v))).collect(),
+        set_aside: set_aside
+            .map(|v| (v.name(), count(v)))
+            .chain(all.masked.records.iter().map(|(name, n)| (*name, *n)))
+            .map(|(name, n)| (name.to_owned(), n))
+            .collect(),
+        masked_genotypes: all
+            .masked
+            .genotypes
+            .iter()
+            .map(|(name, n)| ((*name).to_owned(), *n))
+            .collect(),
         compared_biallelic: genotypes.places.len() as u64,
         compared_multiallelic: genotypes.repeats.len() as u64,
         covered_bp: reach,
