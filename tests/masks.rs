@@ -179,6 +179,7 @@ fn masks_give_what_masking_by_hand_gives() {
             assert_eq!(read[key], by_hand[key], "{options:?} {key}");
         }
         assert_eq!(read["loci"]["kept"], by_hand["loci"]["kept"]);
+        assert_eq!(read["loci"]["read"], 7);
         assert_eq!(
             without_provenance(read),
             without_provenance(binary),

@@ -136,7 +136,7 @@ fn rows<'a>(subject: &Subject<'a>) -> Vec<&'a EffectiveSize> {
         let same = |o: &&EffectiveSize| {
             o.headline && (&o.method, &o.from, &o.to) == (&e.method, &e.from, &e.to)
         };
-        !e.headline && e.variant.is_some() && subject.sizes.iter().any(|o| same(&o))
+        !e.headline && e.variant.is_some() && subject.sizes.iter().any(same)
     };
     let mut rows = subject.sizes.clone();
     rows.retain(|e| !is_variant(e));
@@ -236,9 +236,7 @@ fn look(method: &str) -> (&'static str, Shape) {
 /// Visits and method in a line, with the plan where a population has estimates under both.
 fn short_label(subject: &Subject, e: &EffectiveSize) -> String {
     let other_plan = |o: &&EffectiveSize| o.plan.is_some() && o.plan != e.plan;
-    let plan = e
-        .plan
-        .filter(|_| subject.sizes.iter().any(|o| other_plan(o)));
+    let plan = e.plan.filter(|_| subject.sizes.iter().any(other_plan));
     let plan = plan.map_or_else(String::new, |plan| format!(", plan {}", plan_name(plan)));
     format!("{}: {}{plan}", when(e), method_name(&e.method))
 }
