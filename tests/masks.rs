@@ -89,7 +89,8 @@ fn masks_give_what_masking_by_hand_gives() {
     let all = |_: &str| true;
     type Keep = fn(&str) -> bool;
     // Options; what is left by hand; the reason counted, and how often.
-    let cases: [(&[&str], Keep, &[usize], &str, u64); 9] = [
+    type Case<'a> = (&'a [&'a str], Keep, &'a [usize], &'a str, u64);
+    let cases: [Case; 9] = [
         (
             &["--mask-below-gq", "10"],
             |_| true,
