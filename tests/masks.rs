@@ -89,7 +89,8 @@ fn masks_give_what_masking_by_hand_gives() {
     let all = |_: &str| true;
     type Keep = fn(&str) -> bool;
     // Options; what is left by hand; the reason counted, and how often.
-    let cases: [(&[&str], Keep, &[usize], &str, u64); 9] = [
+    type Case<'a> = (&'a [&'a str], Keep, &'a [usize], &'a str, u64);
+    let cases: [Case; 9] = [
         (
             &["--mask-below-gq", "10"],
             |_| true,
@@ -179,6 +180,7 @@ fn masks_give_what_masking_by_hand_gives() {
             assert_eq!(read[key], by_hand[key], "{options:?} {key}");
         }
         assert_eq!(read["loci"]["kept"], by_hand["loci"]["kept"]);
+        assert_eq!(read["loci"]["read"], 7);
         assert_eq!(
             without_provenance(read),
             without_provenance(binary),

@@ -281,13 +281,13 @@ impl<'a, S: Gather> Worker<'a, S> {
         let mut rows = Vec::new();
         for i in 0..work.batch.len() {
             let verdict = decoder.decode(&work.batch, i, &mut self.locus)?;
+            *self.part.verdicts.entry(verdict).or_default() += 1;
             if let Some(masks) = self.masks.filter(|_| verdict == Verdict::Kept) {
                 let masked = &mut self.part.masked;
                 if !decoder.mask(masks, &work.batch, i, &mut self.locus, masked)? {
                     continue;
                 }
             }
-            *self.part.verdicts.entry(verdict).or_default() += 1;
             if verdict == Verdict::Kept {
                 self.part.sums.take(&self.locus, self.row, &mut rows);
             }
