@@ -251,7 +251,7 @@ fn newcomers_from_the_other_lake() {
 }
 
 // Exact enumeration (matrix of 2N = 100, flat prior replaced by the spectrum's, so only the order is
-// told here): the chances add up to 1, and a scarce allele of the report is found by its code.
+// told here): the chances add up to 1, and a scarce allele of the report is found as it is written.
 #[test]
 fn watched_alleles_of_the_report() {
     let case = Case::new();

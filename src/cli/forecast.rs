@@ -35,8 +35,8 @@ pub(super) struct Flags {
     ///
     /// A table with the columns contig, position and allele; optional population,
     /// selection_coefficient, copies with gene_copies (of the latest visit; from the report where it
-    /// lists the allele as scarce, by its code, 0 for the reference), and source_frequency (where
-    /// newcomers come from).
+    /// lists the allele as scarce, written as in the calls), and source_frequency (where newcomers
+    /// come from).
     #[arg(long, value_name = "FILE")]
     watch: Option<PathBuf>,
 

@@ -36,6 +36,7 @@ pub mod programme;
 mod reader;
 mod remarks;
 mod scan;
+pub mod settings;
 pub mod sheet;
 mod source;
 mod split;

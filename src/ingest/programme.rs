@@ -29,11 +29,13 @@
 use std::path::{Path, PathBuf};
 
 use sha2::{Digest, Sha256};
-use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
+use super::settings::{
+    ABOVE_ZERO, AT_LEAST_TWO, AT_LEAST_ZERO, Value, Walker, find, integer, number, walk,
+};
 use crate::error::{Error, Result};
-use crate::model::{LifeHistory, PopulationSettings, Problem, Programme, SamplingPlan, nearest};
+use crate::model::{LifeHistory, PopulationSettings, Problem, Programme, SamplingPlan};
 
 /// Keys of a population's settings, at the top and in its table.
 const SETTINGS: [&str; 10] = [
@@ -93,52 +95,10 @@ pub fn read_programme(path: &Path) -> Result<ProgrammeFile> {
 
 /// The programme given as the bytes of its file, or every problem in the order of the file.
 pub fn parse_programme(bytes: &[u8]) -> std::result::Result<Programme, Vec<Problem>> {
-    let text = std::str::from_utf8(bytes).map_err(|e| {
-        let row = line_at(bytes, e.valid_up_to());
-        vec![Problem::at(
-            row,
-            "the text is not UTF-8",
-            "save the file as UTF-8",
-        )]
-    })?;
-    let text = text.strip_prefix('\u{feff}').unwrap_or(text);
-    let (document, broken) = DeTable::parse_recoverable(text);
-    if !broken.is_empty() {
-        // Values near broken syntax are guesses, so they are not judged.
-        let told = |e: &toml::de::Error| Problem {
-            row: e.span().map(|span| line_at(text.as_bytes(), span.start)),
-            what: format!("this is not TOML: {}", e.message()),
-            cure: "write 'key = value', text in quotes, and tables as [name]".to_string(),
-        };
-        let mut problems: Vec<Problem> = broken.iter().map(told).collect();
-        problems.sort_by_key(|problem| problem.row);
-        return Err(problems);
-    }
-    let mut walker = Walker {
-        text,
-        problems: Vec::new(),
-    };
-    let programme = walker.programme(document.get_ref());
-    if walker.problems.is_empty() {
-        Ok(programme)
-    } else {
-        walker.problems.sort_by_key(|problem| problem.row);
-        Err(walker.problems)
-    }
+    walk(bytes, |walker, top| walker.programme(top))
 }
 
-/// 1-based line of a byte.
-fn line_at(text: &[u8], byte: usize) -> u64 {
-    1 + text.iter().take(byte).filter(|&&b| b == b'\n').count() as u64
-}
-
-type Value<'a> = Spanned<DeValue<'a>>;
-
-struct Walker<'a> {
-    text: &'a str,
-    problems: Vec<Problem>,
-}
-
+/// What a programme holds, on top of what every settings file has.
 impl Walker<'_> {
     fn programme(&mut self, top: &DeTable) -> Programme {
         self.refuse_unknown(top, &[&SETTINGS[..], &["population"]].concat(), "");
@@ -187,38 +147,6 @@ impl Walker<'_> {
         }
     }
 
-    /// A key that nobody reads is a setting that silently does nothing: refused.
-    fn refuse_unknown(&mut self, table: &DeTable, known: &[&str], whose: &str) {
-        for key in table.keys() {
-            let name = key.get_ref().as_ref();
-            if known.contains(&name) {
-                continue;
-            }
-            let cure = match nearest(name, known.iter().copied()) {
-                Some(near) => format!("did you mean '{near}'?"),
-                None => format!("the keys are {}", known.join(", ")),
-            };
-            let row = line_at(self.text.as_bytes(), key.span().start);
-            self.problems.push(Problem::at(
-                row,
-                format!("unknown key '{name}'{whose}"),
-                cure,
-            ));
-        }
-    }
-
-    fn table<'t, 'v>(&mut self, value: &'t Value<'v>, name: &str) -> Option<&'t DeTable<'v>> {
-        if let DeValue::Table(table) = value.get_ref() {
-            return Some(table);
-        }
-        self.complain(
-            value,
-            format!("{name} is not a table"),
-            &format!("write it as [{name}]"),
-        );
-        None
-    }
-
     /// A label or a year.
     fn label(&mut self, value: &Value, name: &str) -> Option<String> {
         let text = match value.get_ref() {
@@ -235,19 +163,6 @@ impl Walker<'_> {
             return None;
         }
         Some(text)
-    }
-
-    fn number(&mut self, table: &DeTable, name: &str, bound: Bound) -> Option<f64> {
-        let value = find(table, name)?;
-        let number = number(value).filter(|&x| x.is_finite() && (bound.holds)(x));
-        if number.is_none() {
-            self.complain(
-                value,
-                format!("{name} is not a number {}", bound.words),
-                "write digits without quotes, with a dot as decimal mark",
-            );
-        }
-        number
     }
 
     fn plan(&mut self, value: &Value) -> Option<SamplingPlan> {
@@ -336,58 +251,12 @@ impl Walker<'_> {
             _ => {
                 self.complain(
                     value,
-                    "family_sizes is not a list of whole numbers for at least two parents".into(),
+                    "family_sizes is not a list of whole numbers for at least two parents",
                     "write the offspring of each parent, zeros included: [0, 2, 3, 1]",
                 );
                 Vec::new()
             }
         }
-    }
-
-    fn complain(&mut self, value: &Value, what: String, cure: &str) {
-        let row = line_at(self.text.as_bytes(), value.span().start);
-        self.problems.push(Problem::at(row, what, cure));
-    }
-}
-
-/// What a number must be, as a test and in words.
-#[derive(Clone, Copy)]
-struct Bound {
-    holds: fn(f64) -> bool,
-    words: &'static str,
-}
-
-const ABOVE_ZERO: Bound = Bound {
-    holds: |x| x > 0.0,
-    words: "above 0",
-};
-const AT_LEAST_ZERO: Bound = Bound {
-    holds: |x| x >= 0.0,
-    words: "of 0 or more",
-};
-const AT_LEAST_TWO: Bound = Bound {
-    holds: |x| x >= 2.0,
-    words: "of 2 or more",
-};
-
-fn find<'t, 'v>(table: &'t DeTable<'v>, name: &str) -> Option<&'t Value<'v>> {
-    table
-        .iter()
-        .find(|(key, _)| key.get_ref().as_ref() == name)
-        .map(|(_, value)| value)
-}
-
-fn integer(value: &Value) -> Option<i64> {
-    match value.get_ref() {
-        DeValue::Integer(digits) => i64::from_str_radix(digits.as_str(), digits.radix()).ok(),
-        _ => None,
-    }
-}
-
-fn number(value: &Value) -> Option<f64> {
-    match value.get_ref() {
-        DeValue::Float(digits) => digits.as_str().parse().ok(),
-        _ => integer(value).map(|whole| whole as f64),
     }
 }
 

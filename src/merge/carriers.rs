@@ -22,8 +22,8 @@ pub struct ScarceAllele {
     pub contig: String,
     /// 1-based position.
     pub position: u64,
-    /// Allele code.
-    pub allele: u16,
+    /// The allele as written.
+    pub allele: Vec<u8>,
     /// Gene copies typed.
     pub typed: u32,
     /// Carriers, counted within the stratum.
@@ -92,7 +92,7 @@ impl Carriers {
             copies,
             contig: locus.contig.clone(),
             position: locus.position,
-            allele,
+            allele: locus.allele(allele.into()).unwrap_or_default().to_vec(),
             typed,
             carriers: carriers.into_iter().map(|(i, _)| i).collect(),
         });

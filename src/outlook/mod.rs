@@ -6,5 +6,4 @@ pub mod losses;
 pub mod outliers;
 mod passage;
 pub mod rehearse;
-pub mod settings;
 pub mod verdict;

@@ -486,8 +486,8 @@ pub struct AtRisk {
     pub contig: String,
     /// 1-based position.
     pub position: u64,
-    /// Allele code: 0 is the reference.
-    pub allele: u32,
+    /// The allele as written.
+    pub allele: String,
     /// Copies in the latest sample.
     pub copies: u64,
     /// Gene copies typed.

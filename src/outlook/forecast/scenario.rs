@@ -6,11 +6,11 @@ use toml::de::DeTable;
 
 use super::Start;
 use crate::error::{Error, Problem, Result};
-use crate::model::{nearest, spell_out};
-use crate::ne::demographic::{constant_population, sex_ratio};
-use crate::outlook::settings::{
+use crate::ingest::settings::{
     ABOVE_ZERO, AT_LEAST_ONE, AT_LEAST_TWO, AT_LEAST_ZERO, RATIO, Value, Walker, find, walk,
 };
+use crate::model::{nearest, spell_out};
+use crate::ne::demographic::{constant_population, sex_ratio};
 
 /// Effective size over census size where a scenario gives a census and no ratio (Frankham 1995).
 const DEFAULT_RATIO: f64 = 0.1;

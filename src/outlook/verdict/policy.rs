@@ -7,10 +7,10 @@ use std::path::Path;
 use toml::de::DeTable;
 
 use crate::error::{Error, Problem, Result};
-use crate::model::nearest;
-use crate::outlook::settings::{
+use crate::ingest::settings::{
     ABOVE_ZERO, AT_LEAST_ZERO, FINITE, RATIO, Value, Walker, find, walk,
 };
+use crate::model::nearest;
 
 /// The policy used when none is given, and a start for one's own.
 pub const DEFAULT_POLICY: &str = include_str!("default_policy.toml");

@@ -48,7 +48,7 @@ pub fn at_risk(findings: &Findings) -> Vec<wire::AtRisk> {
                 stratum: stratum.name.clone(),
                 contig: allele.contig.clone(),
                 position: allele.position,
-                allele: allele.allele.into(),
+                allele: String::from_utf8_lossy(&allele.allele).into_owned(),
                 copies: allele.copies.into(),
                 gene_copies: allele.typed.into(),
                 carriers: allele.carriers.iter().map(name).collect(),

@@ -145,7 +145,7 @@ fn listed(report: &Report, population: &str, allele: &Watched) -> Option<(u32, u
             a.population == population
                 && a.contig == allele.contig
                 && a.position == allele.position
-                && a.allele.to_string() == allele.allele
+                && a.allele == allele.allele
         })
         .map(|a| (a.copies as u32, a.gene_copies as u32))
 }
@@ -176,8 +176,8 @@ fn not_listed(report: &Report, allele: &Watched) -> Problem {
                 "allele {} at {place} is not listed in the report",
                 allele.allele
             ),
-            "the report lists scarce alleles (at_risk) by code, 0 for the reference; for any other \
-             give copies and gene_copies of the latest visit",
+            "the report lists scarce alleles (at_risk) as written in the calls; for any other give \
+             copies and gene_copies of the latest visit",
         ),
     }
 }

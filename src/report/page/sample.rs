@@ -275,7 +275,7 @@ fn at_risk() -> Vec<AtRisk> {
         stratum: "Aldermere@2024".to_owned(),
         contig: "chr3".to_owned(),
         position,
-        allele: 1,
+        allele: "T".to_owned(),
         copies: carriers.len() as u64,
         gene_copies: 56,
         carriers: carriers.iter().map(|&c| c.to_owned()).collect(),

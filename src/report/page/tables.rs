@@ -172,7 +172,7 @@ pub fn at_risk(alleles: &[AtRisk]) -> Table {
             Cell::from(a.stratum.as_str()),
             Cell::from(a.contig.as_str()),
             Cell::from(a.position),
-            Cell::from(u64::from(a.allele)),
+            Cell::from(cut(&a.allele)),
             Cell::from(a.copies),
             Cell::from(a.gene_copies),
             Cell::from(a.carriers.join(", ")),

@@ -294,14 +294,16 @@ impl Walker<'_> {
     }
 }
 
-fn integer(value: &Value) -> Option<i64> {
+/// A whole number, as written.
+pub(super) fn integer(value: &Value) -> Option<i64> {
     match value.get_ref() {
         DeValue::Integer(digits) => i64::from_str_radix(digits.as_str(), digits.radix()).ok(),
         _ => None,
     }
 }
 
-fn number(value: &Value) -> Option<f64> {
+/// A number, whole or not.
+pub(super) fn number(value: &Value) -> Option<f64> {
     match value.get_ref() {
         DeValue::Float(digits) => digits.as_str().parse().ok(),
         _ => integer(value).map(|whole| whole as f64),
