@@ -19,8 +19,8 @@
 //! batch of 256 rows is multiplied in f64: every product of two cells of z is an integer of at most
 //! 2^44, so every partial sum is an integer of at most 2^52, which f64 holds exactly whatever the
 //! order and whether or not the processor fuses multiply and add. h (k-1) < 1 and b (k-1) <= 1/10,
-//! because n >= 10 typed individuals show at most n alleles that are no singletons: their partial
-//! sums stay below 2^51. Batches are added up in i64, and in i128 beyond 2^18 rows. Rounding moves
+//! because n >= 10 typed individuals show at most n alleles that are no singletons; they are added as
+//! integers below 2^43. Batches are added up in i64, and in i128 beyond 2^18 rows. Rounding moves
 //! the excess of linkage over sampling by less than 1e-7 of itself (measured in the tests).
 //!
 //! # Memory
@@ -30,6 +30,7 @@
 //! loci pass, at most 7 and in practice 3. Independent of the number of loci.
 
 mod batch;
+mod missing;
 mod pairs;
 mod sums;
 #[cfg(test)]
@@ -42,11 +43,10 @@ use std::ops::Range;
 use crate::locus::Counts;
 use crate::model::Genotypes;
 
-use batch::{
-    LocusWeights, Product, TERM_BITS, TypedRow, VECTOR_BITS, WEIGHT_BITS, Workbench, power_of_two,
-};
+use batch::{LocusWeights, Product, TERM_BITS, VECTOR_BITS, WEIGHT_BITS, Workbench, power_of_two};
+use missing::MissingSums;
 pub use pairs::{ContigPairs, PairSums};
-use sums::{BinSums, ContigSums, MissingSums, Triangle, TypedTally};
+use sums::{BinSums, ContigSums, TypedTally};
 
 /// The most individuals of one stratum for which matrices are kept: beyond, time and memory grow
 /// with the square while the precision gained is small beside that of the loci.
@@ -149,6 +149,7 @@ pub struct GramStratum {
     contigs: BTreeMap<u64, ContigSums>,
     folded: bool,
     workbench: Workbench,
+    sets: AlleleSets,
 }
 
 impl GramStratum {
@@ -162,6 +163,7 @@ impl GramStratum {
                 contigs: BTreeMap::new(),
                 folded: false,
                 workbench: Workbench::new(n),
+                sets: AlleleSets::default(),
             }),
         }
     }
@@ -191,15 +193,15 @@ impl GramStratum {
             self.flush();
             self.workbench.set_contig(contig_hash);
         }
-        let entries = AlleleSets::of(counts);
-        for (mask, alleles) in entries.sets() {
+        let key = self.key(contig_hash);
+        self.sets.refill(counts);
+        for (mask, alleles) in self.sets.sets() {
             let rows = LocusRows {
                 genotypes,
                 slots: slots.clone(),
                 counts,
                 alleles,
             };
-            let key = self.key(contig_hash);
             let sums = self
                 .contigs
                 .entry(key)
@@ -303,6 +305,15 @@ impl LocusRows<'_> {
         (self.alleles.len() as u64 - 1).max(1)
     }
 
+    /// The individuals that are not typed, counted within the stratum.
+    fn absent(&self) -> impl Iterator<Item = usize> + '_ {
+        let slots = self.slots.clone();
+        let start = slots.start;
+        slots
+            .filter(|&slot| self.genotypes.pair(slot).is_none())
+            .map(move |slot| slot - start)
+    }
+
     /// The weight of a row: (k-1)/k, or 1 where one row stands for both alleles.
     fn row_weight(&self) -> f64 {
         match self.alleles.len() {
@@ -314,6 +325,7 @@ impl LocusRows<'_> {
 
 /// The sets of alleles of a locus that pass the cutoffs. Cutoffs with the same set share one entry,
 /// so common loci are added once; a mask of cutoff bits says which.
+#[derive(Debug, Clone, Default)]
 struct AlleleSets {
     masks: [u8; 3],
     ends: [usize; 3],
@@ -321,20 +333,15 @@ struct AlleleSets {
 }
 
 impl AlleleSets {
-    /// The sets of a locus; empty sets are left out.
-    fn of(counts: &Counts) -> Self {
-        let mut sets = AlleleSets {
-            masks: [0; 3],
-            ends: [0; 3],
-            alleles: Vec::new(),
-        };
+    /// Takes the sets of a locus.
+    fn refill(&mut self, counts: &Counts) {
+        self.alleles.clear();
         for (i, cutoff) in FrequencyCutoff::ALL.into_iter().enumerate() {
-            push_row_alleles(counts, cutoff, &mut sets.alleles);
-            sets.ends[i] = sets.alleles.len();
-            sets.masks[i] = cutoff.bit();
-            sets.share_with_earlier(i);
+            push_row_alleles(counts, cutoff, &mut self.alleles);
+            self.ends[i] = self.alleles.len();
+            self.masks[i] = cutoff.bit();
+            self.share_with_earlier(i);
         }
-        sets
     }
 
     /// Gives the cutoff of set `i` to an earlier, equal set.

@@ -1,7 +1,7 @@
 //! Batches of loci: rounding to integers and the matrix product.
 
 use ndarray::linalg::general_mat_mul;
-use ndarray::{Array2, ArrayView1, ArrayView2, ArrayViewMut1, Axis, Slice};
+use ndarray::{Array2, ArrayView2, ArrayViewMut1, Axis, Slice};
 
 use super::{BinSums, ContigSums, LocusRows, squared_length};
 
@@ -22,6 +22,7 @@ pub(super) struct Workbench {
     contig: Option<u64>,
     batches: [Option<Box<Batch>>; 8],
     product: Array2<f64>,
+    absent: Vec<usize>,
 }
 
 impl Workbench {
@@ -31,6 +32,7 @@ impl Workbench {
             contig: None,
             batches: Default::default(),
             product: Array2::zeros((individuals, individuals)),
+            absent: Vec::new(),
         }
     }
 
@@ -51,7 +53,9 @@ impl Workbench {
         let own = batch.add_vectors(locus, sums, &mut self.product);
         sums.add_locus(locus.counts.typed as usize, locus.weight(), own);
         if locus.counts.typed as usize != self.individuals {
-            batch.add_mask(locus, sums, &mut self.product);
+            self.absent.clear();
+            self.absent.extend(locus.absent());
+            sums.missing_mut(self.individuals).add(locus, &self.absent);
         }
     }
 
@@ -61,7 +65,6 @@ impl Workbench {
             if let Some(batch) = batch.as_mut().filter(|batch| batch.waits()) {
                 let bin = sums.bin_mut(mask as u8, self.individuals);
                 batch.flush_vectors(bin, &mut self.product);
-                batch.flush_masks(bin, &mut self.product);
             }
         }
     }
@@ -73,17 +76,6 @@ struct Batch {
     /// rows x individuals, integers.
     vectors: Array2<f64>,
     vector_rows: usize,
-    /// Typed masks of loci with missing genotypes, and the same times b and times h; allocated when
-    /// the first such locus comes.
-    masks: Option<Masks>,
-}
-
-#[derive(Debug, Clone)]
-struct Masks {
-    mask: Array2<f64>,
-    b: Array2<f64>,
-    h: Array2<f64>,
-    rows: usize,
 }
 
 impl Batch {
@@ -91,12 +83,11 @@ impl Batch {
         Batch {
             vectors: Array2::zeros((BATCH_ROWS, individuals)),
             vector_rows: 0,
-            masks: None,
         }
     }
 
     fn waits(&self) -> bool {
-        self.vector_rows > 0 || self.masks.as_ref().is_some_and(|m| m.rows > 0)
+        self.vector_rows > 0
     }
 
     /// Adds the rows of a locus. Returns its squared correlation with itself, which sums over all
@@ -137,69 +128,12 @@ impl Batch {
         self.vector_rows - 1
     }
 
-    fn add_mask(&mut self, locus: &LocusRows<'_>, sums: &mut BinSums, product: &mut Array2<f64>) {
-        if self.masks.as_ref().is_some_and(|m| m.rows == BATCH_ROWS) {
-            self.flush_masks(sums, product);
-        }
-        let individuals = self.vectors.ncols();
-        let masks = self.masks.get_or_insert_with(|| Masks {
-            mask: Array2::zeros((BATCH_ROWS, individuals)),
-            b: Array2::zeros((BATCH_ROWS, individuals)),
-            h: Array2::zeros((BATCH_ROWS, individuals)),
-            rows: 0,
-        });
-        let weights = LocusWeights::of(locus.counts.typed, locus.weight());
-        let scale = power_of_two(WEIGHT_BITS);
-        let (b, h) = ((weights.b * scale).round(), (weights.h * scale).round());
-        let row = masks.rows;
-        masks.rows += 1;
-        for (i, slot) in locus.slots.clone().enumerate() {
-            let typed = if locus.genotypes.pair(slot).is_some() {
-                1.0
-            } else {
-                0.0
-            };
-            masks.mask[[row, i]] = typed;
-            masks.b[[row, i]] = typed * b;
-            masks.h[[row, i]] = typed * h;
-        }
-        let typed = masks.mask.row(row);
-        sums.missing_mut(individuals)
-            .add_terms(&weights, locus.weight(), typed);
-    }
-
     fn flush_vectors(&mut self, sums: &mut BinSums, product: &mut Array2<f64>) {
         if self.vector_rows > 0 {
             let rows = first_rows(&self.vectors, self.vector_rows);
             general_mat_mul(1.0, &rows.t(), &rows, 0.0, product);
             sums.add_vectors(product.view(), self.vector_rows as u64);
             self.vector_rows = 0;
-        }
-    }
-
-    fn flush_masks(&mut self, sums: &mut BinSums, product: &mut Array2<f64>) {
-        let individuals = self.vectors.ncols();
-        if let Some(masks) = self.masks.as_mut().filter(|m| m.rows > 0) {
-            let rows = masks.rows as u64;
-            let missing = sums.missing_mut(individuals);
-            let mask = first_rows(&masks.mask, masks.rows);
-            general_mat_mul(
-                1.0,
-                &first_rows(&masks.b, masks.rows).t(),
-                &mask,
-                0.0,
-                product,
-            );
-            missing.add_b(product.view(), rows);
-            general_mat_mul(
-                1.0,
-                &first_rows(&masks.h, masks.rows).t(),
-                &mask,
-                0.0,
-                product,
-            );
-            missing.add_h(product.view(), rows);
-            masks.rows = 0;
         }
     }
 }
@@ -265,7 +199,5 @@ pub(super) fn power_of_two(bits: i32) -> f64 {
     f64::from_bits(((1023 + bits) as u64) << 52)
 }
 
-/// The typed mask of one row, as used by the sums.
-pub(super) type TypedRow<'a> = ArrayView1<'a, f64>;
 /// A finished matrix product.
 pub(super) type Product<'a> = ArrayView2<'a, f64>;

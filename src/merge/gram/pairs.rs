@@ -2,8 +2,9 @@
 
 use std::collections::BTreeMap;
 
+use super::missing::{Typed, TypedPairs};
 use super::{
-    BinSums, ContigSums, LocusWeights, MissingSums, TERM_BITS, Triangle, TypedTally, VECTOR_BITS,
+    BinSums, ContigSums, LocusWeights, MissingSums, TERM_BITS, TypedTally, VECTOR_BITS,
     WEIGHT_BITS, power_of_two,
 };
 
@@ -155,21 +156,26 @@ impl Finished {
             }
         }
         let complete = LocusWeights::of(size as u32, tally[size].weight);
-        let matrix = |part: &dyn Fn(&MissingSums) -> &Triangle, constant| Weighted {
+        let matrix = |part: &dyn Fn(&MissingSums) -> &TypedPairs, constant| Weighted {
             constant,
-            cells: (!missing.is_empty())
-                .then(|| to_floats(cells, missing.iter().map(|m| part(m)), WEIGHT_BITS)),
+            cells: (!missing.is_empty()).then(|| {
+                to_floats(cells, WEIGHT_BITS, |sums| {
+                    missing.iter().for_each(|m| part(m).add_to(sums));
+                })
+            }),
         };
-        let vector = |part: &dyn Fn(&MissingSums) -> &[i128], constant: f64| -> Vec<f64> {
+        let vector = |part: &dyn Fn(&MissingSums) -> &Typed, constant: f64| -> Vec<f64> {
             (0..size)
                 .map(|i| {
-                    let sum: i128 = missing.iter().map(|m| part(m)[i]).sum();
+                    let sum: i128 = missing.iter().map(|m| part(m).of(i)).sum();
                     sum as f64 * power_of_two(-TERM_BITS) + constant
                 })
                 .collect()
         };
         let weight = tally.iter().map(|t| t.weight).sum::<u64>() as f64;
-        let mut gram = to_floats(cells, bins.iter().map(|bin| &bin.vectors), 2 * VECTOR_BITS);
+        let mut gram = to_floats(cells, 2 * VECTOR_BITS, |sums| {
+            bins.iter().for_each(|bin| bin.vectors.add_to(sums));
+        });
         // Squared lengths of the vectors sum to the trace, and to the weight but for the rounding:
         // dividing by their mean takes nearly all of the rounding error away.
         let mean_square = gram[..size].iter().sum::<f64>() / weight;
@@ -189,8 +195,8 @@ impl Finished {
             q: vector(&|m| &m.q, complete.b),
             typed: (0..size)
                 .map(|i| {
-                    let sum: u64 = missing.iter().map(|m| m.typed[i]).sum();
-                    (sum + tally[size].weight) as f64
+                    let sum: i128 = missing.iter().map(|m| m.typed.of(i)).sum();
+                    (sum + i128::from(tally[size].weight)) as f64
                 })
                 .collect(),
             own: own_sums(&tally, own),
@@ -263,14 +269,10 @@ fn own_sums(tally: &[TypedTally], squared_correlation: f64) -> PairSums {
     own
 }
 
-/// Sums of triangles in units of 2^-bits, rounded once.
-fn to_floats<'a>(
-    cells: usize,
-    triangles: impl Iterator<Item = &'a Triangle>,
-    bits: i32,
-) -> Vec<f64> {
+/// Integer sums in the layout of [`Triangle`](super::Triangle) and units of 2^-bits, rounded once.
+fn to_floats(cells: usize, bits: i32, add: impl FnOnce(&mut [i128])) -> Vec<f64> {
     let mut sums = vec![0i128; cells];
-    triangles.for_each(|triangle| triangle.add_to(&mut sums));
+    add(&mut sums);
     let unit = power_of_two(-bits);
     sums.into_iter().map(|sum| sum as f64 * unit).collect()
 }

@@ -2,7 +2,8 @@
 
 use std::collections::BTreeMap;
 
-use super::{LocusWeights, Product, TERM_BITS, TypedRow, power_of_two};
+use super::Product;
+use super::missing::MissingSums;
 
 /// Up to so many rows, sums of integers of at most 2^44 stay within i64.
 const NARROW_ROWS: u64 = 1 << 18;
@@ -99,64 +100,6 @@ impl BinSums {
     }
 }
 
-/// Sums over loci with missing genotypes.
-#[derive(Debug, Clone, PartialEq)]
-pub(super) struct MissingSums {
-    /// B and H, in units of 2^-WEIGHT_BITS.
-    pub(super) b: Triangle,
-    pub(super) h: Triangle,
-    /// p and q, in units of 2^-TERM_BITS.
-    pub(super) p: Vec<i128>,
-    pub(super) q: Vec<i128>,
-    /// By individual: weights of the loci at which it is typed.
-    pub(super) typed: Vec<u64>,
-}
-
-impl MissingSums {
-    fn new(individuals: usize) -> Self {
-        MissingSums {
-            b: Triangle::new(individuals),
-            h: Triangle::new(individuals),
-            p: vec![0; individuals],
-            q: vec![0; individuals],
-            typed: vec![0; individuals],
-        }
-    }
-
-    pub(super) fn add_terms(&mut self, weights: &LocusWeights, weight: u64, typed: TypedRow<'_>) {
-        let scale = power_of_two(TERM_BITS);
-        let (a, b) = (
-            (weights.a * scale).round() as i128,
-            (weights.b * scale).round() as i128,
-        );
-        for (i, &is_typed) in typed.iter().enumerate() {
-            if is_typed > 0.0 {
-                self.p[i] += a;
-                self.q[i] += b;
-                self.typed[i] += weight;
-            }
-        }
-    }
-
-    pub(super) fn add_b(&mut self, product: Product<'_>, rows: u64) {
-        self.b.add(product, rows);
-    }
-
-    pub(super) fn add_h(&mut self, product: Product<'_>, rows: u64) {
-        self.h.add(product, rows);
-    }
-
-    fn merge(&mut self, other: &MissingSums) {
-        self.b.merge(&other.b);
-        self.h.merge(&other.h);
-        for i in 0..self.p.len() {
-            self.p[i] += other.p[i];
-            self.q[i] += other.q[i];
-            self.typed[i] += other.typed[i];
-        }
-    }
-}
-
 /// A symmetric matrix of integers: the diagonal, then what is above it row by row.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Triangle {
@@ -173,7 +116,7 @@ enum Cells {
 }
 
 impl Triangle {
-    fn new(size: usize) -> Self {
+    pub(super) fn new(size: usize) -> Self {
         Triangle {
             size,
             rows: 0,
@@ -199,7 +142,29 @@ impl Triangle {
         }
     }
 
-    fn merge(&mut self, other: &Triangle) {
+    /// Individuals.
+    pub(super) fn size(&self) -> usize {
+        self.size
+    }
+
+    /// Adds a number below 2^43 to every cell of two of the listed individuals, which rise, and to the
+    /// diagonal cells of each.
+    pub(super) fn add_square(&mut self, listed: &[usize], number: i64) {
+        self.count(1);
+        let size = self.size;
+        for (n, &i) in listed.iter().enumerate() {
+            // Where the cell (i, j) lies is j - i beyond the end of the rows above.
+            let row = size + i * (2 * size - i - 1) / 2;
+            let after = listed[n + 1..].iter().map(|&j| row + j - i - 1);
+            let places = std::iter::once(i).chain(after);
+            match &mut self.cells {
+                Cells::Narrow(cells) => places.for_each(|at| cells[at] += number),
+                Cells::Wide(cells) => places.for_each(|at| cells[at] += i128::from(number)),
+            }
+        }
+    }
+
+    pub(super) fn merge(&mut self, other: &Triangle) {
         self.count(other.rows);
         match (&mut self.cells, &other.cells) {
             (Cells::Narrow(mine), Cells::Narrow(theirs)) => {
