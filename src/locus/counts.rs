@@ -88,6 +88,12 @@ impl Counts {
         }
     }
 
+    /// At a locus with two alleles: homozygotes of the first, heterozygotes, homozygotes of the second.
+    pub fn dosage_classes(&self) -> [u32; 3] {
+        let homozygotes = |allele: usize| (self.copies[allele] - self.heterozygotes) / 2;
+        [homozygotes(0), self.heterozygotes, homozygotes(1)]
+    }
+
     /// Gene copies typed: twice the individuals.
     pub fn gene_copies(&self) -> u32 {
         2 * self.typed

@@ -8,6 +8,7 @@ pub mod diversity;
 pub mod fstatistics;
 pub mod hardy_weinberg;
 pub mod individuals;
+mod lanes;
 pub mod richness;
 pub mod runs;
 pub mod signs;
@@ -16,5 +17,9 @@ mod terms;
 
 pub use classes::GenotypeClasses;
 pub use counts::Counts;
-pub use term_list::Terms;
-pub use terms::{PairTerms, PrivateTerms, StratumTerms, pair_terms, private_terms, stratum_terms};
+pub use lanes::StratumLanes;
+pub use term_list::{Lane, Terms};
+pub use terms::{
+    PairTermLanes, PairTerms, PrivateTerms, StratumTermLanes, StratumTerms, pair_terms,
+    private_terms, stratum_terms,
+};

@@ -47,28 +47,47 @@ impl Rarefaction {
     ///
     /// Rows are dropped before the first is made, never between, so those of one call are all there.
     fn prepare<C: Borrow<Counts>>(&mut self, samples: &[C]) -> Option<()> {
-        if self.kept > self.budget {
-            self.rows.clear();
-            self.kept = 0;
-        }
+        self.drop_beyond_budget();
         for sample in samples {
             let typed = sample.borrow().typed as usize;
             if sample.borrow().gene_copies() < self.gene_copies {
                 return None;
             }
-            if self.rows.len() <= typed {
-                self.rows.resize(typed + 1, None);
-            }
-            if self.rows[typed].is_none() {
-                let row = row(2 * typed, self.gene_copies as usize);
-                self.kept += row.len();
-                self.rows[typed] = Some(row);
-            }
+            self.prepare_row(typed);
         }
         Some(())
     }
 
     /// Q of an allele of `copies` copies in a prepared sample.
+    /// For each allele of a locus with two, the chance that the fixed number of gene copies, drawn from
+    /// `typed` individuals with these copies, holds none of it; `None` when fewer are typed.
+    pub fn absences(&mut self, typed: u32, copies: [u32; 2]) -> Option<[f64; 2]> {
+        if 2 * typed < self.gene_copies {
+            return None;
+        }
+        self.drop_beyond_budget();
+        self.prepare_row(typed as usize);
+        Some(copies.map(|c| self.absent(typed, c)))
+    }
+
+    fn drop_beyond_budget(&mut self) {
+        if self.kept > self.budget {
+            self.rows.clear();
+            self.kept = 0;
+        }
+    }
+
+    fn prepare_row(&mut self, typed: usize) {
+        if self.rows.len() <= typed {
+            self.rows.resize(typed + 1, None);
+        }
+        if self.rows[typed].is_none() {
+            let row = row(2 * typed, self.gene_copies as usize);
+            self.kept += row.len();
+            self.rows[typed] = Some(row);
+        }
+    }
+
     fn absent(&self, typed: u32, copies: u32) -> f64 {
         self.rows[typed as usize]
             .as_deref()

@@ -11,7 +11,7 @@ use super::term_list::terms;
 terms! {
     /// One stratum at one locus. Loci that vary among all individuals in use enter everything;
     /// the others add to `sites` alone.
-    StratumTerms {
+    StratumTerms, StratumTermLanes {
         /// 1: a record with at least one typed individual.
         sites,
         /// 1: such a record that varies among all individuals in use.
@@ -35,7 +35,7 @@ terms! {
 
 terms! {
     /// Two strata at one locus that varies among all individuals in use and is typed in both.
-    PairTerms {
+    PairTerms, PairTermLanes {
         /// 1.
         loci,
         /// Observed heterozygosity of the first.

@@ -5,6 +5,8 @@
 //! change a digit. The rounding error of a sum over L loci is at most L x 2^-41, typically its
 //! square root: below 1e-9 for a hundred million loci.
 
+use crate::locus::Lane;
+
 /// Bits behind the binary point of a term.
 pub const FRACTION_BITS: u32 = 40;
 /// Largest magnitude of a term; larger ones are held at this bound (no statistic of a locus with at
@@ -27,6 +29,20 @@ pub fn to_fixed(term: f64) -> i64 {
     }
     let scaled = term.clamp(-LARGEST_TERM, LARGEST_TERM) * (1u64 << FRACTION_BITS) as f64;
     scaled.round_ties_even() as i64
+}
+
+/// [`to_fixed`] of several terms at once.
+pub fn lane_to_fixed(lane: &Lane) -> [i64; 8] {
+    // No early end, so that the processor compares and converts several at a time.
+    let small = lane
+        .iter()
+        .fold(true, |small, v| small & (v.abs() < 1024.0));
+    if small {
+        let scale = (1u64 << FRACTION_BITS) as f64;
+        lane.map(|v| (v * scale + UNITS).to_bits().wrapping_sub(UNITS.to_bits()) as i64)
+    } else {
+        lane.map(to_fixed)
+    }
 }
 
 /// The value of a sum of fixed-point terms.
@@ -54,6 +70,10 @@ mod tests {
         for value in tenths.chain(wide).chain(halves) {
             let plain = (value / unit).round_ties_even() as i64;
             assert_eq!(to_fixed(value), plain, "{value}");
+            assert_eq!(
+                lane_to_fixed(&[0.5, value, 0.0, value, 1.0, 0.0, 0.0, 0.0])[1],
+                plain
+            );
         }
     }
 

@@ -1,6 +1,7 @@
 //! Sums that merge: the same bytes for any order, any number of threads and any sharding.
 
 pub mod carriers;
+mod entry;
 pub mod fates;
 mod fixed;
 pub mod gram;

@@ -3,6 +3,7 @@
 use std::sync::Arc;
 
 use super::carriers::Carriers;
+use super::entry::{Buffers, Entry};
 use super::fates::Fates;
 use super::gram::{GramAbsent, GramStratum};
 use super::histogram::PValueHistogram;
@@ -10,12 +11,11 @@ use super::panel::Panel;
 use super::scheme::{Pair, Scheme};
 use super::spectrum::Spectrum;
 use super::two_way::TwoWay;
-use crate::locus::Terms;
 use crate::locus::hardy_weinberg::{HardyWeinbergCache, test_many_alleles};
 use crate::locus::richness::Rarefaction;
 use crate::locus::{
-    Counts, GenotypeClasses, PairTerms, PrivateTerms, StratumTerms, pair_terms, private_terms,
-    stratum_terms,
+    Counts, GenotypeClasses, PairTerms, PrivateTerms, StratumLanes, StratumTerms, pair_terms,
+    private_terms, stratum_terms,
 };
 use crate::model::{Genotypes, Locus, MISSING_ALLELE, MISSING_DOSAGE};
 
@@ -77,11 +77,12 @@ pub struct Sums {
 struct Scratch {
     counts: Vec<Counts>,
     classes: Vec<GenotypeClasses>,
+    /// Filled at loci with two alleles.
+    lanes: Vec<StratumLanes>,
     usable: Vec<bool>,
     rarefaction: Rarefaction,
     hardy_weinberg: HardyWeinbergCache,
-    fixed: Vec<i64>,
-    rows: Vec<i64>,
+    buffers: Buffers,
 }
 
 /// What was found at the locus just added, for the per-locus table.
@@ -142,11 +143,11 @@ impl Sums {
         let scratch = Scratch {
             counts: vec![Counts::default(); strata.len()],
             classes: vec![GenotypeClasses::default(); strata.len()],
+            lanes: vec![StratumLanes::default(); strata.len()],
             usable: vec![false; strata.len()],
             rarefaction: Rarefaction::new(scheme.gene_copies),
             hardy_weinberg: HardyWeinbergCache::default(),
-            fixed: vec![0; 64],
-            rows: Vec::new(),
+            buffers: Buffers::default(),
         };
         Sums {
             strata,
@@ -244,11 +245,14 @@ impl Sums {
             sites: 1.0,
             ..StratumTerms::default()
         };
+        let mut entry = Entry {
+            locus,
+            classes: &[],
+            buffers: &mut self.scratch.buffers,
+        };
         for (s, sums) in self.strata.iter_mut().enumerate() {
             if self.scratch.usable[s] {
-                let fixed = &mut self.scratch.fixed[..StratumTerms::LEN];
-                sums.diversity
-                    .add(locus.contig_hash, locus.position, &site, fixed);
+                entry.add_terms(&mut sums.diversity, &site);
             }
         }
     }
@@ -257,22 +261,24 @@ impl Sums {
         let Scratch {
             counts,
             classes,
+            lanes,
             usable,
             rarefaction,
             hardy_weinberg,
-            fixed,
-            rows,
+            buffers,
         } = &mut self.scratch;
+        let biallelic = locus.genotypes.is_biallelic();
         for (s, slots) in scheme.strata.iter().enumerate() {
-            classes[s].refill(&locus.genotypes, slots.clone());
+            classes[s].refill(&locus.genotypes, slots.clone(), &counts[s]);
+            if biallelic {
+                lanes[s].refill(counts[s].dosage_classes(), rarefaction);
+            }
         }
         let seed = locus.contig_hash ^ locus.position;
-        let mut at = Place {
+        let mut entry = Entry {
             locus,
-            scheme,
             classes,
-            fixed,
-            rows,
+            buffers,
         };
         for (s, sums) in self
             .strata
@@ -280,9 +286,15 @@ impl Sums {
             .enumerate()
             .filter(|(s, _)| usable[*s])
         {
-            at.add(&mut sums.diversity, counts, &[s], |c| {
-                stratum_terms(&c[s], rarefaction)
-            });
+            if biallelic {
+                entry.add_lanes(&mut sums.diversity, &[s], &lanes[s].terms().columns());
+            } else {
+                entry.add(&mut sums.diversity, &[s], |left_out| {
+                    recounted(counts, classes, &[s], left_out, |c| {
+                        stratum_terms(&c[s], rarefaction)
+                    })
+                });
+            }
             if let Ok(linkage) = &mut sums.linkage {
                 let slots = scheme.strata[s].clone();
                 linkage.add(locus.contig_hash, &locus.genotypes, slots, &counts[s]);
@@ -292,7 +304,7 @@ impl Sums {
                 2 => hardy_weinberg
                     .mid_p(&counts[s])
                     .map(|t| (t.mid_p, t.direction)),
-                _ => test_many_alleles(&at.classes[s].classes, TABLE_BUDGET, SHUFFLES, seed)
+                _ => test_many_alleles(&classes[s].classes, TABLE_BUDGET, SHUFFLES, seed)
                     .map(|t| (t.mid_p, t.direction)),
             };
             if let Some((mid_p, direction)) = test {
@@ -300,13 +312,21 @@ impl Sums {
             }
         }
         for (sums, &Pair { from, to, in_time }) in self.pairs.iter_mut().zip(&scheme.pairs) {
-            if usable[from] && usable[to] {
-                at.add(&mut sums.change, counts, &[from, to], |c| {
-                    pair_terms(&c[from], &c[to], rarefaction)
+            if !(usable[from] && usable[to]) {
+                continue;
+            }
+            if biallelic {
+                let terms = lanes[from].pair_terms(&lanes[to]);
+                entry.add_lanes(&mut sums.change, &[from, to], &terms.columns());
+            } else {
+                entry.add(&mut sums.change, &[from, to], |left_out| {
+                    recounted(counts, classes, &[from, to], left_out, |c| {
+                        pair_terms(&c[from], &c[to], rarefaction)
+                    })
                 });
-                if in_time {
-                    sums.fates.add(locus, &counts[from], &counts[to]);
-                }
+            }
+            if in_time {
+                sums.fates.add(locus, &counts[from], &counts[to]);
             }
         }
         let latest = self
@@ -321,66 +341,42 @@ impl Sums {
             }
         }
         for (members, visit) in self.private.iter_mut().zip(&scheme.visits) {
-            if visit.iter().all(|&s| usable[s]) {
-                for (which, sums) in members.iter_mut().enumerate() {
-                    at.add(sums, counts, visit, |c| {
+            if !visit.iter().all(|&s| usable[s]) {
+                continue;
+            }
+            let beside: Vec<&StratumLanes> = visit.iter().map(|&s| &lanes[s]).collect();
+            for (which, sums) in members.iter_mut().enumerate() {
+                entry.add(sums, visit, |left_out| {
+                    if biallelic {
+                        return StratumLanes::private_terms(which, &beside, left_out);
+                    }
+                    recounted(counts, classes, visit, left_out, |c| {
                         private_terms(which, visit, c, rarefaction)
-                    });
-                }
+                    })
+                });
             }
         }
     }
 }
 
-/// One locus on its way into the sums.
-struct Place<'a> {
-    locus: &'a Locus,
-    scheme: &'a Scheme,
-    classes: &'a [GenotypeClasses],
-    fixed: &'a mut [i64],
-    rows: &'a mut Vec<i64>,
-}
-
-impl Place<'_> {
-    /// Adds the terms, and for every genotype class of every member stratum what leaving out one
-    /// individual of that class changes.
-    fn add<T: Terms>(
-        &mut self,
-        sums: &mut TwoWay<T>,
-        counts: &mut [Counts],
-        members: &[usize],
-        mut terms: impl FnMut(&[Counts]) -> T,
-    ) {
-        let fixed = &mut self.fixed[..T::LEN];
-        sums.add(
-            self.locus.contig_hash,
-            self.locus.position,
-            &terms(counts),
-            fixed,
-        );
-        let mut first = 0;
-        for &s in members {
-            let classes = &self.classes[s].classes;
-            self.rows.clear();
-            self.rows.resize((classes.len() + 1) * T::LEN, 0);
-            for (row, &(genotype, individuals)) in self.rows.chunks_exact_mut(T::LEN).zip(classes) {
-                if individuals > 0 {
-                    counts[s].remove(genotype);
-                    TwoWay::absence_row(&terms(counts), fixed, row);
-                    counts[s].add(genotype);
-                }
-            }
-            let slots = self.scheme.strata[s].clone();
-            let individuals = slots.len();
-            let genotypes: &Genotypes = &self.locus.genotypes;
-            if genotypes.is_biallelic() {
-                sums.add_absences(first, &genotypes.dosages()[slots], self.rows);
-            } else {
-                sums.add_absences(first, &self.classes[s].of_individual, self.rows);
-            }
-            first += individuals;
-        }
-    }
+/// The terms of counts from which one individual may be left out: (member, class), as in
+/// [`Entry::add`].
+fn recounted<T>(
+    counts: &mut [Counts],
+    classes: &[GenotypeClasses],
+    members: &[usize],
+    left_out: Option<(usize, usize)>,
+    terms: impl FnOnce(&[Counts]) -> T,
+) -> T {
+    let Some((member, class)) = left_out else {
+        return terms(counts);
+    };
+    let stratum = members[member];
+    let (genotype, _) = classes[stratum].classes[class];
+    counts[stratum].remove(genotype);
+    let value = terms(counts);
+    counts[stratum].add(genotype);
+    value
 }
 
 /// Adds one for each individual that is typed.

@@ -3,9 +3,9 @@
 use std::marker::PhantomData;
 use std::ops::Range;
 
-use super::fixed::{BATCH_LOCI, from_fixed, to_fixed};
+use super::fixed::{BATCH_LOCI, from_fixed};
 use super::windows::{Blocking, Windows};
-use crate::locus::Terms;
+use crate::locus::{GenotypeClasses, Terms};
 
 /// Sums of the terms `T` over loci: in all, by genome window, and what each individual's absence
 /// would change. Merging is associative and commutative; an empty one is the identity.
@@ -26,6 +26,8 @@ struct Batch {
     loci: u32,
     place: Option<(u64, u64)>,
     window: Vec<i64>,
+    /// By group: what is to be added to each of its individuals.
+    common: Vec<i64>,
     absences: Vec<i64>,
 }
 
@@ -38,20 +40,20 @@ impl<T: Terms> TwoWay<T> {
             total: vec![0; T::LEN],
             windows: Windows::new(T::LEN, most_windows),
             absences: vec![0; individuals * T::LEN],
-            groups,
             batch: Batch {
                 loci: 0,
                 place: None,
                 window: vec![0; T::LEN],
+                common: vec![0; groups.len() * T::LEN],
                 absences: vec![0; individuals * T::LEN],
             },
+            groups,
             kind: PhantomData,
         }
     }
 
-    /// Adds a locus with its terms; returns them in fixed point for [`TwoWay::absence_row`].
-    pub fn add(&mut self, contig_hash: u64, position: u64, terms: &T, fixed: &mut [i64]) {
-        write_fixed(terms, fixed);
+    /// Adds a locus with its terms in fixed point.
+    pub fn add(&mut self, contig_hash: u64, position: u64, fixed: &[i64]) {
         let key = self.windows.key(contig_hash, position);
         let same_window = self
             .batch
@@ -66,36 +68,41 @@ impl<T: Terms> TwoWay<T> {
             self.batch.place = Some((contig_hash, position));
         }
         self.batch.loci += 1;
-        for (sum, &term) in self.batch.window.iter_mut().zip(fixed.iter()) {
+        for (sum, &term) in self.batch.window.iter_mut().zip(fixed) {
             *sum = sum.wrapping_add(term);
         }
     }
 
-    /// The change of the terms when one individual is left out, as a row for [`TwoWay::add_absences`].
-    pub fn absence_row(without: &T, with: &[i64], row: &mut [i64]) {
-        write_fixed(without, row);
-        for (r, w) in row.iter_mut().zip(with) {
-            *r = r.wrapping_sub(*w);
-        }
-    }
-
-    /// Adds, for the individuals from `first` on, the row of each one's genotype class. Missing
-    /// genotypes have a class whose row is zero.
+    /// Adds, for the individuals of a group, what the absence of each would change: the row of its
+    /// genotype class. `rows` holds a row of [`Terms::LEN`] numbers a class and one for missing
+    /// genotypes; it is spent.
     ///
-    /// `rows` holds one row of [`Terms::LEN`] numbers a class. The sums stay inside i64 by the bound
-    /// of [`BATCH_LOCI`], so plain wrapping addition is exact.
-    pub fn add_absences<C: Copy + Into<usize>>(
-        &mut self,
-        first: usize,
-        classes: &[C],
-        rows: &[i64],
-    ) {
+    /// The row of the commonest class goes to the whole group once, and the others add what theirs has
+    /// beside it. The sums stay inside i64 by the bound of [`BATCH_LOCI`], so plain wrapping addition is
+    /// exact.
+    pub fn add_absences(&mut self, group: usize, classes: &GenotypeClasses, rows: &mut [i64]) {
         let width = T::LEN;
-        let sums = &mut self.batch.absences[first * width..(first + classes.len()) * width];
-        for (sum, &class) in sums.chunks_exact_mut(width).zip(classes) {
-            let class: usize = class.into();
-            let row = &rows[class * width..class * width + width];
-            for (s, r) in sum.iter_mut().zip(row) {
+        let common = &mut self.batch.common[group * width..(group + 1) * width];
+        let commonest = classes.commonest * width..(classes.commonest + 1) * width;
+        for (sum, &r) in common.iter_mut().zip(&rows[commonest.clone()]) {
+            *sum = sum.wrapping_add(r);
+        }
+        let (before, from) = rows.split_at_mut(commonest.start);
+        let (shared, after) = from.split_at_mut(width);
+        for row in before
+            .chunks_exact_mut(width)
+            .chain(after.chunks_exact_mut(width))
+        {
+            for (r, s) in row.iter_mut().zip(shared.iter()) {
+                *r = r.wrapping_sub(*s);
+            }
+        }
+        let group = self.groups[group].clone();
+        let sums = &mut self.batch.absences[group.start * width..group.end * width];
+        for &(individual, class) in &classes.others {
+            let at = individual as usize * width;
+            let row = usize::from(class) * width;
+            for (s, r) in sums[at..at + width].iter_mut().zip(&rows[row..row + width]) {
                 *s = s.wrapping_add(*r);
             }
         }
@@ -117,8 +124,20 @@ impl<T: Terms> TwoWay<T> {
     /// Moves what has been added into the totals; must be called before reading.
     pub fn flush(&mut self) {
         self.flush_window();
-        for (total, sum) in self.absences.iter_mut().zip(&mut self.batch.absences) {
-            *total += i128::from(std::mem::take(sum));
+        let width = T::LEN;
+        for (group, common) in self
+            .groups
+            .iter()
+            .zip(self.batch.common.chunks_exact_mut(width))
+        {
+            let cells = group.start * width..group.end * width;
+            let totals = self.absences[cells.clone()].chunks_exact_mut(width);
+            for (totals, sums) in totals.zip(self.batch.absences[cells].chunks_exact_mut(width)) {
+                for ((total, sum), common) in totals.iter_mut().zip(sums).zip(common.iter()) {
+                    *total += i128::from(std::mem::take(sum).wrapping_add(*common));
+                }
+            }
+            common.fill(0);
         }
         self.batch.loci = 0;
     }
@@ -173,15 +192,6 @@ impl<T: Terms> TwoWay<T> {
                 .zip(change)
                 .map(|(total, change)| total + change),
         )
-    }
-}
-
-fn write_fixed<T: Terms>(terms: &T, fixed: &mut [i64]) {
-    let mut values = [0.0; 64];
-    let values = &mut values[..T::LEN];
-    terms.write(values);
-    for (f, v) in fixed.iter_mut().zip(values) {
-        *f = to_fixed(*v);
     }
 }
 
