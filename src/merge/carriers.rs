@@ -1,6 +1,6 @@
 //! Alleles that a latest sample still holds in few carriers, and what each individual stands for.
 
-use std::collections::BTreeSet;
+use std::collections::{BTreeMap, BTreeSet};
 use std::ops::Range;
 
 use super::fixed::{from_fixed, to_fixed};
@@ -40,7 +40,11 @@ pub struct Carriers {
     pub scarce: u64,
     /// By individual: alleles that it alone carries.
     pub only_carrier: Vec<u64>,
+    /// By individual: scarce alleles that it carries.
+    pub scarce_carried: Vec<u64>,
     vanish: Vec<i128>,
+    /// Scarce alleles that both of two individuals carry, the lower number first.
+    shared: BTreeMap<(u32, u32), u64>,
 }
 
 impl Carriers {
@@ -53,7 +57,9 @@ impl Carriers {
             list: BTreeSet::new(),
             scarce: 0,
             only_carrier: vec![0; n],
+            scarce_carried: vec![0; n],
             vanish: vec![0; n],
+            shared: BTreeMap::new(),
         }
     }
 
@@ -87,6 +93,12 @@ impl Carriers {
             let all_fail: f64 = others.map(|&(_, n)| fails_to_pass(n)).product();
             self.vanish[i as usize] += i128::from(to_fixed(all_fail));
             self.only_carrier[i as usize] += u64::from(carriers.len() == 1);
+            self.scarce_carried[i as usize] += 1;
+        }
+        for (n, &(i, _)) in carriers.iter().enumerate() {
+            for &(j, _) in &carriers[n + 1..] {
+                *self.shared.entry((i, j)).or_default() += 1;
+            }
         }
         self.list.insert(ScarceAllele {
             copies,
@@ -105,8 +117,14 @@ impl Carriers {
         for (a, b) in self.only_carrier.iter_mut().zip(other.only_carrier) {
             *a += b;
         }
+        for (a, b) in self.scarce_carried.iter_mut().zip(other.scarce_carried) {
+            *a += b;
+        }
         for (a, b) in self.vanish.iter_mut().zip(other.vanish) {
             *a += b;
+        }
+        for (pair, n) in other.shared {
+            *self.shared.entry(pair).or_default() += n;
         }
         self.list.extend(other.list);
         self.trim();
@@ -126,6 +144,12 @@ impl Carriers {
     /// every other has two offspring.
     pub fn would_vanish(&self, individual: usize) -> f64 {
         from_fixed(self.vanish[individual])
+    }
+
+    /// Scarce alleles that both of two different individuals carry.
+    pub fn shared(&self, one: usize, other: usize) -> u64 {
+        let pair = (one.min(other) as u32, one.max(other) as u32);
+        self.shared.get(&pair).copied().unwrap_or_default()
     }
 
     fn trim(&mut self) {
@@ -159,5 +183,7 @@ mod tests {
         assert_eq!(carriers.would_vanish(0), 1.0 + 0.25 + 0.0);
         assert_eq!(carriers.would_vanish(1), 0.25 + 0.25);
         assert_eq!(carriers.only_carrier, [1, 0, 0, 0, 0, 0]);
+        assert_eq!(carriers.scarce_carried, [3, 2, 0, 0, 0, 0]);
+        assert_eq!((carriers.shared(1, 0), carriers.shared(0, 2)), (2, 0));
     }
 }

@@ -65,6 +65,10 @@ pub struct Sums {
     pub panel: Panel,
     /// Kept records at which each individual is typed, by slot.
     pub typed_records: Vec<u64>,
+    /// Of the records that vary among all individuals in use, those at which each is typed.
+    pub typed_polymorphic: Vec<u64>,
+    /// And those at which it is heterozygous.
+    pub heterozygous: Vec<u64>,
     /// Records added.
     pub kept: u64,
     /// Records that vary among all individuals in use.
@@ -157,6 +161,8 @@ impl Sums {
             carriers,
             panel: Panel::default(),
             typed_records: vec![0; scheme.slots()],
+            typed_polymorphic: vec![0; scheme.slots()],
+            heterozygous: vec![0; scheme.slots()],
             kept: 0,
             polymorphic: 0,
             scratch,
@@ -183,6 +189,8 @@ impl Sums {
         let polymorphic = varies(&self.scratch.counts);
         if polymorphic {
             self.polymorphic += 1;
+            count_typed(&locus.genotypes, &mut self.typed_polymorphic);
+            count_heterozygous(&locus.genotypes, &mut self.heterozygous);
             self.panel.offer(locus);
             self.add_polymorphic(locus, &scheme);
         } else {
@@ -225,8 +233,12 @@ impl Sums {
             a.merge(b);
         }
         self.panel.merge(other.panel);
-        for (a, b) in self.typed_records.iter_mut().zip(other.typed_records) {
-            *a += b;
+        for (mine, theirs) in [
+            (&mut self.typed_records, other.typed_records),
+            (&mut self.typed_polymorphic, other.typed_polymorphic),
+            (&mut self.heterozygous, other.heterozygous),
+        ] {
+            mine.iter_mut().zip(theirs).for_each(|(a, b)| *a += b);
         }
         self.kept += other.kept;
         self.polymorphic += other.polymorphic;
@@ -388,6 +400,19 @@ fn count_typed(genotypes: &Genotypes, typed: &mut [u64]) {
     } else {
         for (n, pair) in typed.iter_mut().zip(genotypes.pairs()) {
             *n += u64::from(pair[0] != MISSING_ALLELE);
+        }
+    }
+}
+
+/// Adds one for each individual that is heterozygous.
+fn count_heterozygous(genotypes: &Genotypes, heterozygous: &mut [u64]) {
+    if genotypes.is_biallelic() {
+        for (n, &dosage) in heterozygous.iter_mut().zip(genotypes.dosages()) {
+            *n += u64::from(dosage == 1);
+        }
+    } else {
+        for (n, pair) in heterozygous.iter_mut().zip(genotypes.pairs()) {
+            *n += u64::from(pair[0] != pair[1]);
         }
     }
 }

@@ -2,7 +2,7 @@
 
 use statrs::distribution::{ContinuousCDF, Normal, StudentsT};
 
-use super::interval::{block_jackknife, individual_variance};
+use super::interval::{block_jackknife, drift_variance, individual_variance};
 use crate::merge::{Terms, TwoWay};
 
 /// Coverage that intervals aim at.
@@ -63,7 +63,8 @@ pub struct Estimate {
     pub value: Result<f64, Absence>,
     /// Variance over blocks of loci (Busing et al. 1999).
     pub variance_loci: Option<f64>,
-    /// Delete-one variance over the individuals of each sample, added up.
+    /// What the sampled individuals add: the delete-one variance over those of each sample, added up; for a
+    /// drift rate what [`drift_variance`] leaves of it, with the pedigree.
     pub variance_individuals: Option<f64>,
     /// Degrees of freedom of the summed variance (Satterthwaite 1946).
     pub degrees: Option<f64>,
@@ -167,6 +168,31 @@ pub fn two_way_estimate<T: Terms>(
         degrees: satterthwaite(&parts),
         loci: count.round() as u64,
         blocks: blocks as u64,
+    }
+}
+
+/// A drift rate 1/(2Ne) of summed terms with the variance of [`drift_variance`]: as [`two_way_estimate`],
+/// with the generations between the samples and the squared change that sampling alone makes.
+pub fn drift_estimate<T: Terms>(
+    sums: &TwoWay<T>,
+    rate: impl Fn(&T) -> Option<f64>,
+    loci: impl Fn(&T) -> f64,
+    generations: f64,
+    sampling: f64,
+) -> Estimate {
+    let plain = two_way_estimate(sums, &rate, loci, Absence::NoLoci);
+    let (Ok(value), Some(variance_loci)) = (plain.value, plain.variance_loci) else {
+        return plain;
+    };
+    let Some(samples) = individual_variances(sums, &rate, value) else {
+        return plain;
+    };
+    let blocks = (variance_loci, plain.blocks as f64 - 1.0);
+    let all = drift_variance(value, generations, sampling, blocks, &samples);
+    Estimate {
+        variance_individuals: Some(all.variance - variance_loci),
+        degrees: Some(all.degrees),
+        ..plain
     }
 }
 

@@ -1,6 +1,6 @@
 //! Notes and findings as warnings of the report.
 
-use super::assemble::Findings;
+use super::assemble::{Findings, batch_notes};
 use super::wire::Warning;
 use crate::model::{ComparisonKind, Note};
 
@@ -21,6 +21,7 @@ pub fn of_findings(findings: &Findings) -> Vec<Warning> {
     let mut notes = plan_not_stated(findings);
     notes.extend(few_individuals(findings));
     notes.extend(uneven_call_rates(findings));
+    notes.extend(batch_notes(findings));
     if findings.sums.polymorphic == 0 {
         notes.push(Note::new(
             "nothing_varies",

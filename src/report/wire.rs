@@ -40,6 +40,10 @@ pub struct Report {
     pub at_risk: Vec<AtRisk>,
     /// How many individuals each latest sample's scarce alleles hang on, the most first.
     pub carriers: Vec<Carrier>,
+    /// Pairs of a female and a male of a latest sample that hold the most scarce alleles together, each of
+    /// them some that the other lacks; empty where the sheet gives no sexes. They say nothing of kinship:
+    /// hold them against the pedigree before pairing animals.
+    pub carrier_pairs: Vec<CarrierPair>,
     /// Frequency spectrum of each latest sample: what a forecast starts from.
     pub allele_spectra: Vec<AlleleSpectrum>,
     /// What a reader should know before using a number.
@@ -331,6 +335,9 @@ pub struct Outliers {
     pub found: u64,
     /// The loci, the least likely first (at most 100).
     pub list: Vec<OutlierLocus>,
+    /// What else than selection makes such loci, as far as this data set leaves it open; empty when none
+    /// was found.
+    pub other_causes: Vec<String>,
 }
 
 /// One locus that changed more than drift explains.
@@ -511,6 +518,28 @@ pub struct Carrier {
     /// Alleles expected to vanish from the sampled animals if it does not breed and every other has
     /// two offspring.
     pub would_vanish: f64,
+}
+
+/// A female and a male of a latest sample and the scarce alleles that they would bring together.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct CarrierPair {
+    /// Population name.
+    pub population: String,
+    /// Latest stratum.
+    pub stratum: String,
+    /// Sample name of the female.
+    pub female: String,
+    /// Sample name of the male.
+    pub male: String,
+    /// Scarce alleles (at most four carriers in the sample) that she carries and he does not.
+    pub only_female: u64,
+    /// Scarce alleles that he carries and she does not.
+    pub only_male: u64,
+    /// Scarce alleles that both carry.
+    pub both: u64,
+    /// Scarce alleles that the two hold together: the sum of the three.
+    pub together: u64,
 }
 
 /// Alleles of a latest sample by the copies in which they are held.

@@ -150,6 +150,7 @@ impl Inputs {
             losses: assemble::losses(&findings),
             at_risk: assemble::at_risk(&findings),
             carriers: assemble::carriers(&findings),
+            carrier_pairs: assemble::carrier_pairs(&findings),
             allele_spectra: assemble::allele_spectra(&findings),
             warnings: self.warnings(all, &findings),
             cautions: CAUTIONS.iter().map(|&text| text.to_owned()).collect(),

@@ -3,8 +3,8 @@
 //! Loci share one pedigree and the same sampled individuals. The curvature of the likelihood, and
 //! any resampling of loci alone, take them for independent witnesses: such a 95 % interval covered
 //! the truth in 50 to 88 % of simulated populations. Here the variance is that of a block jackknife
-//! over loci plus that of leaving out each individual in turn. Each deletion is one Newton step
-//! from the full fit, with the slopes of the counts that lack the individual.
+//! over loci put together with that of leaving out each individual in turn ([`drift_variance`]). Each
+//! deletion is one Newton step from the full fit, with the slopes of the counts that lack the individual.
 
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
@@ -13,6 +13,7 @@ use super::fit::{by_interval, constant};
 use super::jet::pair;
 use super::{BetaPrior, CountPanel, Fit, NoFit};
 use crate::model::MISSING_DOSAGE;
+use crate::ne::interval::drift_variance;
 use crate::ne::matrix::{Matrix, solve};
 
 /// Genotypes of every individual at every locus of the panel, visit after visit.
@@ -119,7 +120,9 @@ pub struct DriftInterval {
     pub variance_loci: f64,
     /// Jackknife variance over the individuals of all visits.
     pub variance_individuals: f64,
-    /// Degrees of freedom of the sum of the two (Satterthwaite 1946, Biometrics Bull 2:110-114).
+    /// Variance of the rate: the two put together by [`drift_variance`].
+    pub variance: f64,
+    /// Its degrees of freedom (Satterthwaite 1946, Biometrics Bull 2:110-114).
     pub degrees_of_freedom: f64,
     /// Lower end on the scale of u.
     pub low: f64,
@@ -130,7 +133,7 @@ pub struct DriftInterval {
 impl DriftInterval {
     /// Standard error of the rate.
     pub fn standard_error(&self) -> f64 {
-        (self.variance_loci + self.variance_individuals).sqrt()
+        self.variance.sqrt()
     }
 
     /// Effective size; `None` is unbounded.
@@ -311,35 +314,37 @@ fn intervals(panel: &DosagePanel, engine: &Engine, fit: Fit, level: f64) -> Resu
         );
         start += size;
     }
+    let sizes = sizes(panel, engine);
     let mut intervals = Vec::new();
     let mut inflation = 0.0;
     let curvature = inverse_diagonal(&fit.information).ok_or(NoFit::Uninformative)?;
     for p in 0..fit.rates.len() {
-        let variance_individuals: f64 = by_visit.iter().map(|v| v[p]).sum();
-        let parts = by_visit
+        let samples: Vec<(f64, f64)> = by_visit
             .iter()
             .zip(&individuals)
             .map(|(v, &size)| (v[p], size as f64 - 1.0))
-            .chain([(loci[p], sums.blocks.len() as f64 - 1.0)]);
-        let (mut total, mut spread) = (0.0, 0.0);
-        for (variance, freedom) in parts {
-            total += variance;
-            if variance > 0.0 {
-                spread += variance * variance / freedom.max(1.0);
-            }
-        }
-        let degrees_of_freedom = if spread > 0.0 {
-            total * total / spread
-        } else {
-            f64::INFINITY
+            .collect();
+        // One rate for all the time, or one for each gap.
+        let visits = match fit.rates.len() {
+            1 => 0..panel.gaps.len(),
+            _ => p..p + 1,
         };
+        let all = drift_variance(
+            fit.signed_rates[p],
+            panel.gaps[visits.clone()].iter().sum(),
+            0.5 / sizes[visits.start] + 0.5 / sizes[visits.end],
+            (loci[p], sums.blocks.len() as f64 - 1.0),
+            &samples,
+        );
+        let (total, degrees_of_freedom) = (all.variance, all.degrees);
         let half = quantile(level, degrees_of_freedom) * total.sqrt();
         let rate = fit.signed_rates[p];
         inflation += total / curvature[p] / fit.rates.len() as f64;
         intervals.push(DriftInterval {
             rate,
             variance_loci: loci[p],
-            variance_individuals,
+            variance_individuals: samples.iter().map(|(v, _)| v).sum(),
+            variance: total,
             degrees_of_freedom,
             low: rate - half,
             high: rate + half,
@@ -352,6 +357,30 @@ fn intervals(panel: &DosagePanel, engine: &Engine, fit: Fit, level: f64) -> Resu
         individuals,
         inflation: inflation.max(1.0),
     })
+}
+
+/// Harmonic mean of the individuals typed at the rows in use, by visit.
+fn sizes(panel: &DosagePanel, engine: &Engine) -> Vec<f64> {
+    let mut inverse = vec![0.0; panel.individuals.len()];
+    let mut weights = vec![0.0; panel.individuals.len()];
+    for row in (0..panel.len()).filter(|&row| engine.columns.of_row[row].is_some()) {
+        let mut rest = panel.row(row);
+        for (v, &size) in panel.individuals.iter().enumerate() {
+            let (sample, after) = rest.split_at(size);
+            let typed = sample.iter().filter(|&&d| d < MISSING_DOSAGE).count();
+            if typed > 0 {
+                inverse[v] += panel.weights[row] / typed as f64;
+                weights[v] += panel.weights[row];
+            }
+            rest = after;
+        }
+    }
+    // Nobody typed: no sampling to speak of, and no estimate either.
+    let mean = |(&weight, &inverse): (&f64, &f64)| match inverse > 0.0 {
+        true => weight / inverse,
+        false => f64::INFINITY,
+    };
+    weights.iter().zip(&inverse).map(mean).collect()
 }
 
 /// Delete-one-block jackknife with unequal blocks (Busing, Meijer & van der Leeden 1999, Stat

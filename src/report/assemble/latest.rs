@@ -2,11 +2,14 @@
 //! carries that.
 
 use super::Findings;
-use crate::model::Stratum;
+use crate::model::{Sex, Stratum};
 use crate::report::wire;
 
 /// Alleles named in the section at most, over all populations; the individuals' sums count all.
 const MOST_LISTED: usize = 500;
+
+/// Pairs of carriers named for each population.
+const MOST_PAIRS: usize = 20;
 
 impl Findings<'_> {
     fn latest(&self) -> impl Iterator<Item = &Stratum> {
@@ -80,6 +83,64 @@ pub fn carriers(findings: &Findings) -> Vec<wire::Carrier> {
                 .then_with(|| a.sample.cmp(&b.sample))
         });
         all.extend(of_population);
+    }
+    all
+}
+
+/// Pairs of a female and a male that hold the most scarce alleles together, each some that the other
+/// lacks; the first [`MOST_PAIRS`] of each population.
+pub fn carrier_pairs(findings: &Findings) -> Vec<wire::CarrierPair> {
+    let mut all = Vec::new();
+    for (stratum, carriers) in findings.latest().zip(&findings.sums.carriers) {
+        let of_sex = |sex: Sex| {
+            let slots = carriers.slots().enumerate();
+            slots
+                .filter(move |&(_, slot)| findings.strata.individuals[slot].sex == Some(sex))
+                .map(|(i, _)| i)
+                .filter(|&i| carriers.scarce_carried[i] > 0)
+                .collect::<Vec<usize>>()
+        };
+        let name = |i: usize| &findings.strata.individuals[carriers.slots().start + i].sample;
+        let (females, males) = (of_sex(Sex::Female), of_sex(Sex::Male));
+        let mut pairs = Vec::new();
+        for (&f, &m) in females
+            .iter()
+            .flat_map(|f| males.iter().map(move |m| (f, m)))
+        {
+            let both = carriers.shared(f, m);
+            let only_female = carriers.scarce_carried[f] - both;
+            let only_male = carriers.scarce_carried[m] - both;
+            if only_female > 0 && only_male > 0 {
+                pairs.push((
+                    only_female + only_male + both,
+                    only_female,
+                    only_male,
+                    both,
+                    f,
+                    m,
+                ));
+            }
+        }
+        // The most together first, then the most even, then by name.
+        let order = |p: &(u64, u64, u64, u64, usize, usize)| {
+            (std::cmp::Reverse((p.0, p.1.min(p.2))), name(p.4), name(p.5))
+        };
+        pairs.sort_by(|a, b| order(a).cmp(&order(b)));
+        let listed = pairs.into_iter().take(MOST_PAIRS);
+        all.extend(
+            listed.map(
+                |(together, only_female, only_male, both, f, m)| wire::CarrierPair {
+                    population: stratum.population.clone(),
+                    stratum: stratum.name.clone(),
+                    female: name(f).clone(),
+                    male: name(m).clone(),
+                    only_female,
+                    only_male,
+                    both,
+                    together,
+                },
+            ),
+        );
     }
     all
 }

@@ -1,6 +1,7 @@
 //! Lost or missed, and loci beyond drift: what the estimated effective size explains.
 
 use super::Findings;
+use super::batches::{self, Between};
 use super::effective_size::Fits;
 use crate::merge::fates::{FateKey, Fates, MissingAllele};
 use crate::model::{Comparison, ComparisonKind};
@@ -166,9 +167,38 @@ impl<'a> Explained<'a> {
             tested: loci.len() as u64,
             false_discovery_rate: findings.false_discovery_rate,
             found: found.len() as u64,
+            other_causes: match found.is_empty() {
+                true => Vec::new(),
+                false => other_causes(findings, self.comparison),
+            },
             list: found.into_iter().take(MOST_OUTLIERS).collect(),
         }
     }
+}
+
+/// What else than selection moves single loci, in order of what to look at first.
+fn other_causes(findings: &Findings, comparison: &Comparison) -> Vec<String> {
+    let batches = match batches::between(findings.strata, comparison) {
+        Between::Confounded => {
+            "genotyping batch: the two visits share no batch, so loci called differently in one of \
+             them look like change; genotype some old samples again beside the new"
+        }
+        Between::Shared => {
+            "genotyping batch: loci called differently in one batch; compare their frequencies within \
+             the batches that hold both visits"
+        }
+        Between::Unknown => {
+            "genotyping batch: loci called differently at one visit; the sheet names no batches"
+        }
+    };
+    [
+        batches,
+        "linked loci: neighbours in the list may share one cause",
+        "sex linkage: loci of a sex chromosome among autosomes, with another sex ratio in the sample",
+        "immigrants or released animals with other frequencies",
+    ]
+    .map(str::to_owned)
+    .to_vec()
 }
 
 /// Every second rate with the weight of the one beside it: the number of alleles expected to be

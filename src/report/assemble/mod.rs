@@ -1,14 +1,16 @@
 //! Sums to report: asks the estimators, words the answers.
 
+mod batches;
 mod comparisons;
 mod effective_size;
 mod latest;
 mod losses;
 mod strata;
 
+pub use batches::notes as batch_notes;
 pub use comparisons::comparisons;
 pub use effective_size::{Fits, effective_size, fits, summaries};
-pub use latest::{allele_spectra, at_risk, carriers};
+pub use latest::{allele_spectra, at_risk, carrier_pairs, carriers};
 pub use losses::losses;
 pub use strata::strata;
 

@@ -14,7 +14,9 @@ pub fn without_samples(mut report: Report) -> Report {
     let mut numbers: BTreeMap<String, usize> = BTreeMap::new();
     let first = report.carriers.iter_mut().map(|c| &mut c.sample);
     let listed = report.at_risk.iter_mut().flat_map(|a| &mut a.carriers);
-    for carrier in first.chain(listed) {
+    let paired = report.carrier_pairs.iter_mut();
+    let paired = paired.flat_map(|pair| [&mut pair.female, &mut pair.male]);
+    for carrier in first.chain(listed).chain(paired) {
         let next = numbers.len() + 1;
         let number = *numbers.entry(std::mem::take(carrier)).or_insert(next);
         *carrier = format!("carrier {number}");

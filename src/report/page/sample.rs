@@ -203,6 +203,16 @@ pub fn two_populations() -> Report {
             carrier("elk 3", 1, 1.9),
             carrier("elk 9", 0, 0.6),
         ],
+        carrier_pairs: vec![CarrierPair {
+            population: "Aldermere".to_owned(),
+            stratum: "Aldermere@2024".to_owned(),
+            female: "elk 12".to_owned(),
+            male: "elk 3".to_owned(),
+            only_female: 3,
+            only_male: 1,
+            both: 1,
+            together: 5,
+        }],
         allele_spectra: Vec::new(),
         warnings: vec![Warning {
             code: "plan_not_stated".to_owned(),
@@ -241,6 +251,7 @@ fn outliers() -> Outliers {
             locus("chr10", 7_500_000, 0.02),
             locus("chr2", 1_250_000, 0.9),
         ],
+        other_causes: vec!["linked loci: neighbours in the list may share one cause".to_owned()],
     }
 }
 
@@ -319,6 +330,7 @@ pub fn empty() -> Report {
         losses: Vec::new(),
         at_risk: Vec::new(),
         carriers: Vec::new(),
+        carrier_pairs: Vec::new(),
         warnings: Vec::new(),
         ..two_populations()
     }

@@ -5,7 +5,7 @@ use serde::Serialize;
 use crate::report::figures::numbers::{count, decimals, level, plain};
 use crate::report::figures::subject::Subject;
 use crate::report::figures::table::{Cell, Table};
-use crate::report::wire::{AtRisk, InputFile, Loci, Loss, LossCall, Report, Samples};
+use crate::report::wire::{AtRisk, CarrierPair, InputFile, Loci, Loss, LossCall, Report, Samples};
 
 use super::answer::{short_size, warnings_of, when};
 
@@ -176,6 +176,35 @@ pub fn at_risk(alleles: &[AtRisk]) -> Table {
             Cell::from(a.copies),
             Cell::from(a.gene_copies),
             Cell::from(a.carriers.join(", ")),
+        ]
+    }));
+    table
+}
+
+/// Pairs of carriers that would bring scarce alleles together.
+pub fn carrier_pairs(pairs: &[CarrierPair]) -> Table {
+    let mut table = Table::new(
+        "Pairs of a female and a male of the latest sample that hold the most scarce alleles together. \
+         Their kinship is not considered: hold them against the pedigree.",
+        &[
+            ("population", "Population"),
+            ("female", "Female"),
+            ("male", "Male"),
+            ("only_female", "Only she carries"),
+            ("only_male", "Only he carries"),
+            ("both", "Both carry"),
+            ("together", "Together"),
+        ],
+    );
+    table.rows.extend(pairs.iter().map(|p| {
+        vec![
+            Cell::from(p.population.as_str()),
+            Cell::from(p.female.as_str()),
+            Cell::from(p.male.as_str()),
+            Cell::from(p.only_female),
+            Cell::from(p.only_male),
+            Cell::from(p.both),
+            Cell::from(p.together),
         ]
     }));
     table

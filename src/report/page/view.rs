@@ -259,6 +259,12 @@ fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Se
             &tables::at_risk(&report.at_risk),
         ));
     }
+    if !report.carrier_pairs.is_empty() {
+        at_risk.tables.push(listing(
+            "Pairs of carriers that would bring scarce alleles together",
+            &tables::carrier_pairs(&report.carrier_pairs),
+        ));
+    }
     let mut size = section(
         "effective-size",
         "Effective population size",
@@ -341,10 +347,20 @@ fn outlier_words(report: &Report) -> Vec<String> {
         0 => vec![format!(
             "{of} tested: no locus changed more than drift explains."
         )],
-        n => vec![format!(
-            "{of} tested: {} out of line.",
-            counted(n, "locus is", "loci are")
-        )],
+        n => {
+            let mut causes: Vec<&str> = Vec::new();
+            for cause in tested.iter().flat_map(|o| &o.other_causes) {
+                if !causes.contains(&cause.as_str()) {
+                    causes.push(cause);
+                }
+            }
+            let words = format!(
+                "{of} tested: {} out of line. Before selection is thought of, rule out: {}.",
+                counted(n, "locus is", "loci are"),
+                causes.join("; ")
+            );
+            vec![words]
+        }
     }
 }
 

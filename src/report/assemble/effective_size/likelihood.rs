@@ -255,7 +255,7 @@ fn one(
             Estimate {
                 value: Ok(interval.rate),
                 variance_loci: Some(interval.variance_loci),
-                variance_individuals: Some(interval.variance_individuals),
+                variance_individuals: Some(interval.variance - interval.variance_loci),
                 degrees: Some(interval.degrees_of_freedom),
                 loci: fits.loci,
                 blocks: found.blocks as u64,

@@ -4,7 +4,7 @@ use super::{FEWEST_INDIVIDUALS, Subject};
 use crate::locus::PairTerms;
 use crate::merge::PairSums;
 use crate::model::{Comparison, ComparisonKind, SamplingPlan};
-use crate::ne::estimate::{Absence, Estimate, two_way_estimate};
+use crate::ne::estimate::{Absence, Estimate, drift_estimate};
 use crate::ne::temporal::{TemporalSample, drift_rate_fc, drift_rate_fk, drift_rate_fs};
 use crate::report::assemble::{Findings, ratio};
 use crate::report::wire;
@@ -156,7 +156,15 @@ impl Estimator {
             };
             (self.invert)((self.f)(t)?, &sample)
         };
-        two_way_estimate(&sums.change, rate, |t| t.temporal_loci, Absence::NoLoci)
+        let sampling = harmonic_sizes(&sums.change.total())
+            .map_or(0.0, |(first, later)| 0.5 / first + 0.5 / later);
+        drift_estimate(
+            &sums.change,
+            rate,
+            |t| t.temporal_loci,
+            generations,
+            sampling,
+        )
     }
 }
 
