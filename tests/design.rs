@@ -4,7 +4,7 @@ mod common;
 
 use serde_json::Value;
 
-use common::{close, find, run};
+use common::{close, find, measure_run, run};
 
 fn document(options: &str) -> Value {
     let arguments = ["design"].into_iter().chain(options.split_whitespace());
@@ -113,7 +113,7 @@ fn what_a_precision_takes() {
 #[test]
 fn simulated_power() {
     let options = "--individuals 10,40 --loci 30,300 --generations 4 --effective-size 20 \
-        --size-limit 100 --stable-size 400 --simulate 20 --cost-per-sample 30 --cost-per-locus 1";
+        --size-limit 100 --stable-size 400 --simulate 10 --cost-per-sample 30 --cost-per-locus 1";
     let got = document(options);
     let of = |declared: &str, individuals: u64, loci: u64| {
         let all = got["power"].as_array().unwrap().iter();
@@ -145,6 +145,10 @@ fn simulated_power() {
         .map(|p| p["design"]["cost"].as_f64().unwrap())
         .collect();
     assert!(costs.windows(2).all(|w| w[0] <= w[1]), "{costs:?}");
+    // Nearly every call of a lost allele is right, by its stated chance of 0.95.
+    let lost = of("allele_called_lost", 40, 300);
+    assert!(lost["power"].as_f64().unwrap() >= 0.9, "{lost}");
+    assert!(lost["false_alarms"].as_f64().unwrap() <= 0.5, "{lost}");
     let again = document(&format!("{options} --threads 1"));
     assert_eq!(got["power"], again["power"]);
 }
@@ -165,5 +169,72 @@ fn bad_options_are_told() {
         assert_eq!(got.code, Some(2), "{options}: {}", got.stderr);
         assert!(got.stderr.contains(part), "{options}: {}", got.stderr);
         assert!(got.stdout.is_empty());
+    }
+}
+
+/// The power of a design is the share of fresh populations, simulated and measured by the commands, of
+/// which the thing is declared.
+#[test]
+fn power_agrees_with_populations_simulated_afresh() {
+    let got = document(
+        "--individuals 15 --loci 80 --generations 4 --effective-size 30.5 --size-limit 90 \
+         --stable-size 400 --chromosomes 10 --simulate 80 --seed 1",
+    );
+    let folder = tempfile::tempdir().expect("a scratch folder");
+    let scenario = folder.path().join("fresh.toml");
+    // The same population in a scenario of its own; chromosomes of one Morgan.
+    std::fs::write(
+        &scenario,
+        "generation_years = 1\nsettling_generations = 3\n\
+         chromosome = [{ name = \"f\", length_bp = 50_000_000, map_length_cm = 100, copies = 10 }]\n\
+         loci = [{ count = 80, frequencies = { minor = [0.05, 0.5] } }]\n\
+         population = [{ name = \"Fen\", size = 30 }]\n\
+         visit = [{ generation = 0, individuals = 15 }, { generation = 4, individuals = 15 }]\n",
+    )
+    .expect("a scratch file");
+    let runs = 60;
+    let (mut size, mut diversity) = (0, 0);
+    for seed in 0..runs {
+        let out = folder.path().join(format!("run{seed}"));
+        let made = run([
+            "rehearse".as_ref(),
+            scenario.as_os_str(),
+            "-o".as_ref(),
+            out.as_os_str(),
+            "--seed".as_ref(),
+            format!("{}", 90_000 + seed).as_ref(),
+        ]);
+        assert_eq!(made.code, Some(0), "{}", made.stderr);
+        let report = measure_run(
+            &out.join("calls.vcf.gz"),
+            &out.join("samples.tsv"),
+            &["--generation-years", "1", "--sampling-plan", "II"],
+        )
+        .json();
+        let sizes = report["effective_size"].as_array().unwrap();
+        let fs = sizes.iter().find(|e| e["method"] == "temporal_fs").unwrap();
+        size += i32::from(fs["interval"][1].as_f64().is_some_and(|high| high < 90.0));
+        let change = &report["comparisons"][0]["change"]["expected_heterozygosity"];
+        diversity += i32::from(change["interval"][1].as_f64().unwrap() < 0.0);
+    }
+    for (declared, count) in [
+        ("size_below_limit_by_temporal_fs", size),
+        ("heterozygosity_lower", diversity),
+    ] {
+        let power = find(&got["power"], "declared", declared)["power"]
+            .as_f64()
+            .unwrap();
+        let share = f64::from(count) / f64::from(runs as i32);
+        // Three standard errors of the difference of two binomial shares.
+        let p = 0.5 * (power + share);
+        let error = (p * (1.0 - p) * (1.0 / 80.0 + 1.0 / 60.0)).sqrt().max(0.01);
+        assert!(
+            (power - share).abs() <= 3.0 * error,
+            "{declared}: {power} {share}"
+        );
+        assert!(
+            power > 0.1 && power < 1.0,
+            "{declared}: no test of anything at {power}"
+        );
     }
 }

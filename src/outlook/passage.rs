@@ -34,13 +34,17 @@ fn size_of(rate: f64) -> Size {
 
 /// Drift from the baseline to a later visit.
 ///
-/// The population draws its first 2N copies from the baseline frequency as generation 1. 2Ne is
+/// The population draws its first 2N copies from the baseline frequency as generation 1. That frequency is
+/// one of a population of the same size: an allele that is there at all has one copy of 2Ne, so lower
+/// frequencies are not believed, whatever the prior says of them. 2Ne is
 /// rounded to a whole number while the chain is exact; a fraction of a generation mixes the two
 /// neighbouring numbers of generations.
 #[derive(Debug, Clone)]
 pub(super) struct Passage {
-    /// Rule of the prior of the baseline frequency.
+    /// Rule of the prior of the baseline frequency, over the sizes in which it is possible.
     prior: Rule,
+    /// By node of the prior, the weight of those sizes.
+    possible: Vec<f64>,
     /// Nodes of the later frequency.
     pub nodes: Vec<f64>,
     /// Expectation at each baseline node of a function given at [`Passage::nodes`].
@@ -56,19 +60,29 @@ impl Passage {
         later_copies: u32,
     ) -> Self {
         let grid = Grid::new(Grid::order_for(later_copies));
-        let rule = Rule::beta(BASELINE_NODES, prior.a, prior.b);
+        let mut rule = Rule::beta(BASELINE_NODES, prior.a, prior.b);
+        let possible: Vec<f64> = rule.nodes.iter().map(|&p| possible(rates, p)).collect();
+        for (weight, share) in rule.weights.iter_mut().zip(&possible) {
+            *weight *= share;
+        }
         let mut carry = Matrix::zeros(rule.nodes.len(), grid.nodes.len());
         for r in rates.iter().filter(|r| r.weight > 0.0) {
             let part = match size_of(r.rate) {
                 Size::NoDrift => grid.carry(&rule.nodes, 0.0),
-                Size::Copies(copies) => grid.exact(&rule.nodes, generations, copies),
+                Size::Copies(copies) => {
+                    grid.exact(&in_copies(&rule.nodes, copies), generations, copies)
+                }
                 Size::Rate(u) => grid.carry(&rule.nodes, scaled_time(u, generations)),
             };
-            for (c, p) in carry.data.iter_mut().zip(&part.data) {
-                *c += r.weight * p;
+            for (i, _) in rule.nodes.iter().enumerate().filter(|(_, p)| holds(r, **p)) {
+                let share = r.weight / possible[i];
+                for (c, p) in carry.row_mut(i).iter_mut().zip(part.row(i)) {
+                    *c += share * p;
+                }
             }
         }
         Passage {
+            possible,
             prior: rule,
             nodes: grid.nodes,
             carry,
@@ -88,11 +102,16 @@ impl Passage {
         for r in rates.iter().filter(|r| r.weight > 0.0) {
             let part = match size_of(r.rate) {
                 Size::NoDrift => continue,
-                Size::Copies(copies) => lost_exactly(&self.prior.nodes, copies, generations),
+                Size::Copies(copies) => {
+                    lost_exactly(&in_copies(&self.prior.nodes, copies), copies, generations)
+                }
                 Size::Rate(u) => lost_from_many(&self.prior.nodes, u, generations),
             };
-            for (o, p) in out.iter_mut().zip(part) {
-                *o += r.weight * p;
+            let nodes = self.prior.nodes.iter().zip(&self.possible);
+            for ((o, chance), (&p, possible)) in out.iter_mut().zip(part).zip(nodes) {
+                if holds(r, p) {
+                    *o += r.weight / possible * chance;
+                }
             }
         }
         out
@@ -120,6 +139,26 @@ impl Passage {
 
 pub(super) fn dot(a: &[f64], b: &[f64]) -> f64 {
     a.iter().zip(b).map(|(a, b)| a * b).sum()
+}
+
+/// Whether a population of this size can have an allele of frequency p, and another beside it: at least
+/// half of one gene copy among its 2Ne, the nearest whole number then being one.
+fn holds(r: &RateWeight, p: f64) -> bool {
+    2.0 * p.min(1.0 - p) >= r.rate
+}
+
+/// The nearest frequencies of whole copies, at least one of either allele.
+fn in_copies(frequencies: &[f64], copies: u32) -> Vec<f64> {
+    let all = f64::from(copies);
+    let most = (all - 1.0).max(1.0);
+    let nearest = |p: &f64| (p * all).round().clamp(1.0, most) / all;
+    frequencies.iter().map(nearest).collect()
+}
+
+/// Weight of the sizes that can.
+fn possible(rates: &[RateWeight], p: f64) -> f64 {
+    let able = rates.iter().filter(|r| holds(r, p));
+    able.map(|r| r.weight).sum()
 }
 
 fn scaled_time(u: f64, generations: f64) -> f64 {

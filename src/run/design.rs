@@ -1,23 +1,17 @@
 //! `genewane design`: precision by formula, power by simulation with the estimators of `measure`.
 
 use std::cmp::Ordering;
-use std::sync::Arc;
 
-use rayon::prelude::*;
+mod power;
 
+use self::power::{DECLARED, powers};
 use super::verdict::provenance;
 use crate::cli::DesignPlan;
 use crate::error::{Error, Result};
-use crate::merge::{Scheme, Sums};
-use crate::model::{
-    DEFAULT_FALSE_DISCOVERY_RATE, DEFAULT_LEVEL, Locus, Programme, comparisons, default_gene_copies,
-};
+use crate::model::DEFAULT_LEVEL;
 use crate::outlook::design::{
-    Setting, Temporal, individuals_for_cv, individuals_to_see, linkage, loci_for_cv, missed,
-    scenario, temporal,
+    Temporal, individuals_for_cv, individuals_to_see, linkage, loci_for_cv, missed, temporal,
 };
-use crate::outlook::rehearse::simulate;
-use crate::report::assemble::{self, Findings};
 use crate::report::design::{
     ASSUMPTIONS, AlleleDetection, Choice, DESIGN_FORMAT, DESIGN_VERSION, Design, Missed,
     NeededForCv, Power, Precision, Sampling, text_table,
@@ -26,17 +20,6 @@ use crate::report::{CAUTIONS, Output};
 
 /// Largest simulated population: larger ones take minutes a design and are never called declining.
 const MOST_ADULTS: f64 = 20_000.0;
-
-/// What may be declared of a simulated population, in the order of [`declared`].
-const DECLARED: [&str; 5] = [
-    "size_below_limit_by_temporal_fs",
-    "size_below_limit_by_linkage",
-    "heterozygosity_lower",
-    "richness_lower",
-    "allele_not_seen_again",
-];
-/// Of these, how many are about the effective size.
-const ABOUT_SIZE: usize = 2;
 
 /// How designs are weighed up.
 const METHODS: [(&str, &str); 4] = [
@@ -214,122 +197,6 @@ fn detection(plan: &DesignPlan, frequency: f64) -> AlleleDetection {
             })
             .collect(),
     }
-}
-
-/// Simulated power of every design; nothing when no simulations are asked for.
-fn powers(plan: &DesignPlan) -> Result<Vec<Power>> {
-    if plan.simulations == 0 {
-        return Ok(Vec::new());
-    }
-    let threads = plan.threads.unwrap_or_else(super::available_threads);
-    let pool = rayon::ThreadPoolBuilder::new()
-        .num_threads(threads)
-        .build()
-        .map_err(|e| Error::Usage(format!("{threads} threads cannot be started: {e}")))?;
-    let mut all = Vec::new();
-    for design in each(plan) {
-        let at = |size: f64| pool.install(|| shares(plan, &design, size));
-        let (power, at_limit, stable) = (
-            at(design.effective_size)?,
-            at(plan.size_limit)?,
-            at(plan.stable_size)?,
-        );
-        for (i, declared) in DECLARED.into_iter().enumerate() {
-            let (alarms, false_alarms_at) = match i < ABOUT_SIZE {
-                true => (at_limit[i], plan.size_limit),
-                false => (stable[i], plan.stable_size),
-            };
-            let simulations = f64::from(plan.simulations);
-            all.push(Power {
-                declared: declared.to_owned(),
-                design: design.clone(),
-                simulations: plan.simulations.into(),
-                power: power[i],
-                error: (power[i] * (1.0 - power[i]) / simulations).sqrt(),
-                false_alarms: alarms,
-                false_alarms_at,
-            });
-        }
-    }
-    Ok(all)
-}
-
-/// Shares of simulated populations of which each thing is declared.
-fn shares(plan: &DesignPlan, design: &Sampling, size: f64) -> Result<[f64; DECLARED.len()]> {
-    // With two sexes in equal numbers, Ne is N + 1/2.
-    let adults = ((size - 0.5).round() as u32).max(2);
-    let setting = Setting {
-        adults,
-        individuals: design.individuals as u32,
-        loci: design.loci as u32,
-        alleles: plan.alleles,
-        generations: design.generations.unwrap_or(1) as u32,
-        chromosomes: plan.chromosomes,
-    };
-    let runs: Vec<[bool; DECLARED.len()]> = (0..u64::from(plan.simulations))
-        .into_par_iter()
-        .map(|run| declared(plan, &setting, plan.seed.wrapping_add(run)))
-        .collect::<Result<_>>()?;
-    let share = |i: usize| runs.iter().filter(|r| r[i]).count() as f64 / runs.len() as f64;
-    Ok(std::array::from_fn(share))
-}
-
-/// What the report on one simulated population would declare.
-fn declared(plan: &DesignPlan, setting: &Setting, seed: u64) -> Result<[bool; DECLARED.len()]> {
-    let simulation = simulate(&scenario(setting), seed)?;
-    let strata = simulation.model_strata();
-    let programme = Programme::default();
-    let compared = comparisons(&strata, &programme).map_err(|problems| Error::Sheet {
-        path: "design".into(),
-        problems,
-    })?;
-    let gene_copies = default_gene_copies(&strata).unwrap_or(2);
-    let pairs = &compared.comparisons;
-    let mut sums = Sums::new(Arc::new(Scheme::new(&strata, pairs, 0.0, gene_copies, 0)));
-    let mut locus = Locus::default();
-    for index in 0..simulation.loci.len() {
-        simulation.fill_locus(index, &mut locus);
-        sums.add(&locus);
-    }
-    sums.flush();
-    let findings = Findings {
-        strata: &strata,
-        comparisons: pairs,
-        sums: &sums,
-        programme: &programme,
-        level: DEFAULT_LEVEL,
-        false_discovery_rate: DEFAULT_FALSE_DISCOVERY_RATE,
-        fits: Vec::new(),
-    };
-    let sizes = assemble::effective_size(&findings);
-    let latest = strata.strata.last().map_or("", |s| s.name.as_str());
-    let below = |method: &str| {
-        sizes
-            .iter()
-            .filter(|e| e.method == method && e.headline && e.to == latest)
-            .filter_map(|e| e.interval?.1)
-            .any(|high| high < plan.size_limit)
-    };
-    let compared = assemble::comparisons(&findings);
-    let change = compared.first();
-    let richness = assemble::strata(&findings);
-    let before = richness.first().and_then(|s| s.allelic_richness.estimate);
-    let lower =
-        |limit: f64, interval: Option<[f64; 2]>| interval.is_some_and(|[_, high]| high < limit);
-    Ok([
-        below("temporal_fs"),
-        below("linkage"),
-        change.is_some_and(|c| lower(0.0, c.change.expected_heterozygosity.interval)),
-        change.is_some_and(|c| {
-            lower(
-                -plan.richness_drop * before.unwrap_or(0.0),
-                c.change.allelic_richness.interval,
-            )
-        }),
-        change
-            .and_then(|c| c.alleles.as_ref())
-            .is_some_and(|a| a.not_seen_again > 0),
-    ])
 }
 
 /// The cheaper first; without costs the one with fewer individuals, then fewer loci.

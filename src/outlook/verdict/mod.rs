@@ -86,7 +86,10 @@ pub fn judge(limit: Limit, by: By, fact: &Fact) -> (Answer, String) {
             } else {
                 Answer::Breached
             };
-            (answer, format!("it is {flag}"))
+            (
+                answer,
+                format!("the report says {}", if *flag { "yes" } else { "no" }),
+            )
         }
         (Fact::Flag(_), Limit::Number(..)) => (
             Answer::CannotTell,

@@ -116,10 +116,11 @@ pub struct NeededForCv {
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Power {
-    /// What is declared: `size_below_limit_by_temporal_fs`, `size_below_limit_by_linkage` (the whole
-    /// interval is below the limit), `heterozygosity_lower` or `richness_lower` (the whole interval
-    /// of the change is below 0, or below the drop asked for), `allele_not_seen_again` (at least one
-    /// allele of the first visit).
+    /// What is declared: `size_below_limit_by_temporal_fs`, `size_below_limit_by_temporal_likelihood`,
+    /// `size_below_limit_by_linkage` (the whole interval is below the limit), `heterozygosity_lower` or
+    /// `richness_lower` (the whole interval of the change is below 0, or below the drop asked for),
+    /// `allele_not_seen_again` (at least one allele of the first visit), `allele_called_lost` (at least one
+    /// allele is called lost and no adult has it any more; a false alarm: one that some adult has).
     pub declared: String,
     /// The design.
     pub design: Sampling,

@@ -65,7 +65,7 @@ fn limit(limit: &Limit) -> String {
     let side = limit.side.replace('_', " ");
     match (limit.number, limit.flag) {
         (Some(limit), _) => format!("{side} {}", number(limit)),
-        (None, Some(flag)) => format!("{side} {flag}"),
+        (None, Some(flag)) => format!("must be {}", if flag { "yes" } else { "no" }),
         (None, None) => side,
     }
 }
