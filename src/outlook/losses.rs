@@ -7,6 +7,7 @@
 
 use std::collections::HashMap;
 
+pub use super::passage::{BaselineCount, Pool};
 use super::passage::{Passage, dot};
 use crate::ne::likelihood::{BetaPrior, RateWeight};
 
@@ -61,13 +62,37 @@ pub struct LossTable {
 
 impl LossTable {
     /// Prepares a table: the fitted prior, weighted drift rates (which add up to 1), generations
-    /// since the baseline (more than 0), and the most gene copies typed later at any locus.
-    pub fn new(prior: BetaPrior, rates: &[RateWeight], generations: f64, most_later: u32) -> Self {
-        let counted = Passage::new(prior, rates, generations, most_later);
+    /// since the baseline (more than 0), and the most gene copies typed later at any locus. `counts` are the
+    /// baseline counts of all alleles that the prior was fitted to; none leave it as it is.
+    pub fn new(
+        prior: BetaPrior,
+        counts: &[BaselineCount],
+        pool: Pool,
+        rates: &[RateWeight],
+        generations: f64,
+        most_later: u32,
+    ) -> Self {
+        let counted = Passage::new(prior, counts, pool, rates, generations, most_later);
         // A symmetric prior makes both sides alike; the work is the same for either.
         let other = match prior == prior.exchanged() {
             true => counted.clone(),
-            false => Passage::new(prior.exchanged(), rates, generations, most_later),
+            false => {
+                let mirrored: Vec<BaselineCount> = counts
+                    .iter()
+                    .map(|c| BaselineCount {
+                        copies: c.typed.saturating_sub(c.copies),
+                        ..*c
+                    })
+                    .collect();
+                Passage::new(
+                    prior.exchanged(),
+                    &mirrored,
+                    pool,
+                    rates,
+                    generations,
+                    most_later,
+                )
+            }
         };
         let lost = [
             counted.lost(rates, generations),
@@ -256,14 +281,17 @@ mod tests {
     #[test]
     fn equals_the_exact_matrix_and_the_coalescent() {
         let flat = BetaPrior::FLAT;
-        let small = LossTable::new(flat, &certain(100.0), 10.0, 40).chances(watch(2, 40, 40));
+        let small = LossTable::new(flat, &[], Pool::Endless, &certain(100.0), 10.0, 40)
+            .chances(watch(2, 40, 40));
         close(small.not_seen, 0.42569865986454314, 1e-9);
         close(small.lost, 0.33897644932819176, 1e-9);
         close(small.lost_if_not_seen.unwrap(), 0.796282632029083, 1e-9);
-        let large = LossTable::new(flat, &certain(1600.0), 160.0, 40).chances(watch(2, 40, 40));
+        let large = LossTable::new(flat, &[], Pool::Endless, &certain(1600.0), 160.0, 40)
+            .chances(watch(2, 40, 40));
         close(large.not_seen, 0.4183233834803522, 1e-8);
         close(large.lost, 0.2990190959198393, 1e-8);
-        let huge = LossTable::new(flat, &certain(1e6), 1e5, 40).chances(watch(2, 40, 40));
+        let huge = LossTable::new(flat, &[], Pool::Endless, &certain(1e6), 1e5, 40)
+            .chances(watch(2, 40, 40));
         close(huge.not_seen, 0.4178473961765248, 1e-6);
         close(huge.lost, 0.2944996008361613, 5e-5);
         close(huge.lost_if_not_seen.unwrap(), 0.7048018092991689, 1e-4);
@@ -289,12 +317,22 @@ mod tests {
                 .enumerate()
                 .map(|(k, p)| p * (1.0 - k as f64 / f64::from(copies)).powi(later as i32))
                 .sum();
-            let mut table = LossTable::new(prior, &certain(f64::from(copies)), t, later);
+            let mut table = LossTable::new(
+                prior,
+                &[],
+                Pool::Endless,
+                &certain(f64::from(copies)),
+                t,
+                later,
+            );
             let got = table.chances(watch(x, n, later));
             close(got.not_seen, unseen, 1e-9);
             close(got.lost, f[0], 1e-9);
         }
-        let at = |t| LossTable::new(prior, &certain(60.0), t, 80).chances(watch(1, 50, 80));
+        let at = |t| {
+            LossTable::new(prior, &[], Pool::Endless, &certain(60.0), t, 80)
+                .chances(watch(1, 50, 80))
+        };
         let (two, three, between) = (at(2.0), at(3.0), at(2.25));
         close(between.lost, 0.75 * two.lost + 0.25 * three.lost, 1e-12);
         close(
@@ -308,8 +346,15 @@ mod tests {
     #[test]
     fn sides_mirror_each_other_and_fixed_is_the_rest_lost() {
         let prior = BetaPrior { a: 0.3, b: 2.0 };
-        let mut table = LossTable::new(prior, &certain(80.0), 5.0, 60);
-        let mut mirrored = LossTable::new(prior.exchanged(), &certain(80.0), 5.0, 60);
+        let mut table = LossTable::new(prior, &[], Pool::Endless, &certain(80.0), 5.0, 60);
+        let mut mirrored = LossTable::new(
+            prior.exchanged(),
+            &[],
+            Pool::Endless,
+            &certain(80.0),
+            5.0,
+            60,
+        );
         let other = Watch {
             side: Side::Other,
             ..watch(3, 40, 60)
@@ -325,7 +370,14 @@ mod tests {
 
     #[test]
     fn without_drift_nothing_is_lost() {
-        let mut table = LossTable::new(BetaPrior::FLAT, &RateWeight::certain(None), 5.0, 60);
+        let mut table = LossTable::new(
+            BetaPrior::FLAT,
+            &[],
+            Pool::Endless,
+            &RateWeight::certain(None),
+            5.0,
+            60,
+        );
         let chances = table.chances(watch(1, 40, 60));
         assert_eq!(chances.lost, 0.0);
         // Beta(2, 40): E (1-p)^60 = B(2, 100)/B(2, 40) = (40 * 41)/(100 * 101).
@@ -394,7 +446,14 @@ mod tests {
             let prior = fit_prior(loci.iter().map(|&(x, ..)| (x, n0)))
                 .unwrap()
                 .prior;
-            let mut table = LossTable::new(prior, &certain(f64::from(copies)), f64::from(t), later);
+            let mut table = LossTable::new(
+                prior,
+                &[],
+                Pool::Endless,
+                &certain(f64::from(copies)),
+                f64::from(t),
+                later,
+            );
             let (mut said, mut lost, mut unseen, mut expected): (f64, f64, f64, _) =
                 (0.0, 0.0, 0.0, Expected::default());
             for &(x0, now, seen) in &loci {

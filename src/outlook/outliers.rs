@@ -8,7 +8,7 @@ use std::collections::HashMap;
 
 use statrs::distribution::{ChiSquared, ContinuousCDF};
 
-use super::passage::{Passage, dot};
+use super::passage::{Passage, Pool, dot};
 use crate::ne::likelihood::{BetaPrior, RateWeight};
 use crate::ne::matrix::Matrix;
 use crate::ne::wright_fisher::binomial_probabilities;
@@ -33,7 +33,7 @@ impl OutlierTest {
     /// Exact for 2Ne up to 2000 (rounded to a whole number), by the diffusion beyond.
     pub fn new(prior: BetaPrior, rates: &[RateWeight], generations: f64, most_later: u32) -> Self {
         OutlierTest {
-            passage: Passage::new(prior, rates, generations, most_later),
+            passage: Passage::new(prior, &[], Pool::Endless, rates, generations, most_later),
             most_later,
             by_size: HashMap::new(),
             known: HashMap::new(),

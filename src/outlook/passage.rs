@@ -34,13 +34,12 @@ fn size_of(rate: f64) -> Size {
 
 /// Drift from the baseline to a later visit.
 ///
-/// The population draws its first 2N copies from the baseline frequency as generation 1. That frequency is
-/// one of a population of the same size: an allele that is there at all has one copy of 2Ne, so lower
-/// frequencies are not believed, whatever the prior says of them. 2Ne is
+/// The population draws its first 2N copies from the baseline frequency as generation 1. 2Ne is
 /// rounded to a whole number while the chain is exact; a fraction of a generation mixes the two
 /// neighbouring numbers of generations.
 #[derive(Debug, Clone)]
 pub(super) struct Passage {
+    pool: Pool,
     /// Rule of the prior of the baseline frequency, over the sizes in which it is possible.
     prior: Rule,
     /// By node of the prior, the weight of those sizes.
@@ -52,16 +51,23 @@ pub(super) struct Passage {
 }
 
 impl Passage {
-    /// Prepares for later samples of up to `later_copies` gene copies.
+    /// Prepares for later samples of up to `later_copies` gene copies. `counts` are those that the prior is
+    /// bent to (see [`spectrum`]); without any it stays as it is.
     pub fn new(
         prior: BetaPrior,
+        counts: &[BaselineCount],
+        pool: Pool,
         rates: &[RateWeight],
         generations: f64,
         later_copies: u32,
     ) -> Self {
         let grid = Grid::new(Grid::order_for(later_copies));
-        let mut rule = Rule::beta(BASELINE_NODES, prior.a, prior.b);
-        let possible: Vec<f64> = rule.nodes.iter().map(|&p| possible(rates, p)).collect();
+        let mut rule = spectrum(prior, counts);
+        let possible: Vec<f64> = rule
+            .nodes
+            .iter()
+            .map(|&p| pool.possible(rates, p))
+            .collect();
         for (weight, share) in rule.weights.iter_mut().zip(&possible) {
             *weight *= share;
         }
@@ -70,18 +76,21 @@ impl Passage {
             let part = match size_of(r.rate) {
                 Size::NoDrift => grid.carry(&rule.nodes, 0.0),
                 Size::Copies(copies) => {
-                    grid.exact(&in_copies(&rule.nodes, copies), generations, copies)
+                    grid.exact(&pool.near(&rule.nodes, copies), generations, copies)
                 }
                 Size::Rate(u) => grid.carry(&rule.nodes, scaled_time(u, generations)),
             };
-            for (i, _) in rule.nodes.iter().enumerate().filter(|(_, p)| holds(r, **p)) {
-                let share = r.weight / possible[i];
-                for (c, p) in carry.row_mut(i).iter_mut().zip(part.row(i)) {
-                    *c += share * p;
+            for (i, &p) in rule.nodes.iter().enumerate() {
+                if pool.holds(r, p) {
+                    let share = r.weight / possible[i];
+                    for (c, p) in carry.row_mut(i).iter_mut().zip(part.row(i)) {
+                        *c += share * p;
+                    }
                 }
             }
         }
         Passage {
+            pool,
             possible,
             prior: rule,
             nodes: grid.nodes,
@@ -102,14 +111,16 @@ impl Passage {
         for r in rates.iter().filter(|r| r.weight > 0.0) {
             let part = match size_of(r.rate) {
                 Size::NoDrift => continue,
-                Size::Copies(copies) => {
-                    lost_exactly(&in_copies(&self.prior.nodes, copies), copies, generations)
-                }
+                Size::Copies(copies) => lost_exactly(
+                    &self.pool.near(&self.prior.nodes, copies),
+                    copies,
+                    generations,
+                ),
                 Size::Rate(u) => lost_from_many(&self.prior.nodes, u, generations),
             };
             let nodes = self.prior.nodes.iter().zip(&self.possible);
             for ((o, chance), (&p, possible)) in out.iter_mut().zip(part).zip(nodes) {
-                if holds(r, p) {
+                if self.pool.holds(r, p) {
                     *o += r.weight / possible * chance;
                 }
             }
@@ -141,24 +152,130 @@ pub(super) fn dot(a: &[f64], b: &[f64]) -> f64 {
     a.iter().zip(b).map(|(a, b)| a * b).sum()
 }
 
-/// Whether a population of this size can have an allele of frequency p, and another beside it: at least
-/// half of one gene copy among its 2Ne, the nearest whole number then being one.
-fn holds(r: &RateWeight, p: f64) -> bool {
-    2.0 * p.min(1.0 - p) >= r.rate
+/// What the gene copies were drawn from whose sample is the baseline.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Pool {
+    /// A source without end, in which any frequency is possible.
+    Endless,
+    /// The 2Ne copies of a population as large as it has been since: an allele that is there at all has one
+    /// of them, so that lower frequencies are not believed, whatever the prior says of them.
+    Finite,
 }
 
-/// The nearest frequencies of whole copies, at least one of either allele.
-fn in_copies(frequencies: &[f64], copies: u32) -> Vec<f64> {
-    let all = f64::from(copies);
-    let most = (all - 1.0).max(1.0);
-    let nearest = |p: &f64| (p * all).round().clamp(1.0, most) / all;
-    frequencies.iter().map(nearest).collect()
+impl Pool {
+    /// Whether a frequency is nearest to a possible one in a population of this size.
+    fn holds(self, r: &RateWeight, p: f64) -> bool {
+        self == Pool::Endless || 2.0 * p.min(1.0 - p) >= r.rate
+    }
+
+    /// Weight of the sizes in which it is.
+    fn possible(self, rates: &[RateWeight], p: f64) -> f64 {
+        let able = rates.iter().filter(|r| self.holds(r, p));
+        able.map(|r| r.weight).sum()
+    }
+
+    /// The nearest frequencies of whole copies, at least one of either allele.
+    fn near(self, frequencies: &[f64], copies: u32) -> Vec<f64> {
+        let all = f64::from(copies);
+        let most = (all - 1.0).max(1.0);
+        let nearest = |&p: &f64| match self {
+            Pool::Endless => p,
+            Pool::Finite => (p * all).round().clamp(1.0, most) / all,
+        };
+        frequencies.iter().map(nearest).collect()
+    }
 }
 
-/// Weight of the sizes that can.
-fn possible(rates: &[RateWeight], p: f64) -> f64 {
-    let able = rates.iter().filter(|r| holds(r, p));
-    able.map(|r| r.weight).sum()
+/// Alleles of one count in the baseline sample.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct BaselineCount {
+    /// Copies of the allele.
+    pub copies: u32,
+    /// Gene copies typed.
+    pub typed: u32,
+    /// Number of alleles.
+    pub alleles: u64,
+}
+
+/// How many alleles the Beta prior is worth beside those seen.
+const PRIOR_ALLELES: f64 = 50.0;
+/// Steps of the fit; further ones moved no chance of the demo by more than 0.002.
+const STEPS: usize = 60;
+
+/// The spectrum of frequencies: the Beta prior bent to the counts, since no Beta has the shape that drift
+/// gives a spectrum near 0 and 1.
+///
+/// Maximum a posteriori under a Dirichlet process around the Beta prior (Ferguson 1973, Ann Stat 1:209-230)
+/// worth [`PRIOR_ALLELES`], on the nodes of the prior, by expectation and maximisation (Dempster, Laird &
+/// Rubin 1977, J R Stat Soc B 39:1-38), given that an allele and another beside it were seen.
+fn spectrum(prior: BetaPrior, counts: &[BaselineCount]) -> Rule {
+    let mut rule = Rule::beta(BASELINE_NODES, prior.a, prior.b);
+    let varying = |c: &&BaselineCount| 0 < c.copies && c.copies < c.typed && c.alleles > 0;
+    let counts: Vec<&BaselineCount> = counts.iter().filter(varying).collect();
+    let Some(most) = counts.iter().map(|c| c.typed).max() else {
+        return rule;
+    };
+    let alleles: f64 = counts.iter().map(|c| c.alleles as f64).sum();
+    // Chance that a sample shows both alleles, by node.
+    let shown: Vec<f64> = rule
+        .nodes
+        .iter()
+        .map(|&p| {
+            let n = f64::from(most);
+            1.0 - (n * (-p).ln_1p()).exp() - (n * p.ln()).exp()
+        })
+        .collect();
+    let start: Vec<f64> = rule
+        .weights
+        .iter()
+        .zip(&shown)
+        .map(|(w, s)| w * s)
+        .collect();
+    let start = normalised(start);
+    let likelihoods: Vec<Vec<f64>> = counts
+        .iter()
+        .map(|c| {
+            let (x, rest) = (f64::from(c.copies), f64::from(c.typed - c.copies));
+            let logs: Vec<f64> = rule
+                .nodes
+                .iter()
+                .map(|p| x * p.ln() + rest * (-p).ln_1p())
+                .collect();
+            let top = logs.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+            let of = logs.iter().zip(&shown);
+            of.map(|(l, s)| if *s > 0.0 { (l - top).exp() / s } else { 0.0 })
+                .collect()
+        })
+        .collect();
+    let mut seen = start.clone();
+    for _ in 0..STEPS {
+        let mut next: Vec<f64> = start.iter().map(|s| PRIOR_ALLELES * s).collect();
+        for (c, likelihood) in counts.iter().zip(&likelihoods) {
+            let sum = dot(&seen, likelihood);
+            if sum > 0.0 {
+                let share = c.alleles as f64 / sum;
+                for ((n, s), l) in next.iter_mut().zip(&seen).zip(likelihood) {
+                    *n += share * s * l;
+                }
+            }
+        }
+        seen = next
+            .into_iter()
+            .map(|n| n / (PRIOR_ALLELES + alleles))
+            .collect();
+    }
+    let back = seen.iter().zip(&shown);
+    let weights = back
+        .map(|(g, s)| if *s > 0.0 { g / s } else { 0.0 })
+        .collect();
+    rule.weights = normalised(weights);
+    rule
+}
+
+fn normalised(mut weights: Vec<f64>) -> Vec<f64> {
+    let sum: f64 = weights.iter().sum();
+    weights.iter_mut().for_each(|w| *w /= sum);
+    weights
 }
 
 fn scaled_time(u: f64, generations: f64) -> f64 {

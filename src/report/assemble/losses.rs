@@ -8,7 +8,9 @@ use crate::model::{Comparison, ComparisonKind};
 use crate::ne::estimate::{Absence, quantile};
 use crate::ne::likelihood::RateWeight;
 use crate::ne::testing::benjamini_hochberg;
-use crate::outlook::losses::{CallLimits, Chances, LossCall, LossTable, LossTally, Side, Watch};
+use crate::outlook::losses::{
+    BaselineCount, CallLimits, Chances, LossCall, LossTable, LossTally, Pool, Side, Watch,
+};
 use crate::outlook::outliers::OutlierTest;
 use crate::report::wire;
 
@@ -51,7 +53,24 @@ impl<'a> Explained<'a> {
             .map(|(key, _)| key.later_typed)
             .max()
             .unwrap_or(0);
-        LossTable::new(self.fits.prior, weights, self.generations, most)
+        let counts: Vec<BaselineCount> = self
+            .fates
+            .by_key()
+            .map(|(key, fate)| BaselineCount {
+                copies: key.baseline_copies,
+                typed: key.baseline_typed,
+                alleles: fate.seen + fate.not_seen,
+            })
+            .collect();
+        // The parents of a baseline sample were as few as their successors, as far as anyone knows.
+        LossTable::new(
+            self.fits.prior,
+            &counts,
+            Pool::Finite,
+            weights,
+            self.generations,
+            most,
+        )
     }
 
     /// The fates of all alleles of the first visit.
