@@ -1,5 +1,7 @@
 //! What breaks the standard without touching a genotype: counted, told, and let through.
 
+use serde::{Deserialize, Serialize};
+
 /// A kind of harmless fault of a record.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub enum Remark {
@@ -72,7 +74,7 @@ impl Remark {
 }
 
 /// How often each remark was due, and the first record it was due for.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Remarks {
     counts: [u64; Remark::ALL.len()],
     first: [u64; Remark::ALL.len()],

@@ -3,6 +3,8 @@
 use std::collections::{BTreeMap, BTreeSet};
 use std::ops::Range;
 
+use serde::{Deserialize, Serialize};
+
 use super::fixed::{from_fixed, to_fixed};
 use crate::locus::Counts;
 use crate::model::Locus;
@@ -14,7 +16,7 @@ pub const FEW_CARRIERS: usize = 4;
 const OFFSPRING: i32 = 2;
 
 /// An allele in few carriers.
-#[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord)]
+#[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 pub struct ScarceAllele {
     /// Copies in the sample, the fewest first.
     pub copies: u32,
@@ -31,7 +33,7 @@ pub struct ScarceAllele {
 }
 
 /// Scarce alleles of one stratum and the individuals they hang on.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Carriers {
     slots: Range<usize>,
     most_listed: usize,
@@ -128,6 +130,17 @@ impl Carriers {
         }
         self.list.extend(other.list);
         self.trim();
+    }
+
+    /// Whether both are of the same individuals.
+    pub(super) fn same_shape(&self, other: &Carriers) -> bool {
+        let n = self.slots.len();
+        let within = |&i: &u32| (i as usize) < n;
+        self.slots == other.slots
+            && other.only_carrier.len() == n
+            && other.scarce_carried.len() == n
+            && other.vanish.len() == n
+            && other.list.iter().flat_map(|a| &a.carriers).all(within)
     }
 
     /// Slots of the individuals.

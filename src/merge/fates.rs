@@ -6,6 +6,8 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
+use serde::{Deserialize, Serialize};
+
 use crate::locus::Counts;
 use crate::model::Locus;
 
@@ -14,7 +16,7 @@ use crate::model::Locus;
 const EXACT_UP_TO: u32 = 64;
 
 /// Copies of an allele at the first visit, gene copies typed there, gene copies typed at the second.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
 pub struct FateKey {
     /// Copies of the allele at the first visit, at least 1.
     pub baseline_copies: u32,
@@ -25,7 +27,7 @@ pub struct FateKey {
 }
 
 /// Alleles with one key.
-#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Fate {
     /// Seen at both visits.
     pub seen: u64,
@@ -34,7 +36,7 @@ pub struct Fate {
 }
 
 /// An allele of the first visit that the second did not show.
-#[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord)]
+#[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 pub struct MissingAllele {
     /// Sorts the commonest at the baseline first: 2^32 less its frequency in steps of 2^-32.
     rank: u64,
@@ -55,7 +57,7 @@ pub struct MissingAllele {
 }
 
 /// The fates of all alleles of the first of two visits.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Fates {
     by_key: BTreeMap<FateKey, Fate>,
     missing: BTreeSet<MissingAllele>,

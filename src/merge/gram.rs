@@ -40,6 +40,8 @@ use std::collections::BTreeMap;
 use std::fmt;
 use std::ops::Range;
 
+use serde::{Deserialize, Serialize};
+
 use crate::locus::Counts;
 use crate::model::Genotypes;
 
@@ -104,7 +106,7 @@ impl FrequencyCutoff {
 }
 
 /// Why a stratum has no matrices.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 pub enum GramAbsent {
     /// Fewer individuals than [`MINIMUM_INDIVIDUALS`].
     TooFewIndividuals(usize),
@@ -142,13 +144,15 @@ pub(crate) fn enough_typed(typed: u32, individuals: usize) -> bool {
 
 /// The matrices of one stratum. [`GramStratum::merge`] is commutative and associative, with a new
 /// one as identity, bit for bit.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
 pub struct GramStratum {
     individuals: usize,
     /// Keyed by contig hash, or by its remainder once there were more than [`contig_groups`].
     contigs: BTreeMap<u64, ContigSums>,
     folded: bool,
+    #[serde(skip)]
     workbench: Workbench,
+    #[serde(skip)]
     sets: AlleleSets,
 }
 
@@ -166,6 +170,12 @@ impl GramStratum {
                 sets: AlleleSets::default(),
             }),
         }
+    }
+
+    /// Whether both are of as many individuals, each matrix of their size.
+    pub(super) fn same_shape(&self, other: &GramStratum) -> bool {
+        let n = self.individuals;
+        other.individuals == n && other.contigs.values().all(|sums| sums.has_size(n))
     }
 
     /// Individuals of the stratum.
@@ -248,7 +258,7 @@ impl GramStratum {
     }
 
     /// Empties the workbench into the sums of its contig.
-    fn flush(&mut self) {
+    pub(super) fn flush(&mut self) {
         if let Some(contig) = self.workbench.contig() {
             let key = self.key(contig);
             if let Some(sums) = self.contigs.get_mut(&key) {

@@ -1,5 +1,7 @@
 //! p values of any number of tests in bounded memory, and the false discovery rate over them.
 
+use serde::{Deserialize, Serialize};
+
 use crate::locus::hardy_weinberg::Direction;
 
 /// Bits of the fraction of a double that a bin drops: 8 are kept, so each octave has 256 bins and
@@ -12,7 +14,7 @@ const BINS: usize = 60 * 256 + 1;
 
 /// How many tests had which p, for deficits and excesses of heterozygotes apart. Counts only, so
 /// merging in any order gives the same.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct PValueHistogram {
     deficit: Vec<u64>,
     excess: Vec<u64>,
@@ -49,6 +51,11 @@ impl PValueHistogram {
     /// Adds one test with `p` in 0..=1.
     pub fn add(&mut self, p: f64, direction: Direction) {
         self.side(direction)[bin(p)] += 1;
+    }
+
+    /// Whether both have the same bins.
+    pub(super) fn same_shape(&self, other: &PValueHistogram) -> bool {
+        self.deficit.len() == other.deficit.len() && self.excess.len() == other.excess.len()
     }
 
     /// Adds all tests of another histogram; commutative and associative, with the default as

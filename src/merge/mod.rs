@@ -10,6 +10,7 @@ pub mod panel;
 mod scheme;
 pub mod screen;
 pub mod spectrum;
+mod stored;
 mod sums;
 mod two_way;
 mod windows;

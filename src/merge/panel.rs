@@ -6,6 +6,8 @@
 
 use std::collections::BTreeSet;
 
+use serde::{Deserialize, Serialize};
+
 use crate::model::{Genotypes, Locus, stable_hash};
 
 /// Loci kept. The likelihood gains little beyond (loci share one pedigree), and its cost and the
@@ -13,7 +15,7 @@ use crate::model::{Genotypes, Locus, stable_hash};
 pub const PANEL_LOCI: usize = 10_000;
 
 /// One locus of the panel.
-#[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord)]
+#[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 pub struct PanelLocus {
     priority: u64,
     /// Contig name.
@@ -27,7 +29,7 @@ pub struct PanelLocus {
 }
 
 /// The loci of lowest priority among those offered.
-#[derive(Debug, Clone, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Panel {
     loci: BTreeSet<PanelLocus>,
     offered: u64,

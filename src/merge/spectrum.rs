@@ -2,11 +2,13 @@
 
 use std::collections::BTreeMap;
 
+use serde::{Deserialize, Serialize};
+
 use super::fates::rounded;
 use crate::locus::Counts;
 
 /// Alleles by copies seen and gene copies typed, over loci that vary among all individuals in use.
-#[derive(Debug, Clone, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Spectrum {
     classes: BTreeMap<(u32, u32), u64>,
     /// Loci.

@@ -2,6 +2,8 @@
 
 use std::sync::Arc;
 
+use serde::{Deserialize, Serialize};
+
 use super::carriers::Carriers;
 use super::entry::{Buffers, Entry};
 use super::fates::Fates;
@@ -26,7 +28,7 @@ const TABLE_BUDGET: u64 = 20_000;
 const SHUFFLES: u32 = 10_000;
 
 /// Sums of one stratum.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Serialize, Deserialize)]
 pub struct StratumSums {
     /// Diversity.
     pub diversity: TwoWay<StratumTerms>,
@@ -39,7 +41,7 @@ pub struct StratumSums {
 }
 
 /// Sums of one pair of strata.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct PairSums {
     /// Differentiation and change.
     pub change: TwoWay<PairTerms>,
@@ -242,6 +244,16 @@ impl Sums {
         }
         self.kept += other.kept;
         self.polymorphic += other.polymorphic;
+    }
+
+    /// As [`Sums::flush`], with nothing waiting anywhere, as far as storing needs it.
+    pub(super) fn settle(&mut self) {
+        self.flush();
+        for stratum in &mut self.strata {
+            if let Ok(linkage) = &mut stratum.linkage {
+                linkage.flush();
+            }
+        }
     }
 
     /// Moves everything into the totals; must be called before reading.

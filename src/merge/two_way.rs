@@ -3,25 +3,30 @@
 use std::marker::PhantomData;
 use std::ops::Range;
 
+use serde::{Deserialize, Serialize};
+
 use super::fixed::{BATCH_LOCI, from_fixed};
 use super::windows::{Blocking, Windows};
 use crate::locus::{GenotypeClasses, Terms};
 
 /// Sums of the terms `T` over loci: in all, by genome window, and what each individual's absence
 /// would change. Merging is associative and commutative; an empty one is the identity.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(bound = "")]
 pub struct TwoWay<T> {
     total: Vec<i128>,
     windows: Windows,
     /// By individual, then term: the sum over loci of (terms without the individual - terms).
     absences: Vec<i128>,
     groups: Vec<Range<usize>>,
+    #[serde(skip)]
     batch: Batch,
+    #[serde(skip)]
     kind: PhantomData<T>,
 }
 
 /// Sums of the loci since the last flush, in i64.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 struct Batch {
     loci: u32,
     place: Option<(u64, u64)>,
@@ -149,6 +154,14 @@ impl<T: Terms> TwoWay<T> {
                 *total += i128::from(std::mem::take(sum));
             }
         }
+    }
+
+    /// Whether both hold sums of the same terms over the same individuals.
+    pub(super) fn same_shape(&self, other: &TwoWay<T>) -> bool {
+        self.groups == other.groups
+            && self.total.len() == other.total.len()
+            && self.absences.len() == other.absences.len()
+            && self.windows.same_shape(&other.windows)
     }
 
     /// Individuals by independent sample.

@@ -7,6 +7,8 @@
 
 use std::collections::BTreeMap;
 
+use serde::{Deserialize, Serialize};
+
 /// Levels at which windows double: from 2^16 bases up to a whole contig.
 const CONTIG_LEVEL: u32 = 32;
 /// Bases of the finest window, as a power of two.
@@ -18,7 +20,7 @@ const FOLD_BITS: u32 = 16;
 pub const ENOUGH_BLOCKS: usize = 20;
 
 /// Sums by window.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Windows {
     terms: usize,
     most: usize,
@@ -62,6 +64,14 @@ impl Windows {
             add_into(&mut self.sums, key, sums);
         }
         self.shrink();
+    }
+
+    /// Whether both hold windows of the same terms and bound.
+    pub(super) fn same_shape(&self, other: &Windows) -> bool {
+        self.terms == other.terms
+            && self.most == other.most
+            && other.level <= CONTIG_LEVEL + FOLD_BITS
+            && other.sums.values().all(|sums| sums.len() == self.terms)
     }
 
     /// Number of windows with loci.

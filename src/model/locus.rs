@@ -1,5 +1,7 @@
 //! One locus and the genotypes of the individuals in use.
 
+use serde::{Deserialize, Serialize};
+
 /// The allele code of a missing genotype in [`Genotypes::pair`]'s storage.
 pub const MISSING_ALLELE: u16 = u16::MAX;
 /// The dosage code of a missing genotype of a biallelic locus.
@@ -61,7 +63,7 @@ impl Locus {
 ///
 /// Up to two listed alleles, genotypes are dosages of allele 1 in one byte each; beyond, pairs of
 /// allele codes. Only one of the two stores is filled at a time.
-#[derive(Debug, Clone, Default, PartialEq, Eq, PartialOrd, Ord)]
+#[derive(Debug, Clone, Default, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 pub struct Genotypes {
     allele_count: usize,
     dosages: Vec<u8>,
@@ -89,6 +91,23 @@ impl Genotypes {
     /// Number of listed alleles, the reference included.
     pub fn allele_count(&self) -> usize {
         self.allele_count
+    }
+
+    /// Whether it has so many slots and no genotype names an allele that is not listed.
+    pub fn is_sound(&self, slots: usize) -> bool {
+        let stores = match self.is_biallelic() {
+            true => [self.dosages.len(), 0],
+            false => [0, self.pairs.len()],
+        };
+        let pair = |&[a, b]: &[u16; 2]| {
+            (a, b) == (MISSING_ALLELE, MISSING_ALLELE)
+                || (a <= b && usize::from(b) < self.allele_count)
+        };
+        self.allele_count <= MAX_ALLELES
+            && [self.dosages.len(), self.pairs.len()] == stores
+            && self.len() == slots
+            && self.dosages.iter().all(|&d| d <= MISSING_DOSAGE)
+            && self.pairs.iter().all(pair)
     }
 
     /// Number of slots.
@@ -151,7 +170,7 @@ impl Genotypes {
 }
 
 /// The fate of a record. Every record gets exactly one, and every one is counted.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
 pub enum Verdict {
     /// At least one individual in use has a diploid genotype.
     Kept,
@@ -192,7 +211,7 @@ impl Verdict {
 }
 
 /// What became of the single genotypes of individuals in use, over all records that were read.
-#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct CallTally {
     /// Diploid genotypes with both alleles called.
     pub diploid: u64,

@@ -1,6 +1,9 @@
 //! What is masked while reading: records that are left out, genotypes that are taken as missing.
 
+use std::borrow::Cow;
 use std::collections::BTreeMap;
+
+use serde::{Deserialize, Serialize};
 
 /// Masks; the default masks nothing.
 #[derive(Debug, Clone, Default, PartialEq)]
@@ -26,12 +29,12 @@ pub struct Masks {
 }
 
 /// Records left out and genotypes masked, by reason.
-#[derive(Debug, Clone, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default, PartialEq, Eq, Serialize, Deserialize)]
 pub struct MaskTally {
     /// Records.
-    pub records: BTreeMap<&'static str, u64>,
+    pub records: BTreeMap<Cow<'static, str>, u64>,
     /// Genotypes; they are among those that were read as diploid.
-    pub genotypes: BTreeMap<&'static str, u64>,
+    pub genotypes: BTreeMap<Cow<'static, str>, u64>,
 }
 
 impl Masks {
@@ -82,7 +85,7 @@ impl MaskTally {
             (&mut self.genotypes, &other.genotypes),
         ] {
             for (reason, n) in their {
-                *own.entry(reason).or_default() += n;
+                *own.entry(reason.clone()).or_default() += n;
             }
         }
     }

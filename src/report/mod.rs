@@ -7,6 +7,7 @@ pub mod forecast;
 pub mod headline;
 mod json;
 pub mod page;
+pub mod parquet;
 pub mod screen_wire;
 pub mod screening;
 pub mod summary;

@@ -4,7 +4,7 @@ use std::collections::{BTreeMap, HashSet};
 use std::sync::Arc;
 
 use super::pipeline::{Collected, LocusTable, Source, collect};
-use super::{available_threads, input_file};
+use super::{available_threads, input_file, told};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
 use crate::ingest::sheet::{Sheet, listed_samples, read_sheet};
@@ -319,11 +319,6 @@ fn open_calls(plan: &MeasurePlan, sheet: &Sheet) -> Result<(Vec<Source>, Matched
             "no file of genotype calls was given".to_owned(),
         )),
     }
-}
-
-/// What was masked, by reason.
-fn told(masked: &BTreeMap<&'static str, u64>) -> impl Iterator<Item = (String, u64)> {
-    masked.iter().map(|(name, n)| ((*name).to_owned(), *n))
 }
 
 fn loci(all: &Collected) -> Loci {

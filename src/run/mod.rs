@@ -10,6 +10,8 @@ mod verdict;
 pub use measure::measure;
 pub use screen::screen;
 
+use std::borrow::Cow;
+use std::collections::BTreeMap;
 use std::path::Path;
 
 use schemars::schema_for;
@@ -77,6 +79,13 @@ fn input_file(role: &str, path: &Path, format: &str, bytes: u64, sha256: String)
         bytes,
         sha256,
     }
+}
+
+/// What was masked, by reason.
+fn told(masked: &BTreeMap<Cow<'static, str>, u64>) -> impl Iterator<Item = (String, u64)> {
+    masked
+        .iter()
+        .map(|(name, n)| (name.clone().into_owned(), *n))
 }
 
 /// The threads used when none are asked for: as many as the machine grants.

@@ -7,7 +7,7 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicUsize, Ordering};
 use std::thread;
 
-use super::{available_threads, input_file};
+use super::{available_threads, input_file, told};
 use inputs::{open_calls, scheme, verdicts, words};
 
 use super::pipeline::{Collected, Gather, RowMaker, Source, collect_into};
@@ -321,16 +321,10 @@ fn loci(
         kept: all.sums.kept,
         varying: all.sums.varying,
         set_aside: set_aside
-            .map(|v| (v.name(), count(v)))
-            .chain(all.masked.records.iter().map(|(name, n)| (*name, *n)))
-            .map(|(name, n)| (name.to_owned(), n))
+            .map(|v| (v.name().to_owned(), count(v)))
+            .chain(told(&all.masked.records))
             .collect(),
-        masked_genotypes: all
-            .masked
-            .genotypes
-            .iter()
-            .map(|(name, n)| ((*name).to_owned(), *n))
-            .collect(),
+        masked_genotypes: told(&all.masked.genotypes).collect(),
         compared_biallelic: genotypes.places.len() as u64,
         compared_multiallelic: genotypes.repeats.len() as u64,
         covered_bp: reach,

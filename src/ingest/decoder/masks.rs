@@ -48,7 +48,7 @@ impl Decoder {
             )
         })?;
         if let Some(reason) = reason {
-            *tally.records.entry(reason).or_default() += 1;
+            *tally.records.entry(reason.into()).or_default() += 1;
         }
         Ok(reason.is_none())
     }
@@ -188,7 +188,7 @@ fn mask_genotype(
         return;
     };
     locus.genotypes.clear(slot);
-    *tally.genotypes.entry(reason).or_default() += 1;
+    *tally.genotypes.entry(reason.into()).or_default() += 1;
 }
 
 fn text_fields(values: &[u8], places: &[Option<usize>; 3], pair: [u16; 2]) -> Fields {

@@ -16,7 +16,7 @@ pub(super) const WEIGHT_BITS: i32 = 43;
 pub(super) const TERM_BITS: i32 = 60;
 
 /// Rows that wait for their matrix product, by set of cutoffs, all of one contig.
-#[derive(Debug, Clone)]
+#[derive(Debug, Clone, Default)]
 pub(super) struct Workbench {
     individuals: usize,
     contig: Option<u64>,

@@ -4,11 +4,13 @@
 //! `sum w m_i m_j = sum w - sum w e_i - sum w e_j + sum w e_i e_j`, and `sum w e_i` is the diagonal
 //! of the last sum. In integers the two sides are the same number.
 
+use serde::{Deserialize, Serialize};
+
 use super::sums::Triangle;
 use super::{LocusRows, LocusWeights, TERM_BITS, WEIGHT_BITS, power_of_two};
 
 /// Sums over loci with missing genotypes.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub(super) struct MissingSums {
     /// B and H, in units of 2^-WEIGHT_BITS.
     pub(super) b: TypedPairs,
@@ -43,6 +45,13 @@ impl MissingSums {
         self.typed.add(i128::from(locus.weight()), absent);
     }
 
+    pub(super) fn has_size(&self, n: usize) -> bool {
+        let lists = [&self.p, &self.q, &self.typed];
+        self.b.absent.has_size(n)
+            && self.h.absent.has_size(n)
+            && lists.iter().all(|list| list.absent.len() == n)
+    }
+
     pub(super) fn merge(&mut self, other: &MissingSums) {
         self.b.merge(&other.b);
         self.h.merge(&other.h);
@@ -53,7 +62,7 @@ impl MissingSums {
 }
 
 /// By individual, the sum of the weights of the loci at which it is typed.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub(super) struct Typed {
     all: i128,
     absent: Vec<i128>,
@@ -86,7 +95,7 @@ impl Typed {
 }
 
 /// By pair of individuals, the sum of the weights of the loci at which both are typed.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub(super) struct TypedPairs {
     all: i128,
     /// The loci at which neither is typed; on the diagonal, those at which one is not.

@@ -2,6 +2,8 @@
 
 use std::collections::BTreeMap;
 
+use serde::{Deserialize, Serialize};
+
 use super::Product;
 use super::missing::MissingSums;
 
@@ -9,7 +11,7 @@ use super::missing::MissingSums;
 const NARROW_ROWS: u64 = 1 << 18;
 
 /// The sums of one contig, by set of cutoffs (a mask of bits).
-#[derive(Debug, Clone, Default, PartialEq)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub(super) struct ContigSums {
     pub(super) bins: BTreeMap<u8, BinSums>,
 }
@@ -19,6 +21,14 @@ impl ContigSums {
         self.bins
             .entry(mask)
             .or_insert_with(|| BinSums::new(individuals))
+    }
+
+    pub(super) fn has_size(&self, n: usize) -> bool {
+        self.bins.values().all(|bin| {
+            bin.vectors.has_size(n)
+                && bin.by_typed.len() == n + 1
+                && bin.missing.as_ref().is_none_or(|m| m.has_size(n))
+        })
     }
 
     pub(super) fn merge(&mut self, other: ContigSums) {
@@ -36,7 +46,7 @@ impl ContigSums {
 }
 
 /// The sums of the loci that pass one set of cutoffs.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub(super) struct BinSums {
     /// G, in units of 2^(-2 VECTOR_BITS).
     pub(super) vectors: Triangle,
@@ -48,7 +58,7 @@ pub(super) struct BinSums {
     pub(super) missing: Option<Box<MissingSums>>,
 }
 
-#[derive(Debug, Clone, Copy, Default, PartialEq)]
+#[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize)]
 pub(super) struct TypedTally {
     pub(super) loci: u64,
     pub(super) weight: u64,
@@ -101,7 +111,7 @@ impl BinSums {
 }
 
 /// A symmetric matrix of integers: the diagonal, then what is above it row by row.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub(super) struct Triangle {
     size: usize,
     rows: u64,
@@ -109,7 +119,7 @@ pub(super) struct Triangle {
 }
 
 /// Which of the two it is depends on the number of rows added only.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 enum Cells {
     Narrow(Vec<i64>),
     Wide(Vec<i128>),
@@ -140,6 +150,16 @@ impl Triangle {
                     .for_each(|(c, v)| *c += i128::from(v));
             }
         }
+    }
+
+    /// Whether it is a matrix of this size, as wide as its rows ask for.
+    pub(super) fn has_size(&self, n: usize) -> bool {
+        let cells = match &self.cells {
+            Cells::Narrow(cells) if self.rows <= NARROW_ROWS => cells.len(),
+            Cells::Wide(cells) if self.rows > NARROW_ROWS => cells.len(),
+            _ => return false,
+        };
+        self.size == n && cells == n * (n + 1) / 2
     }
 
     /// Individuals.

@@ -17,7 +17,7 @@ use crate::report::wire;
 
 /// Smallest minor allele frequency at the baseline of the loci used: chosen at the baseline and by
 /// nothing later, so that the choice does no harm.
-const BASELINE_FREQUENCY: f64 = 0.05;
+const BASELINE_FREQUENCY: f64 = 0.01;
 
 /// The visits of one population from its baseline on.
 #[derive(Debug, Clone, PartialEq)]
