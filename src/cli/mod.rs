@@ -10,9 +10,11 @@ mod forecast;
 mod masks;
 mod measure;
 mod page;
+mod reading;
 mod rehearse;
 mod schema;
 mod screen;
+mod tally;
 mod verdict;
 
 use std::ffi::OsString;
@@ -27,6 +29,8 @@ use crate::model::{MeasurePlan, ScreenPlan};
 pub enum Work {
     /// Genotype calls in, report out.
     Measure(Box<MeasurePlan>),
+    /// Count one shard of the calls into a file.
+    Tally(Box<MeasurePlan>),
     /// Set a report as a page.
     Page(PagePlan),
     /// Simulate a monitored population.
@@ -209,7 +213,8 @@ Exit status:
 
 #[derive(Subcommand)]
 enum Command {
-    Measure(measure::Flags),
+    Measure(Box<measure::Flags>),
+    Tally(Box<tally::Flags>),
     Page(page::Flags),
     Rehearse(rehearse::Flags),
     Verdict(verdict::Flags),
@@ -232,6 +237,7 @@ where
     let flags = Flags::try_parse_from(args)?;
     match flags.command {
         Command::Measure(flags) => Ok(Work::Measure(Box::new(flags.plan()?))),
+        Command::Tally(flags) => Ok(Work::Tally(Box::new(flags.plan()?))),
         Command::Page(flags) => Ok(Work::Page(flags.plan())),
         Command::Rehearse(flags) => Ok(Work::Rehearse(flags.plan())),
         Command::Verdict(flags) => Ok(Work::Verdict(flags.plan()?)),

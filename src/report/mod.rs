@@ -12,6 +12,7 @@ pub mod screen_wire;
 pub mod screening;
 pub mod summary;
 pub mod table;
+pub mod tally;
 pub mod verdict;
 pub mod warnings;
 pub mod wire;

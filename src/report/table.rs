@@ -14,6 +14,7 @@ use flate2::Compression;
 use flate2::write::GzEncoder;
 
 use super::json::WholeFile;
+use super::parquet::{Kind, ParquetTable};
 use crate::error::{Error, Result};
 use crate::locus::diversity::{expected_heterozygosity, observed_heterozygosity};
 use crate::locus::fstatistics::hudson;
@@ -37,30 +38,34 @@ impl<'a> LocusTable<'a> {
         }
     }
 
-    /// The header row.
-    pub fn header(&self) -> String {
-        let mut row = String::from("contig\tposition\tid\talleles");
+    /// The columns: their names and what their cells hold.
+    pub fn columns(&self) -> Vec<(String, Kind)> {
+        let mut columns = vec![
+            ("contig".to_owned(), Kind::Text),
+            ("position".to_owned(), Kind::Whole),
+            ("id".to_owned(), Kind::Text),
+            ("alleles".to_owned(), Kind::Text),
+        ];
         for stratum in &self.strata.strata {
-            for what in [
-                "typed",
-                "copies",
-                "observed_heterozygosity",
-                "expected_heterozygosity",
-                "hardy_weinberg_mid_p",
+            for (what, kind) in [
+                ("typed", Kind::Whole),
+                ("copies", Kind::Counts),
+                ("observed_heterozygosity", Kind::Number),
+                ("expected_heterozygosity", Kind::Number),
+                ("hardy_weinberg_mid_p", Kind::Number),
             ] {
-                let _ = write!(row, "\t{what}:{}", plain(stratum.name.as_bytes()));
+                columns.push((format!("{what}:{}", plain(stratum.name.as_bytes())), kind));
             }
         }
         for comparison in self.comparisons {
             let name = |s: usize| plain(self.strata.strata[s].name.as_bytes());
             let pair = format!("{}>{}", name(comparison.from), name(comparison.to));
-            let _ = write!(row, "\tfst_hudson:{pair}");
+            columns.push((format!("fst_hudson:{pair}"), Kind::Number));
             if in_time(comparison) {
-                let _ = write!(row, "\talleles_not_seen_again:{pair}");
+                columns.push((format!("alleles_not_seen_again:{pair}"), Kind::Text));
             }
         }
-        row.push('\n');
-        row
+        columns
     }
 
     /// Appends the row of one locus.
@@ -147,7 +152,7 @@ fn number(row: &mut String, value: Option<f64>) {
 
 /// Text from an input file as a cell: control characters out, and no first character that a
 /// spreadsheet program takes for the start of a formula.
-fn plain(text: &[u8]) -> String {
+pub(super) fn plain(text: &[u8]) -> String {
     let text: String = String::from_utf8_lossy(text)
         .chars()
         .map(|c| if c.is_control() { ' ' } else { c })
@@ -159,26 +164,37 @@ fn plain(text: &[u8]) -> String {
     }
 }
 
-/// Where a table goes: plain or, by a name that ends in `.gz`, compressed.
-#[derive(Debug)]
+/// Where a table goes: text, text compressed by gzip (a name that ends in `.gz`), or Parquet (`.parquet`).
 pub enum TableFile {
     /// As text.
     Plain(io::BufWriter<WholeFile>),
     /// Compressed by gzip.
     Gzip(Box<GzEncoder<io::BufWriter<WholeFile>>>),
+    /// As Parquet: `NA` is null, `copies` are lists.
+    Parquet(Box<ParquetTable>),
 }
 
 impl TableFile {
-    /// Creates the file (under a temporary name) before any work is done.
-    pub fn create(path: &Path) -> Result<Self> {
+    /// Creates the file (under a temporary name) before any work is done, with its header.
+    pub fn create(path: &Path, columns: &[(String, Kind)]) -> Result<Self> {
+        let ends = |ending: &str| {
+            path.extension()
+                .is_some_and(|e| e.eq_ignore_ascii_case(ending))
+        };
+        if ends("parquet") {
+            let table = ParquetTable::create(path, columns)?;
+            return Ok(TableFile::Parquet(Box::new(table)));
+        }
         let file = io::BufWriter::new(WholeFile::create(path)?);
-        let compressed = path
-            .extension()
-            .is_some_and(|e| e.eq_ignore_ascii_case("gz"));
-        Ok(match compressed {
+        let mut file = match ends("gz") {
             true => TableFile::Gzip(Box::new(GzEncoder::new(file, Compression::default()))),
             false => TableFile::Plain(file),
-        })
+        };
+        let names: Vec<&str> = columns.iter().map(|(name, _)| name.as_str()).collect();
+        let header = names.join("\t") + "\n";
+        file.write_all(header.as_bytes())
+            .map_err(|e| Error::io(path, "write", e))?;
+        Ok(file)
     }
 
     /// Puts the complete table under its name.
@@ -187,6 +203,7 @@ impl TableFile {
         let buffered = match self {
             TableFile::Plain(file) => file,
             TableFile::Gzip(encoder) => encoder.finish().map_err(failed)?,
+            TableFile::Parquet(table) => return table.finish(path, Vec::new()),
         };
         buffered
             .into_inner()
@@ -200,6 +217,7 @@ impl Write for TableFile {
         match self {
             TableFile::Plain(file) => file.write(bytes),
             TableFile::Gzip(encoder) => encoder.write(bytes),
+            TableFile::Parquet(table) => table.write(bytes),
         }
     }
 
@@ -207,6 +225,7 @@ impl Write for TableFile {
         match self {
             TableFile::Plain(file) => file.flush(),
             TableFile::Gzip(encoder) => encoder.flush(),
+            TableFile::Parquet(table) => table.flush(),
         }
     }
 }

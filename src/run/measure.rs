@@ -1,18 +1,23 @@
 //! The main job: genotype calls and a sample sheet in, one report out.
 
-use std::collections::{BTreeMap, HashSet};
+use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use super::pipeline::{Collected, LocusTable, Source, collect};
+mod calls;
+
+pub(super) use calls::{calls_file, remarks_of};
+use calls::{open_calls, told_of_calls, told_with_calls};
+
+use super::tally::Tallies;
 use super::{available_threads, input_file, told};
 use crate::error::{Error, Result};
 use crate::ingest::programme::read_programme;
-use crate::ingest::sheet::{Sheet, listed_samples, read_sheet};
-use crate::ingest::{self, Selection};
+use crate::ingest::sheet::{Sheet, read_sheet};
 use crate::merge::{LocusView, Scheme};
 use crate::model::{
     Compared, Locus, Matched, MeasurePlan, Note, Programme, Verdict, comparisons,
-    default_gene_copies, match_samples, told_absent,
+    default_gene_copies,
 };
 use crate::report::assemble::{self, Findings};
 use crate::report::table::{LocusTable as Table, TableFile};
@@ -35,18 +40,26 @@ pub fn measure(plan: &MeasurePlan, arguments: Vec<String>) -> Result<Report> {
 }
 
 /// Everything that is known before the first record is read.
-struct Inputs {
+pub(super) struct Inputs {
     sheet: Sheet,
     programme: Programme,
     programme_file: Option<InputFile>,
-    sources: Vec<Source>,
-    matched: Matched,
+    pub(super) origin: Origin,
+    pub(super) matched: Matched,
     compared: Compared,
     samples_in_calls: usize,
 }
 
+/// Where the counts come from.
+pub(super) enum Origin {
+    /// Files of calls, open.
+    Calls(Vec<Source>),
+    /// Tallies of such files.
+    Tallies(Tallies),
+}
+
 impl Inputs {
-    fn open(plan: &MeasurePlan) -> Result<Inputs> {
+    pub(super) fn open(plan: &MeasurePlan) -> Result<Inputs> {
         let sheet = read_sheet(&plan.sheet).map_err(|error| told_with_calls(error, plan))?;
         let (mut programme, programme_file) = match &plan.programme {
             Some(path) => {
@@ -57,22 +70,48 @@ impl Inputs {
             None => (Programme::default(), None),
         };
         programme.overrule(&plan.flags);
-        let (sources, matched) = open_calls(plan, &sheet)?;
+        let (origin, matched, samples_in_calls) = match Tallies::read(plan)? {
+            Some(tallies) => {
+                let matched = tallies.matched(plan, &sheet)?;
+                let samples = tallies.samples_in_calls();
+                (Origin::Tallies(tallies), matched, samples)
+            }
+            None => {
+                let (sources, matched) = open_calls(plan, &sheet)?;
+                let samples = sources[0].reader.header().samples.len();
+                (Origin::Calls(sources), matched, samples)
+            }
+        };
         let compared =
             comparisons(&matched.strata, &programme).map_err(|problems| Error::Sheet {
                 path: plan.sheet.clone(),
                 problems,
             })?;
-        let samples_in_calls = sources[0].reader.header().samples.len();
         Ok(Inputs {
             sheet,
             programme,
             programme_file,
-            sources,
+            origin,
             matched,
             compared,
             samples_in_calls,
         })
+    }
+
+    /// What is to be counted.
+    pub(super) fn scheme(&self, plan: &MeasurePlan) -> Arc<Scheme> {
+        let strata = &self.matched.strata;
+        let gene_copies = plan
+            .gene_copies
+            .or_else(|| default_gene_copies(strata))
+            .unwrap_or(2);
+        Arc::new(Scheme::new(
+            strata,
+            &self.compared.comparisons,
+            plan.min_call_rate,
+            gene_copies,
+            plan.list_losses,
+        ))
     }
 
     fn measure(
@@ -80,30 +119,22 @@ impl Inputs {
         plan: &MeasurePlan,
         arguments: Vec<String>,
     ) -> Result<(Report, Option<TableFile>)> {
-        let strata = &self.matched.strata;
-        let gene_copies = plan
-            .gene_copies
-            .or_else(|| default_gene_copies(strata))
-            .unwrap_or(2);
-        let pairs = &self.compared.comparisons;
-        let scheme = Arc::new(Scheme::new(
-            strata,
-            pairs,
-            plan.min_call_rate,
-            gene_copies,
-            plan.list_losses,
-        ));
+        let scheme = self.scheme(plan);
+        let sources = match &mut self.origin {
+            Origin::Calls(sources) => sources,
+            Origin::Tallies(tallies) => {
+                let collected = tallies.collect(plan, &scheme, &self.matched.strata)?;
+                return Ok((self.report(plan, arguments, &collected), None));
+            }
+        };
+        let (strata, pairs) = (&self.matched.strata, &self.compared.comparisons);
         let rows = Table::new(strata, pairs);
         let mut file = plan
             .loci_output
             .as_deref()
-            .map(TableFile::create)
+            .map(|path| TableFile::create(path, &rows.columns()))
             .transpose()?;
         let failed = |e| Error::io(plan.loci_output.clone().unwrap_or_default(), "write", e);
-        if let Some(file) = &mut file {
-            use std::io::Write;
-            file.write_all(rows.header().as_bytes()).map_err(failed)?;
-        }
         let row = |locus: &Locus, view: &LocusView, out: &mut Vec<u8>| rows.row(locus, view, out);
         let table = file.as_mut().map(|out| LocusTable {
             out,
@@ -111,14 +142,7 @@ impl Inputs {
             failed: &failed,
         });
         let threads = plan.threads.unwrap_or_else(available_threads);
-        let collected = collect(
-            &mut self.sources,
-            &scheme,
-            &plan.masks,
-            threads,
-            table,
-            &|_| (),
-        )?;
+        let collected = collect(sources, &scheme, &plan.masks, threads, table, &|_| ())?;
         if collected.sums.kept == 0 {
             return Err(nothing_kept(plan, &collected));
         }
@@ -163,17 +187,13 @@ impl Inputs {
         arguments: Vec<String>,
         all: &Collected,
     ) -> Provenance {
-        let calls = self.sources.iter().map(|source| {
-            let digest = source.reader.digest();
-            let format = source.reader.format();
-            input_file(
-                "calls",
-                source.reader.path(),
-                &format,
-                digest.bytes,
-                digest.sha256,
-            )
-        });
+        let calls: Vec<InputFile> = match &self.origin {
+            Origin::Calls(sources) => sources.iter().map(calls_file).collect(),
+            Origin::Tallies(tallies) => tallies
+                .headers()
+                .flat_map(|(_, header)| header.inputs.iter().cloned())
+                .collect(),
+        };
         let sheet = input_file(
             "samples",
             &plan.sheet,
@@ -198,14 +218,22 @@ impl Inputs {
             version: env!("CARGO_PKG_VERSION").to_owned(),
             arguments,
             inputs: calls
+                .into_iter()
                 .chain([sheet])
                 .chain(self.programme_file.clone())
                 .collect(),
-            settings: settings
-                .into_iter()
-                .chain(plan.masks.settings())
-                .map(|(name, value)| (name.to_owned(), value))
-                .collect(),
+            settings: match &self.origin {
+                Origin::Calls(_) => BTreeMap::new(),
+                Origin::Tallies(tallies) => tallies.settings().clone(),
+            }
+            .into_iter()
+            .chain(
+                settings
+                    .into_iter()
+                    .chain(plan.masks.settings())
+                    .map(|(name, value)| (name.to_owned(), value)),
+            )
+            .collect(),
             methods: methods(),
             stamp: None,
         }
@@ -242,82 +270,26 @@ impl Inputs {
             .chain(&self.matched.notes)
             .chain(&self.compared.notes);
         let mut warnings: Vec<_> = notes.map(warning).collect();
-        for (source, remarks) in self.sources.iter().zip(&all.remarks) {
-            let file = source.reader.path().display().to_string();
-            let mut remarks = remarks.clone();
-            remarks.merge(source.reader.remarks());
-            let told = source.reader.warnings().iter().cloned();
-            let told = told.chain(remarks.messages());
-            warnings.extend(told.map(|text| warning(&Note::new("calls", file.clone(), text))));
+        match &self.origin {
+            Origin::Calls(sources) => {
+                for (source, remarks) in sources.iter().zip(&all.remarks) {
+                    let file = source.reader.path().display().to_string();
+                    warnings.extend(told_of_calls(source, remarks, &file));
+                }
+            }
+            Origin::Tallies(tallies) => {
+                for (_, header) in tallies.headers() {
+                    let names: Vec<&str> = header.inputs.iter().map(|i| i.name.as_str()).collect();
+                    let file = names.join(", ");
+                    let told = header.remarks.iter();
+                    warnings.extend(
+                        told.map(|text| warning(&Note::new("calls", file.clone(), text.clone()))),
+                    );
+                }
+            }
         }
         warnings.extend(of_findings(findings));
         warnings
-    }
-}
-
-/// A faulty sheet's problems together with the samples that the calls lack, so that a person mends
-/// all of them in one go. The first file of calls speaks for all; where it cannot be read, the
-/// sheet's own problems are told alone.
-fn told_with_calls(error: Error, plan: &MeasurePlan) -> Error {
-    let Error::Sheet { path, mut problems } = error else {
-        return error;
-    };
-    let reader = plan
-        .calls
-        .first()
-        .and_then(|calls| ingest::open_with_map(calls, plan.locus_map.as_deref()).ok());
-    if let Some(reader) = reader.filter(|_| !plan.allow_absent) {
-        let header = &reader.header().samples;
-        let in_calls: HashSet<&str> = header.iter().map(String::as_str).collect();
-        let listed = listed_samples(&path);
-        let names = || listed.iter().map(|(row, sample)| (*row, sample.as_str()));
-        let absent = names().filter(|(_, name)| !in_calls.contains(name));
-        problems.extend(told_absent(absent, header, names().map(|(_, name)| name)));
-        problems.sort_by_key(|problem| problem.row);
-    }
-    Error::Sheet { path, problems }
-}
-
-/// Opens every file of calls and matches it with the sheet; all must hold the same samples in use.
-fn open_calls(plan: &MeasurePlan, sheet: &Sheet) -> Result<(Vec<Source>, Matched)> {
-    let mut sources = Vec::new();
-    let mut first: Option<Matched> = None;
-    for path in &plan.calls {
-        let reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
-        let matched = match_samples(&reader.header().samples, &sheet.rows, plan.allow_absent)
-            .map_err(|problems| Error::Sheet {
-                path: plan.sheet.clone(),
-                problems,
-            })?;
-        let selection = Selection {
-            slot_of_column: matched.slot_of_column.clone(),
-            slots: matched.strata.individuals.len(),
-        };
-        if let Some(first) = &first {
-            if first.strata != matched.strata {
-                return Err(Error::Calls {
-                    path: path.clone(),
-                    place: crate::error::Place::Header,
-                    problem: format!(
-                        "its samples are not those of {}: absent there {}, here {}",
-                        plan.calls[0].display(),
-                        first.absent.len(),
-                        matched.absent.len()
-                    ),
-                    cure: "give files that hold the same individuals, one a part of the genome"
-                        .to_owned(),
-                });
-            }
-        } else {
-            first = Some(matched);
-        }
-        sources.push(Source { reader, selection });
-    }
-    match first {
-        Some(matched) => Ok((sources, matched)),
-        None => Err(Error::Usage(
-            "no file of genotype calls was given".to_owned(),
-        )),
     }
 }
 
@@ -356,7 +328,7 @@ fn loci(all: &Collected) -> Loci {
 }
 
 /// Calls from which nothing can be said are a failure: an empty report would pass for a result.
-fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
+pub(super) fn nothing_kept(plan: &MeasurePlan, all: &Collected) -> Error {
     let records: u64 = all.verdicts.values().sum();
     let reasons: Vec<String> = all
         .verdicts

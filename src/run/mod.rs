@@ -5,6 +5,7 @@ mod forecast;
 mod measure;
 mod pipeline;
 mod screen;
+mod tally;
 mod verdict;
 
 pub use measure::measure;
@@ -30,6 +31,13 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
             let report = measure(&plan, told_arguments(arguments))?;
             if !plan.quiet {
                 eprint!("{}", summary(&report));
+            }
+            Ok(())
+        }
+        Work::Tally(plan) => {
+            let (read, kept) = tally::tally(&plan)?;
+            if !plan.quiet {
+                eprintln!("{kept} of {read} records tallied");
             }
             Ok(())
         }
@@ -97,12 +105,13 @@ fn available_threads() -> usize {
 type MakeSchema = fn() -> schemars::Schema;
 
 /// Documents that have a schema, by name.
-const SCHEMAS: [(&str, MakeSchema); 7] = [
+const SCHEMAS: [(&str, MakeSchema); 8] = [
     ("report", || schema_for!(report::wire::Report)),
     ("verdict", || schema_for!(report::verdict::Verdict)),
     ("forecast", || schema_for!(report::forecast::Forecast)),
     ("design", || schema_for!(report::design::Design)),
     ("screen", || schema_for!(report::screen_wire::ScreenReport)),
+    ("tally", || schema_for!(report::tally::TallyHeader)),
     ("scenario", || schema_for!(outlook::rehearse::Scenario)),
     ("truth", || schema_for!(outlook::rehearse::Truth)),
 ];

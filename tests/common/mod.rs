@@ -88,7 +88,8 @@ pub fn run_with_stdin<A: AsRef<std::ffi::OsStr>>(
     finish(output)
 }
 
-fn finish(output: std::process::Output) -> Run {
+/// What a finished process left.
+pub fn finish(output: std::process::Output) -> Run {
     Run {
         code: output.status.code(),
         stdout: output.stdout,

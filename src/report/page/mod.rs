@@ -6,6 +6,7 @@
 //! request and every script or style but its own, by their digests.
 
 mod answer;
+mod causes;
 mod read;
 mod redact;
 #[cfg(test)]

@@ -5,6 +5,7 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::answer::sentences;
+use super::causes::outlier_words;
 use super::tables::{self, TableView};
 use crate::report::figures::numbers::{chance, count, counted};
 use crate::report::figures::subject::Subject;
@@ -327,41 +328,6 @@ fn statements(subjects: &[Subject]) -> Vec<PlacedText> {
         })
     };
     subjects.iter().filter_map(statement).collect()
-}
-
-fn outlier_words(report: &Report) -> Vec<String> {
-    let tested: Vec<_> = report
-        .comparisons
-        .iter()
-        .filter_map(|c| c.outlier_loci.as_ref())
-        .collect();
-    if tested.is_empty() {
-        return vec![
-            "Not tested: it takes two visits of a population and a known effective size."
-                .to_owned(),
-        ];
-    }
-    let found: u64 = tested.iter().map(|o| o.found).sum();
-    let of = counted(tested.len() as u64, "comparison", "comparisons");
-    match found {
-        0 => vec![format!(
-            "{of} tested: no locus changed more than drift explains."
-        )],
-        n => {
-            let mut causes: Vec<&str> = Vec::new();
-            for cause in tested.iter().flat_map(|o| &o.other_causes) {
-                if !causes.contains(&cause.as_str()) {
-                    causes.push(cause);
-                }
-            }
-            let words = format!(
-                "{of} tested: {} out of line. Before selection is thought of, rule out: {}.",
-                counted(n, "locus is", "loci are"),
-                causes.join("; ")
-            );
-            vec![words]
-        }
-    }
 }
 
 fn listing(title: &str, table: &Table) -> Listing {
