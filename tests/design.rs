@@ -224,7 +224,7 @@ fn power_agrees_with_populations_simulated_afresh() {
         let power = find(&got["power"], "declared", declared)["power"]
             .as_f64()
             .unwrap();
-        let share = f64::from(count) / f64::from(runs as i32);
+        let share = f64::from(count) / f64::from(runs);
         // Three standard errors of the difference of two binomial shares.
         let p = 0.5 * (power + share);
         let error = (p * (1.0 - p) * (1.0 / 80.0 + 1.0 / 60.0)).sqrt().max(0.01);

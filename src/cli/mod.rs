@@ -218,9 +218,9 @@ enum Command {
     Page(page::Flags),
     Rehearse(rehearse::Flags),
     Verdict(verdict::Flags),
-    Forecast(forecast::Flags),
+    Forecast(Box<forecast::Flags>),
     Design(Box<design::Flags>),
-    Screen(screen::Flags),
+    Screen(Box<screen::Flags>),
     Schema(schema::Flags),
 }
 

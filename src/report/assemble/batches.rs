@@ -12,6 +12,9 @@ use crate::model::{Comparison, ComparisonKind, Note, Strata};
 /// raises an alarm once in fifty.
 const ALARM: f64 = 0.01;
 
+/// A quantity of an individual, by slot.
+type Value<'a> = &'a dyn Fn(usize) -> Option<f64>;
+
 /// How the batches of two strata lie to each other.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Between {
@@ -42,7 +45,7 @@ pub fn notes(findings: &Findings) -> Vec<Note> {
     let mut notes = confounded(findings);
     let sums = findings.sums;
     let share = |part: u64, of: u64| (of > 0).then(|| part as f64 / of as f64);
-    let quantities: [(&str, &dyn Fn(usize) -> Option<f64>); 2] = [
+    let quantities: [(&str, Value); 2] = [
         ("call rate", &|slot| {
             share(sums.typed_records[slot], sums.kept)
         }),
@@ -76,11 +79,7 @@ fn confounded(findings: &Findings) -> Vec<Note> {
 
 /// Analysis of variance of a quantity of individuals between the batches of one stratum, over all
 /// strata with several (Fisher 1925): F = (SSB/dfB)/(SSW/dfW), each sum of squares taken within strata.
-fn difference(
-    strata: &Strata,
-    quantity: &str,
-    value: &dyn Fn(usize) -> Option<f64>,
-) -> Option<Note> {
+fn difference(strata: &Strata, quantity: &str, value: Value) -> Option<Note> {
     let (mut between, mut within) = (0.0, 0.0);
     let (mut groups, mut individuals) = (0usize, 0usize);
     let mut of_batch: BTreeMap<&str, Vec<f64>> = BTreeMap::new();
