@@ -73,9 +73,8 @@ impl Flags {
                 return Err(refusal(
                     "measure",
                     format!(
-                        "--loci {}: the name must end in {}",
-                        loci.display(),
-                        LOCI_ENDINGS.join(", ")
+                        "--loci {}: the name must end in .tsv, .tsv.gz or .parquet",
+                        loci.display()
                     ),
                 ));
             }

@@ -89,7 +89,10 @@ fn wrong_usage_exits_2_and_says_why() {
             "possible values: 1, 2",
         ),
         ("measure a --samples s --threads 0", "threads"),
-        ("measure a --samples s --loci l.csv", ".tsv or .tsv.gz"),
+        (
+            "measure a --samples s --loci l.csv",
+            ".tsv, .tsv.gz or .parquet",
+        ),
         (
             "measure a --samples s -o l.tsv --loci l.tsv",
             "give two names",
