@@ -101,7 +101,7 @@ const METHODS: [&str; 4] = [
     "linkage",
 ];
 
-/// One estimate of one run: the drift rate 1/(2Ne), its interval, its variance by source.
+/// One estimate of one run: the drift rate 1/(2Ne) and its interval.
 #[derive(Debug, Clone, Copy)]
 struct Outcome {
     method: &'static str,
