@@ -2,7 +2,7 @@
 //!
 //! A row a kept locus, which any reader of Parquet opens: `contig`, `position`, `id`, `alleles`, and for each
 //! stratum `typed:S`, `heterozygotes:S` and `copies:S` (a list by allele). The footer holds under
-//! [`HEADER_KEY`] what it was made of (JSON, [`TallyHeader`]) and under [`STATE_KEY`] the exact sums that
+//! [`HEADER_KEY`] what it was made of (JSON, [`TallyHeader`]) and under `genewane-state` the exact sums that
 //! `measure` adds up, for this program alone.
 
 use std::collections::BTreeMap;

@@ -88,7 +88,7 @@ pub fn carriers(findings: &Findings) -> Vec<wire::Carrier> {
 }
 
 /// Pairs of a female and a male that hold the most scarce alleles together, each some that the other
-/// lacks; the first [`MOST_PAIRS`] of each population.
+/// lacks; the first 20 of each population.
 pub fn carrier_pairs(findings: &Findings) -> Vec<wire::CarrierPair> {
     let mut all = Vec::new();
     for (stratum, carriers) in findings.latest().zip(&findings.sums.carriers) {
