@@ -55,6 +55,8 @@ pub enum Work {
 pub struct PagePlan {
     /// The report; `-` is standard input.
     pub report: PathBuf,
+    /// Forecasts and verdicts made from the report.
+    pub documents: Vec<PathBuf>,
     /// Where the page goes; standard output when absent.
     pub output: Option<PathBuf>,
     /// The folder that gets each figure as a file, if any.

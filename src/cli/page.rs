@@ -17,6 +17,13 @@ pub(super) struct Flags {
     /// Report that 'measure' wrote; '-' is standard input
     #[arg(value_name = "REPORT")]
     report: PathBuf,
+    /// Forecasts and verdicts made from this report, in any order
+    ///
+    /// Each must have been made from the very file given as REPORT: the digest in its provenance is
+    /// compared, so that no page mixes two reports. A forecast adds fans by scenario, a verdict adds
+    /// its rules and answers.
+    #[arg(value_name = "FORECAST|VERDICT")]
+    documents: Vec<PathBuf>,
     /// Write the page here [default: standard output]
     #[arg(short, long, value_name = "FILE")]
     output: Option<PathBuf>,
@@ -36,6 +43,8 @@ const EXAMPLES: &str = "\
 Examples:
   A page for the board, without sample names:
     genewane page report.json --without-samples -o report.html
+  With what lies ahead and the answers to the programme's limits:
+    genewane page report.json forecast.json verdict.json -o report.html
   The figures alone, for a paper:
     genewane page report.json --figures figures > /dev/null";
 
@@ -44,6 +53,7 @@ impl Flags {
     pub fn plan(self) -> PagePlan {
         PagePlan {
             report: self.report,
+            documents: self.documents,
             output: self.output,
             figures: self.figures,
             without_samples: self.without_samples,

@@ -245,6 +245,7 @@ fn a_page_says_where_it_goes_and_what_stays_off() {
         parse("page r.json -o p.html --figures figures --without-samples").unwrap(),
         Work::Page(PagePlan {
             report: "r.json".into(),
+            documents: Vec::new(),
             output: Some("p.html".into()),
             figures: Some("figures".into()),
             without_samples: true,

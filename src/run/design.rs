@@ -5,7 +5,7 @@ use std::cmp::Ordering;
 mod power;
 
 use self::power::{DECLARED, powers};
-use super::verdict::provenance;
+use super::documents::provenance;
 use crate::cli::DesignPlan;
 use crate::error::{Error, Result};
 use crate::model::DEFAULT_LEVEL;

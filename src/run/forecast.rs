@@ -2,7 +2,7 @@
 
 use rayon::prelude::*;
 
-use super::verdict::{input_file, provenance, report_of};
+use super::documents::{input_file, provenance, report_of};
 use crate::cli::ForecastPlan;
 use crate::error::{Error, Result};
 use crate::outlook::forecast::{Horizon, Scenario, Start, read_scenarios, read_watched};

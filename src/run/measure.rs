@@ -4,6 +4,7 @@ use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use super::pipeline::{Collected, LocusTable, Source, collect};
+use super::progress::Progress;
 mod calls;
 
 pub(super) use calls::{calls_file, remarks_of};
@@ -142,7 +143,11 @@ impl Inputs {
             failed: &failed,
         });
         let threads = plan.threads.unwrap_or_else(available_threads);
-        let collected = collect(sources, &scheme, &plan.masks, threads, table, &|_| ())?;
+        let progress = Progress::new(&plan.calls, plan.quiet);
+        let collected = collect(sources, &scheme, &plan.masks, threads, table, &|n| {
+            progress.at(n)
+        })?;
+        drop(progress);
         if collected.sums.kept == 0 {
             return Err(nothing_kept(plan, &collected));
         }

@@ -1,9 +1,12 @@
 //! The story: open, read once, add up, estimate, report. Threads start only here.
 
 mod design;
+mod documents;
 mod forecast;
 mod measure;
+mod page;
 mod pipeline;
+mod progress;
 mod screen;
 mod tally;
 mod verdict;
@@ -22,7 +25,7 @@ use crate::error::{Error, Result};
 use crate::outlook;
 use crate::report::summary::{screen_summary, summary};
 use crate::report::wire::InputFile;
-use crate::report::{self, Output, page};
+use crate::report::{self, Output};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
@@ -41,12 +44,7 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
             }
             Ok(())
         }
-        Work::Page(plan) => page::write_page(
-            &plan.report,
-            plan.output.as_deref(),
-            plan.without_samples,
-            plan.figures.as_deref(),
-        ),
+        Work::Page(plan) => page::page(&plan),
         Work::Rehearse(plan) => rehearse(&plan),
         Work::Verdict(plan) => verdict::verdict(&plan, told_arguments(arguments)),
         Work::Forecast(plan) => forecast::forecast(&plan, told_arguments(arguments)),

@@ -11,6 +11,7 @@ use super::{available_threads, input_file, told};
 use inputs::{open_calls, scheme, verdicts, words};
 
 use super::pipeline::{Collected, Gather, RowMaker, Source, collect_into};
+use super::progress::Progress;
 use crate::error::{Error, Place, Result};
 use crate::ingest::sheet::annotate::annotated;
 use crate::ingest::sheet::{Sheet, read_sheet};
@@ -57,7 +58,11 @@ pub fn screen(plan: &ScreenPlan, arguments: Vec<String>) -> Result<ScreenReport>
     let scheme = Arc::new(scheme(plan, &matched.strata, &words));
     let threads = plan.threads.unwrap_or_else(available_threads);
     let empty = || ScreenSums::new(Arc::clone(&scheme));
-    let all = collect_into(&mut sources, &empty, &plan.masks, threads, None, &|_| ())?;
+    let progress = Progress::new(&plan.calls, plan.quiet);
+    let all = collect_into(&mut sources, &empty, &plan.masks, threads, None, &|n| {
+        progress.at(n)
+    })?;
+    drop(progress);
     if all.sums.kept == 0 {
         return Err(nothing_kept(plan));
     }

@@ -7,6 +7,7 @@ use std::sync::Arc;
 use super::available_threads;
 use super::measure::{Inputs, Origin, calls_file, nothing_kept, remarks_of};
 use super::pipeline::{Collected, LocusTable, collect};
+use super::progress::Progress;
 use crate::error::{Error, Result};
 use crate::ingest::sheet::Sheet;
 use crate::merge::{LocusView, Scheme, Sums};
@@ -42,7 +43,11 @@ pub fn tally(plan: &MeasurePlan) -> Result<(u64, u64)> {
             "these are tallies already: give them to 'genewane measure'".to_owned(),
         ));
     };
-    let all = collect(sources, &scheme, &plan.masks, threads, Some(table), &|_| ())?;
+    let progress = Progress::new(&plan.calls, plan.quiet);
+    let all = collect(sources, &scheme, &plan.masks, threads, Some(table), &|n| {
+        progress.at(n)
+    })?;
+    drop(progress);
     if all.sums.kept == 0 {
         return Err(nothing_kept(plan, &all));
     }

@@ -1,19 +1,11 @@
 //! `genewane verdict`: read the report and the policy, judge, write, say breach.
 
-use std::collections::BTreeMap;
-use std::fs::File;
-use std::io::{self, Read};
-use std::path::Path;
-
-use sha2::{Digest, Sha256};
-
+use super::documents::{input_file, provenance, report_of};
 use crate::cli::{self, VerdictPlan};
 use crate::error::{Error, Result};
 use crate::outlook::verdict::{DEFAULT_POLICY, parse_policy, read_policy};
 use crate::report::Output;
-use crate::report::page::parse_report;
 use crate::report::verdict::{self, OnUncertain};
-use crate::report::wire::{InputFile, Provenance, Report};
 
 /// How answers are made.
 const METHODS: [(&str, &str); 4] = [
@@ -84,52 +76,5 @@ pub fn verdict(plan: &VerdictPlan, arguments: Vec<String>) -> Result<()> {
             "a binding rule of the policy is breached".to_owned(),
         )),
         false => Ok(()),
-    }
-}
-
-/// Reads a report and notes it as an input.
-pub(super) fn report_of(path: &Path, inputs: &mut Vec<InputFile>) -> Result<Report> {
-    let mut bytes = Vec::new();
-    match path == Path::new("-") {
-        true => io::stdin().lock().read_to_end(&mut bytes),
-        false => File::open(path).and_then(|mut file| file.read_to_end(&mut bytes)),
-    }
-    .map_err(|e| Error::io(path, "read", e))?;
-    let report = parse_report(path, &bytes)?;
-    inputs.insert(0, input_file("report", path, "json", &bytes));
-    Ok(report)
-}
-
-/// What made a document that builds on a report.
-pub(super) fn provenance(
-    arguments: Vec<String>,
-    inputs: Vec<InputFile>,
-    settings: BTreeMap<&str, String>,
-    methods: &[(&str, &str)],
-) -> Provenance {
-    let owned = |(name, text): &(&str, &str)| ((*name).to_owned(), (*text).to_owned());
-    Provenance {
-        program: env!("CARGO_PKG_NAME").to_owned(),
-        version: env!("CARGO_PKG_VERSION").to_owned(),
-        arguments,
-        inputs,
-        settings: settings
-            .into_iter()
-            .map(|(name, value)| (name.to_owned(), value))
-            .collect(),
-        methods: methods.iter().map(owned).collect(),
-        stamp: None,
-    }
-}
-
-/// An input file with its digest.
-pub(super) fn input_file(role: &str, path: &Path, format: &str, bytes: &[u8]) -> InputFile {
-    let digest = Sha256::digest(bytes);
-    InputFile {
-        role: role.to_owned(),
-        name: path.display().to_string(),
-        format: format.to_owned(),
-        bytes: bytes.len() as u64,
-        sha256: digest.iter().map(|byte| format!("{byte:02x}")).collect(),
     }
 }

@@ -15,6 +15,7 @@ mod differentiation;
 mod diversity;
 mod drawing;
 mod effective_size;
+pub mod fans;
 mod fates;
 mod genotyping;
 pub mod numbers;

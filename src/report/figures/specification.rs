@@ -206,6 +206,36 @@ pub fn outliers(table: &Table) -> Value {
     whole
 }
 
+/// Fans over the years by population and scenario: two bands, a median.
+pub fn fans(table: &Table, field: &str, title: &str) -> Value {
+    let x = json!({"field": "when", "type": "quantitative", "title": "Year, or generations ahead", "scale": {"zero": false}, "axis": {"format": "d"}});
+    let band = |share: u8| {
+        let (low, high) = (
+            format!("{field}_low_{share}"),
+            format!("{field}_high_{share}"),
+        );
+        json!({
+            "mark": {"type": "area", "color": LIGHT.deep, "opacity": 0.22},
+            "encoding": {"x": x, "y": quantity(&low, title), "y2": {"field": high}}
+        })
+    };
+    let mut whole = facet(
+        table,
+        json!({"field": "panel", "type": "nominal", "title": null}),
+        json!([
+            band(95),
+            band(50),
+            {"mark": {"type": "line", "color": LIGHT.deep}, "encoding": {"x": x, "y": quantity(field, title)}}
+        ]),
+    );
+    whole["transform"] = json!([
+        {"calculate": "datum.population + ', ' + datum.scenario", "as": "panel"},
+        {"calculate": "isValid(datum.year) ? datum.year : datum.generation", "as": "when"},
+        {"filter": format!("isValid(datum.{field})")}
+    ]);
+    whole
+}
+
 /// Call rate beside the share of loci that depart from Hardy-Weinberg proportions.
 pub fn genotyping(table: &Table) -> Value {
     let y = json!({"field": "stratum", "type": "nominal", "title": null, "sort": null, "axis": {"labelLimit": 320}});

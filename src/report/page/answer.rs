@@ -236,7 +236,8 @@ fn basis(report: &Report, subject: &Subject) -> String {
 pub fn warnings_of(report: &Report, population: &str) -> u64 {
     let concerns = |place: &str| {
         let rest = place.strip_prefix(population);
-        rest.is_some_and(|rest| rest.is_empty() || rest.starts_with('@'))
+        let itself = rest.is_some_and(|rest| rest.is_empty() || rest.starts_with('@'));
+        itself || place.split(", ").any(|one| one == population)
     };
     let all = report.warnings.iter().filter(|w| concerns(&w.place));
     all.count() as u64

@@ -1,12 +1,14 @@
 //! A report as one page that people read: no network, no parts, the same bytes for the same report.
 //!
-//! [`read_report`] reads the document back, [`Page::of`] turns it into sentences, figures and tables,
+//! [`parse_report`] reads the document back, [`Page::of`] turns it into sentences, figures and tables,
 //! [`Page::html`] sets them in a template that escapes whatever it is given. The page is whole
 //! without its script, which only sorts, filters and copies tables. Its policy header forbids every
 //! request and every script or style but its own, by their digests.
 
+mod ahead;
 mod answer;
 mod causes;
+mod judged;
 mod read;
 mod redact;
 #[cfg(test)]
@@ -22,12 +24,12 @@ use minijinja::value::{Serde, Value};
 use minijinja::{AutoEscape, Environment};
 use sha2::{Digest, Sha256};
 
-use super::figures::{Figure, figures, is_forbidden, palette, subject};
-use super::json::{Output, WholeFile};
+use super::figures::{Figure, fans, figures, is_forbidden, palette, subject};
+use super::json::WholeFile;
 use super::wire::Report;
 use crate::error::{Error, Result};
 
-pub use read::{parse_report, read_report};
+pub use read::{Companions, parse_report, read_document};
 
 const TEMPLATE: &str = include_str!("page.html");
 const SCRIPT: &str = include_str!("page.js");
@@ -41,15 +43,22 @@ pub struct Page {
 }
 
 impl Page {
-    /// The page of a report; with `without_samples` no sample name is in it.
-    pub fn of(report: Report, without_samples: bool) -> Page {
+    /// The page of a report and of the documents made from it; with `without_samples` no sample name
+    /// is in it.
+    pub fn of(report: Report, companions: &Companions, without_samples: bool) -> Page {
         let report = match without_samples {
             true => redact::without_samples(report),
             false => report,
         };
         let subjects = subject::subjects(&report);
-        let figures = figures(&report, &subjects);
-        let view = view::View::of(&report, &subjects, &figures, without_samples);
+        let futures = fans::futures(&companions.forecasts);
+        let mut figures = figures(&report, &subjects);
+        figures.extend(fans::figures(&futures));
+        let ahead = ahead::section(companions, &futures, &figures);
+        let judged = companions.verdicts.iter().enumerate();
+        let judged = judged.map(|(i, verdict)| judged::section(verdict, i));
+        let beside = judged.chain(ahead).collect();
+        let view = view::View::of(&report, &subjects, &figures, beside, without_samples);
         Page { view, figures }
     }
 
@@ -103,26 +112,6 @@ impl Page {
         }
         Ok(())
     }
-}
-
-/// Reads a report and writes its page, and its figures where a folder is given.
-///
-/// # Errors
-/// Those of [`read_report`], and [`Error::Io`] where something cannot be written.
-pub fn write_page(
-    report: &Path,
-    output: Option<&Path>,
-    without_samples: bool,
-    folder: Option<&Path>,
-) -> Result<()> {
-    let report = read_report(report)?;
-    let output = Output::create(output)?;
-    let page = Page::of(report, without_samples);
-    let html = page.html()?;
-    if let Some(folder) = folder {
-        page.write_figures(folder)?;
-    }
-    output.bytes(html.as_bytes())
 }
 
 /// What the page may do: nothing but its own style and script.

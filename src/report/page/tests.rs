@@ -5,7 +5,9 @@ use super::*;
 use crate::report::wire::{Kind, Loss, Warning};
 
 fn html(report: Report) -> String {
-    Page::of(report, false).html().unwrap()
+    Page::of(report, &Companions::default(), false)
+        .html()
+        .unwrap()
 }
 
 /// Every name of the report with a prefix that a page must not believe.
@@ -68,7 +70,7 @@ fn markup(html: &str) -> String {
 
 #[test]
 fn a_whole_report_makes_a_whole_page() {
-    let page = Page::of(two_populations(), false);
+    let page = Page::of(two_populations(), &Companions::default(), false);
     let names: Vec<_> = page.figures.iter().map(|f| f.name).collect();
     assert_eq!(
         names,
@@ -170,7 +172,7 @@ fn names_are_words_whatever_they_hold() {
         assert!(!html.contains("<img"), "{prefix}");
         assert_eq!(html.contains("{{ 7*7 }}"), prefix.contains("{{"));
         assert!(!html.contains(['\u{0}', '\u{7}', '\u{1b}']), "{prefix}");
-        for figure in Page::of(report, false).figures {
+        for figure in Page::of(report, &Companions::default(), false).figures {
             let svg = figure.file();
             is_balanced(&svg);
             assert!(
@@ -203,7 +205,7 @@ fn an_empty_report_makes_a_page_that_says_so() {
 fn one_stratum_makes_a_page() {
     let mut report = empty();
     report.strata = vec![stratum("Cragfoot", "2024", 2024.0, 12, 0.2)];
-    let page = Page::of(report, false);
+    let page = Page::of(report, &Companions::default(), false);
     let html = page.html().unwrap();
     is_balanced(&markup(&html));
     assert!(html.contains("Genetic monitoring of Cragfoot"));
@@ -309,7 +311,7 @@ fn without_samples_no_name_is_on_the_page_or_in_a_figure() {
         place: "calls".to_owned(),
         text: "not in the sheet: 'X1', 'X2'".to_owned(),
     });
-    let page = Page::of(report, true);
+    let page = Page::of(report, &Companions::default(), true);
     let html = page.html().unwrap();
     assert!(html.contains("Sample names were left out of this page."));
     let figures = page.figures.iter();
@@ -325,16 +327,9 @@ fn without_samples_no_name_is_on_the_page_or_in_a_figure() {
 #[test]
 fn figures_are_written_as_drawings_and_specifications() {
     let folder = tempfile::tempdir().unwrap();
-    let report = folder.path().join("report.json");
-    std::fs::write(&report, serde_json::to_vec(&two_populations()).unwrap()).unwrap();
-    let out = folder.path().join("page.html");
     let figures = folder.path().join("figures");
-    write_page(&report, Some(&out), false, Some(&figures)).unwrap();
-    assert!(
-        std::fs::read_to_string(out)
-            .unwrap()
-            .starts_with("<!doctype html>")
-    );
+    let page = Page::of(two_populations(), &Companions::default(), false);
+    page.write_figures(&figures).unwrap();
     let svg = std::fs::read_to_string(figures.join("diversity.svg")).unwrap();
     is_balanced(&svg);
     assert!(svg.contains("prefers-color-scheme"));

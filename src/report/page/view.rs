@@ -57,32 +57,39 @@ struct Warnings {
     more: Vec<PlacedText>,
 }
 
+/// Words on a place, such as a population.
 #[derive(Debug, Serialize)]
-struct PlacedText {
-    place: String,
-    text: String,
+pub struct PlacedText {
+    pub place: String,
+    pub text: String,
 }
 
 /// A part of the page with figures.
-#[derive(Debug, Serialize)]
-struct Section {
-    id: &'static str,
-    heading: &'static str,
-    words: Vec<String>,
-    statements: Vec<PlacedText>,
-    figures: Vec<FigureView>,
-    tables: Vec<Listing>,
+#[derive(Debug, Default, Serialize)]
+pub struct Section {
+    pub id: String,
+    pub heading: String,
+    /// Paragraphs, first of all.
+    pub words: Vec<String>,
+    pub statements: Vec<PlacedText>,
+    /// A table that stands open.
+    pub open_table: Option<TableView>,
+    pub figures: Vec<FigureView>,
+    pub tables: Vec<Listing>,
+    /// What a reader should know beside it, in small.
+    pub notes: Vec<String>,
 }
 
 /// A long table that opens with a touch.
 #[derive(Debug, Serialize)]
-struct Listing {
+pub struct Listing {
     title: String,
     table: TableView,
 }
 
+/// A figure as the template sets it.
 #[derive(Debug, Serialize)]
-struct FigureView {
+pub struct FigureView {
     name: &'static str,
     title: String,
     caption: String,
@@ -109,6 +116,7 @@ impl View {
         report: &Report,
         subjects: &[Subject],
         figures: &[Figure],
+        beside: Vec<Section>,
         without_samples: bool,
     ) -> View {
         let p = &report.provenance;
@@ -124,7 +132,10 @@ impl View {
             warnings: warnings(&report.warnings),
             warning_count: report.warnings.len(),
             cautions: report.cautions.clone(),
-            sections: sections(report, subjects, figures),
+            sections: beside
+                .into_iter()
+                .chain(sections(report, subjects, figures))
+                .collect(),
             samples: TableView::of(&tables::samples(&report.samples)),
             records: TableView::of(&tables::records(&report.loci)),
             genotypes: TableView::of(&tables::genotypes(&report.loci)),
@@ -209,17 +220,12 @@ fn warnings(all: &[Warning]) -> Vec<Warnings> {
 }
 
 fn sections(report: &Report, subjects: &[Subject], figures: &[Figure]) -> Vec<Section> {
-    let section = |id, heading, names: &[&str], words: Vec<String>| Section {
-        id,
-        heading,
+    let section = |id: &str, heading: &str, names: &[&str], words: Vec<String>| Section {
+        id: id.to_owned(),
+        heading: heading.to_owned(),
         words,
-        statements: Vec::new(),
-        figures: figures
-            .iter()
-            .filter(|f| names.contains(&f.name))
-            .map(figure)
-            .collect(),
-        tables: Vec::new(),
+        figures: chosen(figures, names),
+        ..Section::default()
     };
     let has = |name: &str| figures.iter().any(|f| f.name == name);
     let unless = |name: &str, words: String| {
@@ -330,7 +336,14 @@ fn statements(subjects: &[Subject]) -> Vec<PlacedText> {
     subjects.iter().filter_map(statement).collect()
 }
 
-fn listing(title: &str, table: &Table) -> Listing {
+/// The figures of these names, in the order of the page.
+pub fn chosen(figures: &[Figure], names: &[&str]) -> Vec<FigureView> {
+    let chosen = figures.iter().filter(|f| names.contains(&f.name));
+    chosen.map(figure).collect()
+}
+
+/// A table behind its title and number of rows.
+pub fn listing(title: &str, table: &Table) -> Listing {
     Listing {
         title: format!("{title} ({})", count(table.rows.len() as u64)),
         table: TableView::of(table),

@@ -11,7 +11,7 @@ pub use document::{
     Answer, Indicator, Limit, OnUncertain, Place, Population, Rule, Species, VERDICT_FORMAT,
     VERDICT_VERSION, Verdict,
 };
-pub use text::text_table;
+pub use text::{limit, text_table, value};
 
 use super::wire::{Provenance, Report};
 use crate::error::Problem;

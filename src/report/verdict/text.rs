@@ -48,7 +48,8 @@ fn word(answer: Answer) -> &'static str {
     }
 }
 
-fn value(place: &Place) -> String {
+/// The value with its interval, or why there is none.
+pub fn value(place: &Place) -> String {
     let value = match place.value {
         Some(value) => number(value),
         None if place.unbounded => "unbounded".to_owned(),
@@ -61,7 +62,8 @@ fn value(place: &Place) -> String {
     }
 }
 
-fn limit(limit: &Limit) -> String {
+/// The limit in words.
+pub fn limit(limit: &Limit) -> String {
     let side = limit.side.replace('_', " ");
     match (limit.number, limit.flag) {
         (Some(limit), _) => format!("{side} {}", number(limit)),

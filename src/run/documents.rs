@@ -1,0 +1,52 @@
+//! Documents that are read back and build on one another.
+
+use std::collections::BTreeMap;
+use std::path::Path;
+
+use sha2::{Digest, Sha256};
+
+use crate::error::Result;
+use crate::report::page::{parse_report, read_document};
+use crate::report::wire::{InputFile, Provenance, Report};
+
+/// Reads a report and notes it as an input.
+pub(super) fn report_of(path: &Path, inputs: &mut Vec<InputFile>) -> Result<Report> {
+    let bytes = read_document(path)?;
+    let report = parse_report(path, &bytes)?;
+    inputs.insert(0, input_file("report", path, "json", &bytes));
+    Ok(report)
+}
+
+/// What made a document that builds on a report.
+pub(super) fn provenance(
+    arguments: Vec<String>,
+    inputs: Vec<InputFile>,
+    settings: BTreeMap<&str, String>,
+    methods: &[(&str, &str)],
+) -> Provenance {
+    let owned = |(name, text): &(&str, &str)| ((*name).to_owned(), (*text).to_owned());
+    Provenance {
+        program: env!("CARGO_PKG_NAME").to_owned(),
+        version: env!("CARGO_PKG_VERSION").to_owned(),
+        arguments,
+        inputs,
+        settings: settings
+            .into_iter()
+            .map(|(name, value)| (name.to_owned(), value))
+            .collect(),
+        methods: methods.iter().map(owned).collect(),
+        stamp: None,
+    }
+}
+
+/// An input file with its digest.
+pub(super) fn input_file(role: &str, path: &Path, format: &str, bytes: &[u8]) -> InputFile {
+    let digest = Sha256::digest(bytes);
+    InputFile {
+        role: role.to_owned(),
+        name: path.display().to_string(),
+        format: format.to_owned(),
+        bytes: bytes.len() as u64,
+        sha256: digest.iter().map(|byte| format!("{byte:02x}")).collect(),
+    }
+}
