@@ -15,9 +15,12 @@ fn folder() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("man")
 }
 
-/// Every page of section 1 by file name. No date: the same flags give the same bytes.
+/// Topics of `genewane help` that are pages of their own, with their sections.
+const TOPICS: [(&str, &str); 2] = [("formats", "5"), ("methods", "7")];
+
+/// Every page by file name. No date: the same flags and words give the same bytes.
 fn pages() -> BTreeMap<String, String> {
-    let mut root = genewane::cli::command().disable_help_subcommand(true);
+    let mut root = genewane::cli::command();
     root.build();
     let names: Vec<String> = root
         .get_subcommands()
@@ -29,7 +32,54 @@ fn pages() -> BTreeMap<String, String> {
     for (command, name) in root.get_subcommands().zip(&names) {
         pages.insert(format!("{name}.1"), page(command, name, &["genewane"]));
     }
+    for (topic, section) in TOPICS {
+        let text = genewane::cli::help::TOPICS;
+        let (_, text) = text.iter().find(|(name, _)| *name == topic).unwrap();
+        let name = format!("genewane-{topic}.{section}");
+        pages.insert(name, topic_page(topic, section, text));
+    }
     pages
+}
+
+/// A topic as a page. Its text knows headings (`#`, `##`), paragraphs, and lines that are set as they
+/// stand, which are indented by four.
+fn topic_page(topic: &str, section: &str, text: &str) -> String {
+    let mut lines = text.lines();
+    let title = lines.next().unwrap_or_default().trim_start_matches("# ");
+    let about = title.split_once(": ").map_or(title, |(_, about)| about);
+    let mut out = format!(
+        "{PREAMBLE}.TH {} {section} \"\" \"genewane {}\" \"genewane manual\"\n.SH NAME\ngenewane\\-{topic} \\- {}\n",
+        escape(&format!("GENEWANE-{}", topic.to_uppercase())),
+        env!("CARGO_PKG_VERSION"),
+        escape(about)
+    );
+    let mut before_first = true;
+    let mut stands = false;
+    for line in lines {
+        let as_it_stands = line.starts_with("    ");
+        if as_it_stands != stands && !line.is_empty() {
+            out.push_str(if as_it_stands { ".PP\n.nf\n" } else { ".fi\n" });
+            stands = as_it_stands;
+        }
+        match line.strip_prefix("## ") {
+            Some(heading) => {
+                before_first = false;
+                out.push_str(&format!(".SH \"{}\"\n", escape(&heading.to_uppercase())));
+            }
+            None if line.is_empty() => out.push_str(if stands { "\n" } else { ".PP\n" }),
+            None => {
+                if before_first {
+                    before_first = false;
+                    out.push_str(".SH DESCRIPTION\n");
+                }
+                out.push_str(&escape(line));
+                out.push('\n');
+            }
+        }
+    }
+    out.push_str(if stands { ".fi\n" } else { "" });
+    out.push_str(".SH \"SEE ALSO\"\n\\fBgenewane\\fR(1)\n");
+    out
 }
 
 fn page(command: &Command, name: &str, see_also: &[&str]) -> String {
@@ -117,7 +167,7 @@ fn man_pages_say_what_the_flags_say() {
             .file_name()
             .into_string()
             .unwrap();
-        let known = !name.ends_with(".1") || pages.contains_key(&name);
+        let known = pages.contains_key(&name);
         assert!(known, "man/{name} is of no command: remove it");
     }
 }
@@ -135,6 +185,38 @@ fn pages_are_the_same_each_time_and_name_every_flag() {
             );
         }
     }
+}
+
+/// Numbers of the demonstration that topics quote stand in the tour of README.md, which a test makes
+/// anew.
+#[test]
+fn numbers_of_the_topics_are_those_of_the_tour() {
+    let readme =
+        fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("README.md")).unwrap();
+    let mut quoted = 0;
+    for (name, text) in genewane::cli::help::TOPICS {
+        let text = text.replace('\n', " ");
+        for (at, _) in text.match_indices(" (") {
+            let Some(end) = text[at..].find(')') else {
+                continue;
+            };
+            let inside = &text[at + 2..at + end];
+            let Some((low, high)) = inside.split_once(" to ") else {
+                continue;
+            };
+            let number = |word: &str| word.parse::<f64>().is_ok();
+            let before = text[..at].rsplit(' ').next().unwrap_or_default();
+            if number(low) && number(high) && number(before) {
+                quoted += 1;
+                let quote = format!("{before} ({inside})");
+                assert!(
+                    readme.contains(&quote),
+                    "{name}: {quote} is not in README.md"
+                );
+            }
+        }
+    }
+    assert!(quoted >= 3);
 }
 
 /// Files named in examples exist, so that a reader can type them.

@@ -7,6 +7,7 @@
 mod common;
 mod design;
 mod forecast;
+pub mod help;
 mod masks;
 mod measure;
 mod page;
@@ -48,6 +49,8 @@ pub enum Work {
         /// Which document; all of them are listed when absent.
         name: Option<String>,
     },
+    /// Print words: the help of a command, or a topic.
+    Words(String),
 }
 
 /// A page to make.
@@ -195,11 +198,12 @@ pub enum OnUncertain {
     name = "genewane",
     version,
     subcommand_required = true,
+    disable_help_subcommand = true,
     arg_required_else_help = true,
     subcommand_value_name = "COMMAND",
     max_term_width = 100,
     after_long_help = EXIT_STATUS,
-    after_help = "'genewane help COMMAND' explains a command with an example."
+    after_help = "'genewane help' lists commands and topics, 'genewane help COMMAND' explains a command with an example."
 )]
 struct Flags {
     #[command(subcommand)]
@@ -224,6 +228,7 @@ enum Command {
     Design(Box<design::Flags>),
     Screen(Box<screen::Flags>),
     Schema(schema::Flags),
+    Help(help::Flags),
 }
 
 /// Reads the arguments, the first of which is the name of the program.
@@ -247,6 +252,7 @@ where
         Command::Design(flags) => Ok(Work::Design(Box::new(flags.plan()))),
         Command::Screen(flags) => Ok(Work::Screen(Box::new(flags.plan()?))),
         Command::Schema(flags) => Ok(Work::Schema { name: flags.name }),
+        Command::Help(flags) => flags.plan(),
     }
 }
 

@@ -42,11 +42,6 @@ pub(super) fn provenance(
 /// An input file with its digest.
 pub(super) fn input_file(role: &str, path: &Path, format: &str, bytes: &[u8]) -> InputFile {
     let digest = Sha256::digest(bytes);
-    InputFile {
-        role: role.to_owned(),
-        name: path.display().to_string(),
-        format: format.to_owned(),
-        bytes: bytes.len() as u64,
-        sha256: digest.iter().map(|byte| format!("{byte:02x}")).collect(),
-    }
+    let digest = digest.iter().map(|byte| format!("{byte:02x}")).collect();
+    super::input_file(role, path, format, bytes.len() as u64, digest)
 }

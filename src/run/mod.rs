@@ -57,6 +57,7 @@ pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
             Ok(())
         }
         Work::Schema { name } => schema(name.as_deref()),
+        Work::Words(text) => Output::create(None)?.bytes(text.as_bytes()),
     }
 }
 
