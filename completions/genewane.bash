@@ -161,7 +161,7 @@ _genewane() {
             return 0
             ;;
         genewane__subcmd__forecast)
-            opts="-o -h --scenarios --watch --years --generations --generation-years --keep --draws --seed --output --threads --quiet --help"
+            opts="-o -h --scenarios --watch --tally --years --generations --generation-years --keep --draws --seed --output --threads --quiet --help"
             if [[ ${cur} == -* || ${COMP_CWORD} -eq 2 ]] ; then
                 COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
                 return 0
@@ -172,6 +172,10 @@ _genewane() {
                     return 0
                     ;;
                 --watch)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --tally)
                     COMPREPLY=($(compgen -f "${cur}"))
                     return 0
                     ;;

@@ -112,6 +112,7 @@ complete -c genewane -n "__fish_genewane_using_subcommand verdict" -l quiet -d '
 complete -c genewane -n "__fish_genewane_using_subcommand verdict" -s h -l help -d 'Print help (see more with \'--help\')'
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l scenarios -d 'Scenario file: other ways to manage, beside the status quo' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l watch -d 'Alleles to watch: the chance that each is lost, still there or fixed' -r -F
+complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l tally -d 'Tally of the report\'s calls: has the copies of any watched allele; may be given several times' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l years -d 'Years to look ahead [default: 100 where a generation length is known]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l generations -d 'Generations to look ahead [default: 20 where no generation length is known]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l generation-years -d 'Generation length in years [default: the report\'s]' -r

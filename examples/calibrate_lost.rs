@@ -6,6 +6,11 @@
 //! ```
 //! The number is that of populations a cell; more numbers pick cells, counted from 1. The effective size is
 //! not told to the program: chances are averaged over what it estimates, as in `genewane measure`.
+//!
+//! A cell with a range of adults draws a number for each population, evenly in 1/(2Ne): this is what the
+//! program takes for likely before it sees the data, and the only case in which chances can be right at
+//! every tenth. Where all populations have one size, the topmost tenth picks those in which the size was
+//! estimated too small.
 
 use std::collections::{BTreeMap, BTreeSet};
 use std::error::Error;
@@ -17,17 +22,32 @@ use genewane::outlook::rehearse::{Scenario, simulate};
 use genewane::report::assemble::{Findings, losses};
 use rayon::prelude::*;
 
-/// Adults, loci, generations between the two visits, individuals a visit, frequencies at the founding.
-const GRID: [(u32, u32, u32, u32, &str); 8] = [
-    (50, 1000, 5, 25, "{ beta = [1.0, 1.0] }"),
-    (50, 1000, 5, 25, "{ beta = [0.2, 0.8] }"),
-    (100, 1000, 10, 30, "{ beta = [0.1, 1.0] }"),
-    (25, 1000, 4, 20, "{ beta = [0.3, 0.3] }"),
-    (100, 1000, 2, 50, "{ beta = [0.2, 0.8] }"),
-    (200, 1000, 10, 25, "{ beta = [0.5, 1.0] }"),
-    (50, 300, 10, 40, "{ dirichlet = 0.8 }"),
-    (30, 200, 3, 15, "{ beta = [0.5, 1.0] }"),
+/// Fewest and most adults, loci, generations between the two visits, individuals a visit, frequencies at
+/// the founding.
+type Cell = ([u32; 2], u32, u32, u32, &'static str);
+
+const GRID: [Cell; 12] = [
+    ([50, 50], 1000, 5, 25, "{ beta = [1.0, 1.0] }"),
+    ([50, 50], 1000, 5, 25, "{ beta = [0.2, 0.8] }"),
+    ([100, 100], 1000, 10, 30, "{ beta = [0.1, 1.0] }"),
+    ([25, 25], 1000, 4, 20, "{ beta = [0.3, 0.3] }"),
+    ([100, 100], 1000, 2, 50, "{ beta = [0.2, 0.8] }"),
+    ([200, 200], 1000, 10, 25, "{ beta = [0.5, 1.0] }"),
+    ([50, 50], 300, 10, 40, "{ dirichlet = 0.8 }"),
+    ([30, 30], 200, 3, 15, "{ beta = [0.5, 1.0] }"),
+    ([16, 1000], 1000, 5, 30, "{ beta = [0.2, 0.8] }"),
+    ([16, 1000], 500, 10, 40, "{ beta = [0.5, 1.0] }"),
+    ([16, 1000], 200, 4, 20, "{ beta = [0.5, 0.5] }"),
+    ([16, 1000], 100, 8, 30, "{ dirichlet = 0.8 }"),
 ];
+
+/// Adults of one population of a cell: even in 1/(2Ne). Steps of the golden ratio fill the range evenly
+/// whatever the number of populations.
+fn adults_of([fewest, most]: [u32; 2], seed: u64) -> u32 {
+    let share = (seed as f64 * 0.618_033_988_749_894_9).fract();
+    let [high, low] = [fewest, most].map(|n| 0.5 / f64::from(n));
+    (0.5 / (low + share * (high - low))).round() as u32
+}
 
 /// Tenths of the scale.
 const TENTHS: usize = 10;
@@ -40,7 +60,7 @@ fn main() -> Result<(), Box<dyn Error + Send + Sync>> {
         "cell\tadults\tloci\tgenerations\tsample\tfrequencies\ttenth\talleles\tsaid_lost\treally_lost\t\
          standard_error"
     );
-    for (number, &cell) in (1..).zip(&GRID) {
+    for (number, &cell) in (1usize..).zip(&GRID) {
         if !picked.is_empty() && !picked.contains(&number) {
             continue;
         }
@@ -60,7 +80,7 @@ fn main() -> Result<(), Box<dyn Error + Send + Sync>> {
 /// that between populations, of a ratio (Cochran 1977, eq. 2.39).
 fn print_row(
     number: usize,
-    (adults, loci, generations, sample, frequencies): (u32, u32, u32, u32, &str),
+    ([fewest, most], loci, generations, sample, frequencies): Cell,
     tenth: usize,
     all: &[[[f64; 3]; TENTHS]],
 ) {
@@ -79,6 +99,10 @@ fn print_row(
         .sum();
     let runs = all.len() as f64;
     let error = (squares * runs / (runs - 1.0)).sqrt() / alleles;
+    let adults = match fewest == most {
+        true => fewest.to_string(),
+        false => format!("{fewest}-{most}"),
+    };
     println!(
         "{number}\t{adults}\t{loci}\t{generations}\t{sample}\t{frequencies}\t{:.1}\t{alleles}\t{:.3}\t{:.3}\t\
          {error:.3}",
@@ -89,9 +113,10 @@ fn print_row(
 }
 
 fn said_and_true(
-    (adults, loci, generations, sample, frequencies): (u32, u32, u32, u32, &str),
+    (range, loci, generations, sample, frequencies): Cell,
     seed: u64,
 ) -> Result<[[f64; 3]; TENTHS], Box<dyn Error + Send + Sync>> {
+    let adults = adults_of(range, seed);
     let alleles = if frequencies.contains("dirichlet") {
         "alleles = 6, "
     } else {

@@ -286,6 +286,123 @@ fn watched_alleles_of_the_report() {
     assert!(before > 0.2, "{before}");
 }
 
+/// Copies of the first alternate allele, and gene copies typed, among samples of the demo: counted in
+/// the text of the calls.
+fn counted_in_the_text(place: (&str, &str), samples: &[String]) -> (u64, u64) {
+    use std::io::Read;
+    let packed = std::fs::read(fixture("demo/calls.vcf.gz")).unwrap();
+    let mut text = String::new();
+    flate2::read::MultiGzDecoder::new(&packed[..])
+        .read_to_string(&mut text)
+        .unwrap();
+    let mut names = Vec::new();
+    for line in text.lines() {
+        let cells: Vec<&str> = line.split('\t').collect();
+        if line.starts_with("#CHROM") {
+            names = cells.iter().map(|&c| c.to_owned()).collect();
+        }
+        if (cells[0], cells.get(1).copied().unwrap_or_default()) != place {
+            continue;
+        }
+        let calls = cells.iter().zip(&names).skip(9);
+        let calls = calls.filter(|(_, name)| samples.contains(name));
+        let calls = calls.map(|(call, _)| call.split(':').next().unwrap());
+        let alleles: Vec<&str> = calls
+            .filter(|call| !call.contains('.'))
+            .flat_map(|call| call.split(['/', '|']))
+            .collect();
+        let ones = alleles.iter().filter(|&&a| a == "1").count();
+        return (ones as u64, alleles.len() as u64);
+    }
+    panic!("no record at {place:?}");
+}
+
+#[test]
+fn a_tally_has_the_copies_of_any_watched_allele() {
+    let case = Case::new();
+    let tally = case.path("demo.parquet");
+    let mut arguments = vec![
+        "tally".into(),
+        fixture("demo/calls.vcf.gz").into_os_string(),
+    ];
+    arguments.extend([
+        "--samples".into(),
+        fixture("demo/samples.tsv").into_os_string(),
+    ]);
+    arguments.extend(["-o".into(), tally.into_os_string(), "--quiet".into()]);
+    assert_eq!(run(arguments).code, Some(0));
+
+    let sheet = std::fs::read_to_string(fixture("demo/samples.tsv")).unwrap();
+    let mut rows = sheet
+        .lines()
+        .map(|line| line.split('\t').collect::<Vec<_>>());
+    let header = rows.next().unwrap();
+    let column = |name: &str| header.iter().position(|&h| h == name).unwrap();
+    let latest: Vec<String> = rows
+        .filter(|row| row[column("population")] == "Quillmere" && row[column("year")] == "2020")
+        .map(|row| row[column("sample")].to_owned())
+        .collect();
+    assert_eq!(latest.len(), 30);
+
+    // The first locus of the calls whose alternate allele is common there: no report lists it.
+    let packed = std::fs::read(fixture("demo/calls.vcf.gz")).unwrap();
+    let mut text = String::new();
+    std::io::Read::read_to_string(
+        &mut flate2::read::MultiGzDecoder::new(&packed[..]),
+        &mut text,
+    )
+    .unwrap();
+    let (contig, position, allele, counts) = text
+        .lines()
+        .filter(|line| !line.starts_with('#'))
+        .map(|line| line.split('\t').take(5).collect::<Vec<_>>())
+        .filter(|cells| !cells[4].contains(','))
+        .map(|cells| {
+            let counts = counted_in_the_text((cells[0], cells[1]), &latest);
+            (
+                cells[0].to_owned(),
+                cells[1].to_owned(),
+                cells[4].to_owned(),
+                counts,
+            )
+        })
+        .find(|(.., (ones, all))| 3 * ones > *all && 3 * ones < 2 * all)
+        .unwrap();
+    let list =
+        format!("contig,position,allele,population\n{contig},{position},{allele},Quillmere\n");
+    case.write("w.csv", &list);
+    case.refused(2, &["--watch", "@w.csv"], &["row 2", "--tally"]);
+    let options = [
+        "--watch",
+        "@w.csv",
+        "--tally",
+        "@demo.parquet",
+        "--years",
+        "40",
+        "--quiet",
+    ];
+    let document = case.document(&options);
+    let watched = &scenario(&document, "Quillmere", "status quo")["watched"][0];
+    assert_eq!(watched["copies"], counts.0);
+    assert_eq!(watched["gene_copies"], counts.1);
+    let inputs = document["provenance"]["inputs"].as_array().unwrap();
+    assert!(inputs.iter().any(|input| input["role"] == "tally"));
+
+    case.refused(
+        1,
+        &["--watch", "@w.csv", "--tally", "@report.json"],
+        &["report.json", "genewane tally"],
+    );
+    let mut arguments = vec![
+        "forecast".into(),
+        case.path("demo.parquet").into_os_string(),
+    ];
+    arguments.push("--quiet".into());
+    let got = run(arguments);
+    assert_eq!(got.code, Some(1));
+    assert!(got.stderr.contains("this is a tally"), "{}", got.stderr);
+}
+
 #[test]
 fn bad_input_is_told_with_its_place() {
     let case = Case::new();

@@ -34,11 +34,15 @@ pub(super) struct Flags {
     /// Alleles to watch: the chance that each is lost, still there or fixed
     ///
     /// A table with the columns contig, position and allele; optional population,
-    /// selection_coefficient, copies with gene_copies (of the latest visit; from the report where it
-    /// lists the allele as scarce, written as in the calls), and source_frequency (where newcomers
-    /// come from).
+    /// selection_coefficient, copies with gene_copies (of the latest visit; otherwise from --tally, or
+    /// from the report where it lists the allele as scarce, written as in the calls), and
+    /// source_frequency (where newcomers come from).
     #[arg(long, value_name = "FILE")]
     watch: Option<PathBuf>,
+
+    /// Tally of the report's calls: has the copies of any watched allele; may be given several times
+    #[arg(long, value_name = "FILE", requires = "watch")]
+    tally: Vec<PathBuf>,
 
     /// Years to look ahead [default: 100 where a generation length is known]
     #[arg(long, value_name = "N", value_parser = common::above_zero, allow_negative_numbers = true, conflicts_with = "generations")]
@@ -104,6 +108,7 @@ impl Flags {
             report: self.report,
             scenarios: self.scenarios,
             watch: self.watch,
+            tallies: self.tally,
             years: self.years,
             generations: self.generations.map(|n| n as usize),
             generation_years: self.generation_years,

@@ -109,6 +109,8 @@ pub struct ForecastPlan {
     pub scenarios: Option<PathBuf>,
     /// Alleles to watch.
     pub watch: Option<PathBuf>,
+    /// Tallies that hold the copies of watched alleles.
+    pub tallies: Vec<PathBuf>,
     /// Years ahead.
     pub years: Option<f64>,
     /// Generations ahead.

@@ -13,6 +13,7 @@ pub mod screening;
 pub mod summary;
 pub mod table;
 pub mod tally;
+pub mod tally_counts;
 pub mod verdict;
 pub mod warnings;
 pub mod wire;

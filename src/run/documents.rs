@@ -1,11 +1,13 @@
 //! Documents that are read back and build on one another.
 
 use std::collections::BTreeMap;
+use std::fs::File;
+use std::io::Read;
 use std::path::Path;
 
 use sha2::{Digest, Sha256};
 
-use crate::error::Result;
+use crate::error::{Error, Result};
 use crate::report::page::{parse_report, read_document};
 use crate::report::wire::{InputFile, Provenance, Report};
 
@@ -44,4 +46,27 @@ pub(super) fn input_file(role: &str, path: &Path, format: &str, bytes: &[u8]) ->
     let digest = Sha256::digest(bytes);
     let digest = digest.iter().map(|byte| format!("{byte:02x}")).collect();
     super::input_file(role, path, format, bytes.len() as u64, digest)
+}
+
+/// An input file with its digest, read piece by piece.
+pub(super) fn large_input_file(role: &str, path: &Path, format: &str) -> Result<InputFile> {
+    let failed = |e| Error::io(path, "read", e);
+    let mut file = File::open(path).map_err(failed)?;
+    let (mut digest, mut bytes, mut piece) = (Sha256::new(), 0, vec![0; 1 << 16]);
+    loop {
+        let n = file.read(&mut piece).map_err(failed)?;
+        if n == 0 {
+            break;
+        }
+        digest.update(&piece[..n]);
+        bytes += n as u64;
+    }
+    let digest = digest.finalize().into_iter().map(|byte| format!("{byte:02x}"));
+    Ok(super::input_file(
+        role,
+        path,
+        format,
+        bytes,
+        digest.collect(),
+    ))
 }

@@ -1,13 +1,16 @@
 //! `genewane forecast`: read the report, scenarios and watched alleles; project; write.
 
+use std::collections::HashSet;
+
 use rayon::prelude::*;
 
-use super::documents::{input_file, provenance, report_of};
+use super::documents::{input_file, large_input_file, provenance, report_of};
 use crate::cli::ForecastPlan;
 use crate::error::{Error, Result};
-use crate::outlook::forecast::{Horizon, Scenario, Start, read_scenarios, read_watched};
+use crate::outlook::forecast::{Horizon, Scenario, Start, Watched, read_scenarios, read_watched};
 use crate::report::Output;
 use crate::report::forecast::{Job, counted, forecast as document, starts, text_table};
+use crate::report::tally_counts::TalliedCounts;
 
 /// Generations ahead where neither years nor generations are asked for and no generation length is
 /// known: as far as most programmes plan.
@@ -67,10 +70,15 @@ pub fn forecast(plan: &ForecastPlan, arguments: Vec<String>) -> Result<()> {
         inputs.push(input_file("watch", path, "table", &bytes));
         listed = read;
     }
-    let watched = counted(&report, &starts, &listed).map_err(|problems| Error::Sheet {
-        path: plan.watch.clone().unwrap_or_default(),
-        problems,
-    })?;
+    for path in &plan.tallies {
+        inputs.push(large_input_file("tally", path, "parquet")?);
+    }
+    let tallied = tallied(plan, &starts, &listed)?;
+    let watched =
+        counted(&report, &starts, &listed, &tallied).map_err(|problems| Error::Sheet {
+            path: plan.watch.clone().unwrap_or_default(),
+            problems,
+        })?;
     let horizons: Vec<Horizon> = starts
         .iter()
         .map(|start| horizon(plan, start))
@@ -112,6 +120,20 @@ pub fn forecast(plan: &ForecastPlan, arguments: Vec<String>) -> Result<()> {
         eprint!("{}", text_table(&forecast));
     }
     out.json(&forecast)
+}
+
+/// Counts of the watched alleles at the latest visits, from the rows of the tallies.
+fn tallied(plan: &ForecastPlan, starts: &[Start], watched: &[Watched]) -> Result<TalliedCounts> {
+    let strata: Vec<&str> = starts.iter().map(|s| s.stratum.as_str()).collect();
+    let wanted: HashSet<(&str, u64)> = watched
+        .iter()
+        .map(|allele| (allele.contig.as_str(), allele.position))
+        .collect();
+    let mut counts = TalliedCounts::default();
+    for path in &plan.tallies {
+        counts.take(path, &strata, &wanted)?;
+    }
+    Ok(counts)
 }
 
 /// How far to look for one population.

@@ -3,6 +3,7 @@
 use crate::error::Problem;
 use crate::model::{nearest, spell_out};
 use crate::outlook::forecast::{DriftRate, SourceStratum, Spectrum, Start, Watched};
+use crate::report::tally_counts::TalliedCounts;
 use crate::report::wire::{EffectiveSize, Estimate, Kind, Report};
 
 /// The populations of a report; a generation length given wins over the report's.
@@ -92,11 +93,13 @@ pub struct Counted<'w> {
     pub counts: (u32, u32),
 }
 
-/// Watched alleles by population with their counts, or every row that the report does not know.
+/// Watched alleles by population with their counts: those of the list, else of a tally, else of the
+/// report where it lists the allele as scarce. Or every row that none of them knows.
 pub fn counted<'w>(
     report: &Report,
     starts: &[Start],
     watched: &'w [Watched],
+    tallied: &TalliedCounts,
 ) -> Result<Vec<Counted<'w>>, Vec<Problem>> {
     let mut found = Vec::new();
     let mut problems = Vec::new();
@@ -118,7 +121,11 @@ pub fn counted<'w>(
             if allele.population.as_deref().is_some_and(|p| p != name) {
                 continue;
             }
-            if let Some(counts) = allele.counts.or_else(|| listed(report, name, allele)) {
+            let stratum = &starts[start].stratum;
+            let of_tally = tallied.of(&allele.contig, allele.position, &allele.allele, stratum);
+            let of_tally = of_tally.filter(|&(copies, _)| copies > 0);
+            let counts = allele.counts.or(of_tally);
+            if let Some(counts) = counts.or_else(|| listed(report, name, allele)) {
                 found.push(Counted {
                     allele,
                     start,
@@ -177,7 +184,7 @@ fn not_listed(report: &Report, allele: &Watched) -> Problem {
                 allele.allele
             ),
             "the report lists scarce alleles (at_risk) as written in the calls; for any other give \
-             copies and gene_copies of the latest visit",
+             --tally with the tallies of the calls, or copies and gene_copies of the latest visit",
         ),
     }
 }

@@ -11,6 +11,9 @@ use crate::report::forecast::{FORECAST_FORMAT, FORECAST_VERSION, Forecast};
 use crate::report::verdict::{VERDICT_FORMAT, VERDICT_VERSION, Verdict};
 use crate::report::wire::{FORMAT, FORMAT_VERSION, Report};
 
+/// Bytes that every Parquet file begins with.
+const PARQUET: &[u8] = b"PAR1";
+
 /// What tells one document from another, before the rest is looked at.
 #[derive(Deserialize)]
 struct Stamp {
@@ -47,6 +50,10 @@ pub fn read_document(path: &Path) -> Result<Vec<u8>> {
 /// [`Error::Document`] where it is not JSON, not a report, or of another version, with line and column.
 pub fn parse_report(path: &Path, text: &[u8]) -> Result<Report> {
     let cure = "give the JSON file that 'genewane measure' wrote";
+    if text.starts_with(PARQUET) {
+        let cure = "make a report of the tallies with 'genewane measure' first";
+        return Err(refused(path, "this is a tally, no report".to_owned(), cure));
+    }
     let stamp = stamp(path, text, "this is no report", cure)?;
     match stamp.format.as_deref() {
         Some(FORMAT) => {}
