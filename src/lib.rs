@@ -12,6 +12,7 @@
 
 pub mod cli;
 pub mod error;
+pub mod files;
 pub mod ingest;
 pub mod locus;
 pub mod merge;

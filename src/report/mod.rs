@@ -19,5 +19,5 @@ pub mod warnings;
 pub mod wire;
 mod words;
 
-pub use json::{Output, WholeFile};
+pub use json::Output;
 pub use words::{CAUTIONS, methods, screen_methods};

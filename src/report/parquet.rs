@@ -14,8 +14,8 @@ use parquet::file::properties::WriterProperties;
 use parquet::file::writer::{SerializedColumnWriter, SerializedFileWriter};
 use parquet::schema::types::{Type, TypePtr};
 
-use super::json::WholeFile;
 use crate::error::{Error, Result};
+use crate::files::WholeFile;
 
 /// Cells of a group of rows, all columns together.
 const GROUP_CELLS: usize = 2_000_000;

@@ -13,9 +13,9 @@ use std::path::Path;
 use flate2::Compression;
 use flate2::write::GzEncoder;
 
-use super::json::WholeFile;
 use super::parquet::{Kind, ParquetTable};
 use crate::error::{Error, Result};
+use crate::files::WholeFile;
 use crate::locus::diversity::{expected_heterozygosity, observed_heterozygosity};
 use crate::locus::fstatistics::hudson;
 use crate::locus::hardy_weinberg::HardyWeinbergCache;

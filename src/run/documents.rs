@@ -61,7 +61,10 @@ pub(super) fn large_input_file(role: &str, path: &Path, format: &str) -> Result<
         digest.update(&piece[..n]);
         bytes += n as u64;
     }
-    let digest = digest.finalize().into_iter().map(|byte| format!("{byte:02x}"));
+    let digest = digest
+        .finalize()
+        .into_iter()
+        .map(|byte| format!("{byte:02x}"));
     Ok(super::input_file(
         role,
         path,

@@ -8,6 +8,7 @@ mod page;
 mod pipeline;
 mod progress;
 mod screen;
+mod signals;
 mod tally;
 mod verdict;
 
@@ -29,6 +30,7 @@ use crate::report::{self, Output};
 
 /// Does what was asked for. `arguments` are those of the command line, for provenance.
 pub fn run(work: Work, arguments: &[std::ffi::OsString]) -> Result<()> {
+    signals::watch();
     match work {
         Work::Measure(plan) => {
             let report = measure(&plan, told_arguments(arguments))?;

@@ -13,6 +13,7 @@ use inputs::{open_calls, scheme, verdicts, words};
 use super::pipeline::{Collected, Gather, RowMaker, Source, collect_into};
 use super::progress::Progress;
 use crate::error::{Error, Place, Result};
+use crate::files::WholeFile;
 use crate::ingest::sheet::annotate::annotated;
 use crate::ingest::sheet::{Sheet, read_sheet};
 use crate::locus::individuals::row_blocks;
@@ -25,7 +26,7 @@ use crate::report::screen_wire::{
 use crate::report::screening::{Screened, SheetWord};
 use crate::report::warnings::warning;
 use crate::report::wire::{Provenance, Warning};
-use crate::report::{CAUTIONS, Output, WholeFile, screen_methods};
+use crate::report::{CAUTIONS, Output, screen_methods};
 use crate::screen::{
     FAMILY_LOCI, Found, KINSHIP_LOCI, MatchRule, Matching, ScreenGenotypes, family_effect,
     kinship_interval,

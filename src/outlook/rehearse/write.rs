@@ -6,7 +6,6 @@ use std::path::{Path, PathBuf};
 use noodles_csi::binning_index::index::header::Builder as IndexHeader;
 use noodles_tabix as tabix;
 use rayon::prelude::*;
-use tempfile::NamedTempFile;
 
 use super::check::read_scenario;
 use super::genome::Contig;
@@ -15,6 +14,7 @@ use super::scenario::{Field, Scenario};
 use super::simulation::Stage;
 use super::truth::{Truth, visit_label};
 use crate::error::{Error, Result};
+use crate::files::WholeFile;
 use crate::model::Sex;
 
 /// What a rehearsal wrote.
@@ -84,31 +84,16 @@ pub fn rehearse(scenario: &Path, out: &Path, seed: Option<u64>, threads: usize) 
         alleles_gone: truth.gone.len() as u64,
         files: files.iter().map(|(_, path)| path.clone()).collect(),
     };
-    for (file, path) in files {
-        file.persist(&path)
-            .map_err(|e| Error::io(&path, "rename into place", e.error))?;
+    for (file, _) in files {
+        file.finish()?;
     }
     Ok(summary)
-}
-
-/// A temporary file beside its later place, readable as any other new file.
-fn temporary(path: &Path) -> Result<NamedTempFile> {
-    let directory = path.parent().unwrap_or(Path::new("."));
-    let mut builder = tempfile::Builder::new();
-    builder.prefix(".rehearse-");
-    #[cfg(unix)]
-    let permissions = std::os::unix::fs::PermissionsExt::from_mode(0o666);
-    #[cfg(unix)]
-    builder.permissions(permissions);
-    builder
-        .tempfile_in(directory)
-        .map_err(|e| Error::io(path, "create", e))
 }
 
 /// The growing file of calls and its index.
 struct CallsFile {
     path: PathBuf,
-    file: BufWriter<NamedTempFile>,
+    file: BufWriter<WholeFile>,
     /// Bytes written so far.
     length: u64,
     indexer: tabix::index::Indexer,
@@ -118,7 +103,7 @@ impl CallsFile {
     fn create(path: &Path, stage: &Stage) -> Result<Self> {
         let mut indexer = tabix::index::Indexer::default();
         indexer.set_header(IndexHeader::vcf().build());
-        let file = BufWriter::new(temporary(path)?);
+        let file = BufWriter::new(WholeFile::create(path)?);
         let mut calls = CallsFile {
             path: path.into(),
             file,
@@ -147,7 +132,7 @@ impl CallsFile {
         self.append(&part.blocks)
     }
 
-    fn finish(mut self) -> Result<(NamedTempFile, NamedTempFile)> {
+    fn finish(mut self) -> Result<(WholeFile, WholeFile)> {
         self.append(&END_OF_FILE)?;
         let path = self.path;
         let calls = self
@@ -155,7 +140,7 @@ impl CallsFile {
             .into_inner()
             .map_err(|e| Error::io(&path, "write", e.into_error()))?;
         let index_path = path.with_extension("gz.tbi");
-        let mut index = tabix::io::Writer::new(temporary(&index_path)?);
+        let mut index = tabix::io::Writer::new(WholeFile::create(&index_path)?);
         index
             .write_index(&self.indexer.build())
             .map_err(|e| Error::io(&index_path, "write", e))?;
@@ -195,10 +180,10 @@ fn header(stage: &Stage) -> String {
 /// A field of the sheet that has no value.
 const BLANK: &str = "";
 
-fn write_sheet(stage: &Stage, out: &Path) -> Result<(NamedTempFile, PathBuf)> {
+fn write_sheet(stage: &Stage, out: &Path) -> Result<(WholeFile, PathBuf)> {
     let path = out.join("samples.tsv");
     let text = sheet(stage.scenario, stage);
-    let mut file = temporary(&path)?;
+    let mut file = WholeFile::create(&path)?;
     file.write_all(text.as_bytes())
         .map_err(|e| Error::io(&path, "write", e))?;
     Ok((file, path))
@@ -235,9 +220,9 @@ fn sheet(scenario: &Scenario, stage: &Stage) -> String {
     text
 }
 
-fn write_truth(truth: &Truth, out: &Path) -> Result<(NamedTempFile, PathBuf)> {
+fn write_truth(truth: &Truth, out: &Path) -> Result<(WholeFile, PathBuf)> {
     let path = out.join("truth.json");
-    let mut file = BufWriter::new(temporary(&path)?);
+    let mut file = BufWriter::new(WholeFile::create(&path)?);
     serde_json::to_writer(&mut file, truth)
         .map_err(std::io::Error::from)
         .and_then(|()| file.write_all(b"\n"))

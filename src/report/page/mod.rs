@@ -25,9 +25,9 @@ use minijinja::{AutoEscape, Environment};
 use sha2::{Digest, Sha256};
 
 use super::figures::{Figure, fans, figures, is_forbidden, palette, subject};
-use super::json::WholeFile;
 use super::wire::Report;
 use crate::error::{Error, Result};
+use crate::files::WholeFile;
 
 pub use read::{Companions, parse_report, read_document};
 
