@@ -46,36 +46,6 @@ _genewane() {
             genewane,verdict)
                 cmd="genewane__subcmd__verdict"
                 ;;
-            genewane__subcmd__help,design)
-                cmd="genewane__subcmd__help__subcmd__design"
-                ;;
-            genewane__subcmd__help,forecast)
-                cmd="genewane__subcmd__help__subcmd__forecast"
-                ;;
-            genewane__subcmd__help,help)
-                cmd="genewane__subcmd__help__subcmd__help"
-                ;;
-            genewane__subcmd__help,measure)
-                cmd="genewane__subcmd__help__subcmd__measure"
-                ;;
-            genewane__subcmd__help,page)
-                cmd="genewane__subcmd__help__subcmd__page"
-                ;;
-            genewane__subcmd__help,rehearse)
-                cmd="genewane__subcmd__help__subcmd__rehearse"
-                ;;
-            genewane__subcmd__help,schema)
-                cmd="genewane__subcmd__help__subcmd__schema"
-                ;;
-            genewane__subcmd__help,screen)
-                cmd="genewane__subcmd__help__subcmd__screen"
-                ;;
-            genewane__subcmd__help,tally)
-                cmd="genewane__subcmd__help__subcmd__tally"
-                ;;
-            genewane__subcmd__help,verdict)
-                cmd="genewane__subcmd__help__subcmd__verdict"
-                ;;
             *)
                 ;;
         esac
@@ -191,7 +161,7 @@ _genewane() {
             return 0
             ;;
         genewane__subcmd__forecast)
-            opts="-o -h --scenarios --watch --years --generations --generation-years --keep --draws --seed --output --threads --quiet --help"
+            opts="-o -h --scenarios --watch --tally --years --generations --generation-years --keep --draws --seed --output --threads --quiet --help"
             if [[ ${cur} == -* || ${COMP_CWORD} -eq 2 ]] ; then
                 COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
                 return 0
@@ -202,6 +172,10 @@ _genewane() {
                     return 0
                     ;;
                 --watch)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --tally)
                     COMPREPLY=($(compgen -f "${cur}"))
                     return 0
                     ;;
@@ -249,148 +223,8 @@ _genewane() {
             return 0
             ;;
         genewane__subcmd__help)
-            opts="measure tally page rehearse verdict forecast design screen schema help"
+            opts="-h --help"
             if [[ ${cur} == -* || ${COMP_CWORD} -eq 2 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__design)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__forecast)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__help)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__measure)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__page)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__rehearse)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__schema)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__screen)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__tally)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
-                COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-                return 0
-            fi
-            case "${prev}" in
-                *)
-                    COMPREPLY=()
-                    ;;
-            esac
-            COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
-            return 0
-            ;;
-        genewane__subcmd__help__subcmd__verdict)
-            opts=""
-            if [[ ${cur} == -* || ${COMP_CWORD} -eq 3 ]] ; then
                 COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
                 return 0
             fi

@@ -35,7 +35,7 @@ complete -c genewane -n "__fish_genewane_needs_command" -f -a "forecast" -d 'Pro
 complete -c genewane -n "__fish_genewane_needs_command" -f -a "design" -d 'Tells what a sampling design can see, before the field season'
 complete -c genewane -n "__fish_genewane_needs_command" -f -a "screen" -d 'Looks at the samples and loci themselves, before anything is measured'
 complete -c genewane -n "__fish_genewane_needs_command" -f -a "schema" -d 'Prints the JSON Schema of a document that the program writes'
-complete -c genewane -n "__fish_genewane_needs_command" -f -a "help" -d 'Print this message or the help of the given subcommand(s)'
+complete -c genewane -n "__fish_genewane_needs_command" -f -a "help" -d 'Explains a command or a topic'
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l samples -d 'Sample sheet: who was sampled where and when' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l locus-map -d 'Where the loci of a tidy genotype table are: columns locus, contig, position' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l programme -d 'Programme file: the settings below by population; flags hold for all and win over it' -r -F
@@ -112,6 +112,7 @@ complete -c genewane -n "__fish_genewane_using_subcommand verdict" -l quiet -d '
 complete -c genewane -n "__fish_genewane_using_subcommand verdict" -s h -l help -d 'Print help (see more with \'--help\')'
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l scenarios -d 'Scenario file: other ways to manage, beside the status quo' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l watch -d 'Alleles to watch: the chance that each is lost, still there or fixed' -r -F
+complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l tally -d 'Tally of the report\'s calls: has the copies of any watched allele; may be given several times' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l years -d 'Years to look ahead [default: 100 where a generation length is known]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l generations -d 'Generations to look ahead [default: 20 where no generation length is known]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand forecast" -l generation-years -d 'Generation length in years [default: the report\'s]' -r
@@ -173,13 +174,4 @@ complete -c genewane -n "__fish_genewane_using_subcommand screen" -l biallelic-o
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l quiet -d 'Keep progress and notes off standard error; errors still appear'
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -s h -l help -d 'Print help (see more with \'--help\')'
 complete -c genewane -n "__fish_genewane_using_subcommand schema" -s h -l help -d 'Print help (see more with \'--help\')'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "measure" -d 'Measures diversity, its change and effective size from genotype calls'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "tally" -d 'Counts one shard of the calls into a file that \'measure\' adds up with others'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "page" -d 'Sets a report as one page to read, print or send'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "rehearse" -d 'Simulates a monitored population with known truth'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "verdict" -d 'Judges a report against the limits of a policy; exit code 3 says breach'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "forecast" -d 'Projects diversity and watched alleles under management scenarios'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "design" -d 'Tells what a sampling design can see, before the field season'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "screen" -d 'Looks at the samples and loci themselves, before anything is measured'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "schema" -d 'Prints the JSON Schema of a document that the program writes'
-complete -c genewane -n "__fish_genewane_using_subcommand help; and not __fish_seen_subcommand_from measure tally page rehearse verdict forecast design screen schema help" -f -a "help" -d 'Print this message or the help of the given subcommand(s)'
+complete -c genewane -n "__fish_genewane_using_subcommand help" -s h -l help -d 'Print help (see more with \'--help\')'
