@@ -237,7 +237,7 @@ _genewane() {
             return 0
             ;;
         genewane__subcmd__measure)
-            opts="-o -h --samples --locus-map --allow-absent --programme --baseline --generation-years --census --sampling-plan --chromosomes --map-length-cm --min-call-rate --gene-copies --list-losses --mask-below-gq --mask-below-dp --mask-above-dp --mask-below-balance --filters --snv-only --biallelic-only --contigs --without-contigs --threads --quiet --output --loci --stamp --help"
+            opts="-o -h --samples --locus-map --allow-absent --programme --baseline --generation-years --census --sampling-plan --chromosomes --map-length-cm --min-call-rate --gene-copies --list-losses --mask-below-gq --mask-below-dp --mask-above-dp --mask-below-balance --filters --snv-only --biallelic-only --contigs --without-contigs --region --regions-bed --threads --quiet --output --loci --stamp --help"
             if [[ ${cur} == -* || ${COMP_CWORD} -eq 2 ]] ; then
                 COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
                 return 0
@@ -316,6 +316,14 @@ _genewane() {
                     return 0
                     ;;
                 --without-contigs)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --region)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --regions-bed)
                     COMPREPLY=($(compgen -f "${cur}"))
                     return 0
                     ;;
@@ -413,7 +421,7 @@ _genewane() {
             return 0
             ;;
         genewane__subcmd__screen)
-            opts="-o -h --samples --locus-map --allow-absent --min-sample-call-rate --fewest-shared --most-mismatching --most-loci --run-loci --run-length --run-heterozygous --run-missing --run-gap --false-discovery-rate --output --write-sheet --list-pairs --list-loci --mask-below-gq --mask-below-dp --mask-above-dp --mask-below-balance --filters --snv-only --biallelic-only --contigs --without-contigs --threads --quiet --help"
+            opts="-o -h --samples --locus-map --allow-absent --min-sample-call-rate --fewest-shared --most-mismatching --most-loci --run-loci --run-length --run-heterozygous --run-missing --run-gap --false-discovery-rate --output --write-sheet --list-pairs --list-loci --mask-below-gq --mask-below-dp --mask-above-dp --mask-below-balance --filters --snv-only --biallelic-only --contigs --without-contigs --region --regions-bed --threads --quiet --help"
             if [[ ${cur} == -* || ${COMP_CWORD} -eq 2 ]] ; then
                 COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
                 return 0
@@ -515,6 +523,14 @@ _genewane() {
                     COMPREPLY=($(compgen -f "${cur}"))
                     return 0
                     ;;
+                --region)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --regions-bed)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
                 --threads)
                     COMPREPLY=($(compgen -f "${cur}"))
                     return 0
@@ -527,7 +543,7 @@ _genewane() {
             return 0
             ;;
         genewane__subcmd__tally)
-            opts="-o -h --samples --locus-map --allow-absent --programme --baseline --generation-years --census --sampling-plan --chromosomes --map-length-cm --min-call-rate --gene-copies --list-losses --mask-below-gq --mask-below-dp --mask-above-dp --mask-below-balance --filters --snv-only --biallelic-only --contigs --without-contigs --threads --quiet --output --help"
+            opts="-o -h --samples --locus-map --allow-absent --programme --baseline --generation-years --census --sampling-plan --chromosomes --map-length-cm --min-call-rate --gene-copies --list-losses --mask-below-gq --mask-below-dp --mask-above-dp --mask-below-balance --filters --snv-only --biallelic-only --contigs --without-contigs --region --regions-bed --threads --quiet --output --help"
             if [[ ${cur} == -* || ${COMP_CWORD} -eq 2 ]] ; then
                 COMPREPLY=( $(compgen -W "${opts}" -- "${cur}") )
                 return 0
@@ -606,6 +622,14 @@ _genewane() {
                     return 0
                     ;;
                 --without-contigs)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --region)
+                    COMPREPLY=($(compgen -f "${cur}"))
+                    return 0
+                    ;;
+                --regions-bed)
                     COMPREPLY=($(compgen -f "${cur}"))
                     return 0
                     ;;

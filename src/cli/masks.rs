@@ -1,9 +1,11 @@
 //! Flags of what is masked while reading.
 
+use std::path::PathBuf;
+
 use clap::Args;
 
 use super::common;
-use crate::model::Masks;
+use crate::model::{Masks, Region};
 
 /// Masks.
 #[derive(Debug, Clone, Args)]
@@ -38,6 +40,16 @@ pub(super) struct MaskFlags {
     /// Leave out these contigs, such as sex chromosomes
     #[arg(long, value_name = "LIST", value_delimiter = ',')]
     without_contigs: Vec<String>,
+    /// Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; may be given again
+    ///
+    /// By the position of a record (POS), from 1, ends included. With an index (.csi or .tbi) beside BGZF
+    /// calls only their blocks are read; otherwise all is read, which is told. Records elsewhere are as if
+    /// they were not in the file.
+    #[arg(long, value_name = "REGION", value_parser = Region::parse)]
+    region: Vec<Region>,
+    /// The same, from a BED file (positions from 0, ends not included)
+    #[arg(long, value_name = "FILE")]
+    regions_bed: Option<PathBuf>,
 }
 
 impl MaskFlags {
@@ -54,6 +66,8 @@ impl MaskFlags {
             biallelic_only: self.biallelic_only,
             contigs: some(self.contigs),
             without_contigs: self.without_contigs,
+            regions: self.region,
+            regions_bed: self.regions_bed,
         }
     }
 }

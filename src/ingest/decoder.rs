@@ -17,7 +17,7 @@ use super::remarks::{Remark, Remarks};
 use super::scan::{GenotypeRule, RowFlaw, count_columns, packed_row, scan_row};
 use super::text::{self, Format, Line};
 use crate::error::{Place, Result};
-use crate::model::{CallTally, Locus, Verdict, stable_hash};
+use crate::model::{CallTally, Locus, Regions, Verdict, stable_hash};
 
 /// Which sample columns are in use, and where their genotypes go.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -53,6 +53,7 @@ pub struct Decoder {
     tally: CallTally,
     remarks: Remarks,
     tidy: bool,
+    regions: Option<Arc<Regions>>,
     contig: Contig,
     format: (Vec<u8>, Format),
     kinds: Vec<AlleleKind>,
@@ -91,6 +92,7 @@ impl Decoder {
             tally: CallTally::default(),
             remarks: Remarks::default(),
             tidy: reader.is_tidy(),
+            regions: reader.regions(),
             contig: Contig::default(),
             format: (Vec::new(), Format::default()),
             kinds: Vec::new(),
@@ -158,6 +160,9 @@ impl Decoder {
         let line = Line::split(line, self.header.samples.len())?;
         self.place(line.contig, line.position, locus)?;
         *placed = true;
+        if self.is_elsewhere(locus) {
+            return Ok(Verdict::Elsewhere);
+        }
         set_id(locus, line.id);
         locus.clear_alleles();
         let format = self.format_of(line.format, locus.record)?;
@@ -207,6 +212,9 @@ impl Decoder {
         })?;
         self.place(contig.as_bytes(), site.position, locus)?;
         *placed = true;
+        if self.is_elsewhere(locus) {
+            return Ok(Verdict::Elsewhere);
+        }
         set_id(locus, site.id);
         locus.clear_alleles();
         site.alleles(|allele| locus.push_allele(allele))?;
@@ -215,6 +223,11 @@ impl Decoder {
             Some(_) if site.allele_count > MAX_ALLELES => Ok(Verdict::TooManyAlleles),
             Some(block) => self.genotypes(locus, Values::Binary(block)),
         }
+    }
+
+    fn is_elsewhere(&self, locus: &Locus) -> bool {
+        let regions = self.regions.as_ref();
+        regions.is_some_and(|regions| !regions.hold(&locus.contig, locus.position))
     }
 
     /// Reads the genotypes of a record whose alleles are in place.

@@ -30,6 +30,13 @@ pub struct CallsHeader {
 }
 
 impl CallsHeader {
+    /// The number of a contig in binary records.
+    pub(super) fn contig_number(&self, name: &str) -> Option<usize> {
+        self.contig_numbers
+            .number(name)
+            .and_then(|n| usize::try_from(n).ok())
+    }
+
     /// The format for messages and reports, as in `VCF 4.2, BGZF`.
     pub fn format(&self) -> String {
         let kind = if self.binary { "BCF of VCF" } else { "VCF" };

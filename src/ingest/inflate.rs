@@ -4,6 +4,8 @@
 //! of a block must be noticed, the end-of-file marker must be asked for, and a block can be inflated
 //! straight into the batch with one decompressor for all blocks.
 
+use std::ops::Range;
+
 use flate2::{Decompress, FlushDecompress, Status};
 use libdeflater::{Crc, Decompressor, crc32};
 
@@ -53,6 +55,8 @@ pub(super) struct Inflater {
     member: Option<Member>,
     /// Whether the last BGZF block held anything; the file must not end on such a block.
     block_pending: bool,
+    /// Where reading stops for now: the offset of a block, and how much of that block is still wanted.
+    limit: Option<(u64, usize)>,
     blocks: Decompressor,
     stream: Decompress,
 }
@@ -87,6 +91,7 @@ impl Inflater {
             packing,
             member: None,
             block_pending: false,
+            limit: None,
             blocks: Decompressor::new(),
             stream: Decompress::new(false),
         })
@@ -119,6 +124,13 @@ impl Inflater {
             return self.fill_plain(out);
         }
         loop {
+            let at = self.source.offset();
+            if self
+                .limit
+                .is_some_and(|(block, n)| at > block || (at == block && n == 0))
+            {
+                return Ok(0);
+            }
             let added = if self.member.is_some() {
                 self.fill_member(out)?
             } else if self.source.peek(1)?.is_empty() {
@@ -126,7 +138,17 @@ impl Inflater {
                 return Ok(0);
             } else {
                 match member_head(&mut self.source)? {
-                    MemberHead::Block { header, block } => self.fill_block(header, block, out)?,
+                    MemberHead::Block { header, block } => {
+                        let known = out.len();
+                        let added = self.fill_block(header, block, out)?;
+                        match self.limit {
+                            Some((last, wanted)) if last == at && wanted < added => {
+                                out.truncate(known + wanted);
+                                wanted
+                            }
+                            _ => added,
+                        }
+                    }
                     MemberHead::Stream { header } => {
                         self.begin_member(header);
                         0
@@ -137,6 +159,25 @@ impl Inflater {
                 return Ok(added);
             }
         }
+    }
+
+    /// Whether no stretch has been gone to yet.
+    pub fn limit_is_unset(&self) -> bool {
+        self.limit.is_none()
+    }
+
+    /// Goes on with a stretch of a BGZF file between two virtual offsets, until [`Inflater::fill`] says 0.
+    /// What the stretch has of its first block is appended to `out`.
+    pub fn go_to(&mut self, chunk: &Range<u64>, out: &mut Vec<u8>) -> Result<()> {
+        let parts = |at: u64| (at >> 16, (at & 0xffff) as usize);
+        let (block, skipped) = parts(chunk.start);
+        self.source.seek(block)?;
+        self.limit = Some(parts(chunk.end));
+        let known = out.len();
+        self.fill(out)?;
+        let end = out.len().min(known + skipped);
+        out.drain(known..end);
+        Ok(())
     }
 
     fn fill_plain(&mut self, out: &mut Vec<u8>) -> Result<usize> {

@@ -1,6 +1,8 @@
 //! From the bytes of a file to batches of whole records.
 
+use std::collections::VecDeque;
 use std::io::Read;
+use std::ops::Range;
 use std::path::Path;
 use std::sync::Arc;
 
@@ -8,14 +10,17 @@ use super::batch::RecordBatch;
 use super::fault::{COPY_AGAIN, Fault};
 use super::header::CallsHeader;
 use super::inflate::Inflater;
+use super::inflate::Packing;
 use super::limits::BATCH_BYTES;
 use super::order::OrderWatch;
 use super::preamble::{NO_LINE_END, read_preamble};
+use super::regions::{self, Access};
 use super::remarks::Remarks;
 use super::source::{InputDigest, Source};
 use super::split::Split;
 use super::tidy;
 use crate::error::{Error, Place, Result};
+use crate::model::Regions;
 
 /// Bytes of which the first line tells whether they are a tidy table.
 const TIDY_BYTES: usize = 4096;
@@ -35,6 +40,10 @@ pub struct CallsReader {
     failure: Option<Error>,
     /// The table from which the records were made, if any.
     tidy: Option<InputDigest>,
+    /// What the run is about, where it is not everything.
+    regions: Option<Arc<Regions>>,
+    /// Stretches of the file that are still to be read, where an index says which.
+    chunks: Option<VecDeque<Range<u64>>>,
 }
 
 /// Opens a file of calls, or standard input for `-`, and reads its header.
@@ -103,7 +112,34 @@ impl CallsReader {
             ended: false,
             failure: None,
             tidy: None,
+            regions: None,
+            chunks: None,
         })
+    }
+
+    /// From now on only records in these regions count; where a BGZF file has an index, only their
+    /// blocks are read. To be called before the first batch is read.
+    ///
+    /// # Errors
+    /// An index that cannot be read, a file that has lost its end, a contig that the header does not know.
+    pub fn restrict(&mut self, regions: Arc<Regions>) -> Result<()> {
+        let from_a_file = self.path() != Path::new("-") && self.path().is_file();
+        if self.inflater.packing() == Packing::Bgzf && from_a_file {
+            match regions::access(self.path(), &self.header, &regions)? {
+                Access::Whole(why) => self.warnings.push(why),
+                Access::Chunks(chunks) => {
+                    self.carry.clear();
+                    self.chunks = Some(chunks.into());
+                }
+            }
+        }
+        self.regions = Some(regions);
+        Ok(())
+    }
+
+    /// What the run is about, where it is not everything.
+    pub(super) fn regions(&self) -> Option<Arc<Regions>> {
+        self.regions.clone()
     }
 
     /// What the file says before its first record.
@@ -210,11 +246,32 @@ impl CallsReader {
             if full || self.ended {
                 return Ok(());
             }
-            if self.inflater.fill(&mut batch.bytes)? == 0 {
+            if self.chunks.is_some() && self.inflater.limit_is_unset() {
+                // Nothing of the header's blocks belongs to a region that was asked for.
+            } else if self.inflater.fill(&mut batch.bytes)? > 0 {
+                continue;
+            }
+            if !self.next_chunk(batch, split)? {
                 self.ended = true;
                 return self.end(batch, split);
             }
         }
+    }
+
+    /// Goes to the next stretch that the index names; false when there is none.
+    fn next_chunk(&mut self, batch: &mut RecordBatch, split: &Split) -> Result<bool> {
+        let Some(chunk) = self.chunks.as_mut().and_then(VecDeque::pop_front) else {
+            return Ok(false);
+        };
+        if split.start < batch.bytes.len() {
+            let fault = Fault::new(
+                "the index ends a stretch inside of this record, so it is not of these calls",
+                "make the index again, or remove it",
+            );
+            return Err(self.fault_in_next(batch, fault));
+        }
+        self.inflater.go_to(&chunk, &mut batch.bytes)?;
+        Ok(true)
     }
 
     fn watch_order(&mut self, batch: &RecordBatch) {

@@ -1,7 +1,7 @@
 //! The bytes of a file or of standard input as they are, counted and digested on the way.
 
 use std::fs::File;
-use std::io::{self, Read};
+use std::io::{self, Read, Seek, SeekFrom};
 use std::path::{Path, PathBuf};
 
 use sha2::{Digest, Sha256};
@@ -14,7 +14,7 @@ const BUFFER_BYTES: usize = 256 << 10;
 /// Size and digest of everything read, for the provenance of a report.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct InputDigest {
-    /// Bytes of the file as it is on disk.
+    /// Bytes of the file as it is on disk; of its parts that were read, where only regions were.
     pub bytes: u64,
     /// SHA-256 of these bytes, as 64 hexadecimal digits.
     pub sha256: String,
@@ -28,6 +28,7 @@ pub(super) struct Source {
     start: usize,
     end: usize,
     offset: u64,
+    taken: u64,
     digest: Sha256,
 }
 
@@ -51,6 +52,7 @@ impl Source {
             start: 0,
             end: 0,
             offset: 0,
+            taken: 0,
             digest: Sha256::new(),
         }
     }
@@ -76,10 +78,7 @@ impl Source {
         while self.end - self.start < wanted {
             match self.stream.read(&mut self.buffer[self.end..]) {
                 Ok(0) => break,
-                Ok(n) => {
-                    self.digest.update(&self.buffer[self.end..self.end + n]);
-                    self.end += n;
-                }
+                Ok(n) => self.end += n,
                 Err(e) if e.kind() == io::ErrorKind::Interrupted => {}
                 Err(e) => return Err(Error::io(&self.path, "read", e)),
             }
@@ -90,17 +89,28 @@ impl Source {
     /// Takes `n` bytes that were looked at.
     pub fn consume(&mut self, n: usize) {
         debug_assert!(n <= self.end - self.start);
+        self.digest.update(&self.buffer[self.start..self.start + n]);
         self.start += n;
         self.offset += n as u64;
+        self.taken += n as u64;
         if self.start == self.end {
             self.start = 0;
             self.end = 0;
         }
     }
 
+    /// Goes on at another place of the file, which must be one that has places.
+    pub fn seek(&mut self, offset: u64) -> Result<()> {
+        let mut file = File::open(&self.path).map_err(|e| Error::io(&self.path, "open", e))?;
+        file.seek(SeekFrom::Start(offset))
+            .map_err(|e| Error::io(&self.path, "read", e))?;
+        self.stream = Box::new(file);
+        (self.start, self.end, self.offset) = (0, 0, offset);
+        Ok(())
+    }
+
     /// Size and digest of all that was taken from the stream so far.
     pub fn digest(&self) -> InputDigest {
-        let held = (self.end - self.start) as u64;
         let sha256 = self
             .digest
             .clone()
@@ -109,7 +119,7 @@ impl Source {
             .map(|b| format!("{b:02x}"))
             .collect();
         InputDigest {
-            bytes: self.offset + held,
+            bytes: self.taken,
             sha256,
         }
     }
@@ -140,6 +150,7 @@ mod tests {
         source.consume(1);
         assert_eq!(source.offset(), 1);
         assert_eq!(source.peek(5).unwrap(), b"bc");
+        source.consume(2);
         // FIPS 180-2, appendix B.1: the digest of "abc".
         assert_eq!(
             source.digest(),

@@ -169,7 +169,8 @@ impl Genotypes {
     }
 }
 
-/// The fate of a record. Every record gets exactly one, and every one is counted.
+/// The fate of a record. Every record gets exactly one, and every one is counted, but for those outside
+/// the regions that were asked for.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
 pub enum Verdict {
     /// At least one individual in use has a diploid genotype.
@@ -184,10 +185,12 @@ pub enum Verdict {
     OnlyOtherPloidy,
     /// More alleles are listed than the reader handles.
     TooManyAlleles,
+    /// The record lies outside the regions that the run is about: as if it were not in the file.
+    Elsewhere,
 }
 
 impl Verdict {
-    /// Every verdict, in report order.
+    /// Every verdict that is counted, in report order.
     pub const ALL: [Verdict; 6] = [
         Verdict::Kept,
         Verdict::NoGenotypeField,
@@ -206,6 +209,7 @@ impl Verdict {
             Verdict::OnlyHaploid => "only_haploid",
             Verdict::OnlyOtherPloidy => "only_other_ploidy",
             Verdict::TooManyAlleles => "too_many_alleles",
+            Verdict::Elsewhere => "elsewhere",
         }
     }
 }

@@ -2,8 +2,11 @@
 
 use std::borrow::Cow;
 use std::collections::BTreeMap;
+use std::path::PathBuf;
 
 use serde::{Deserialize, Serialize};
+
+use super::regions::Region;
 
 /// Masks; the default masks nothing.
 #[derive(Debug, Clone, Default, PartialEq)]
@@ -26,6 +29,10 @@ pub struct Masks {
     pub contigs: Option<Vec<String>>,
     /// Contigs that are left out.
     pub without_contigs: Vec<String>,
+    /// Regions that the run is about; none, and no BED file, is everything.
+    pub regions: Vec<Region>,
+    /// More of them, in a BED file.
+    pub regions_bed: Option<PathBuf>,
 }
 
 /// Records left out and genotypes masked, by reason.
@@ -56,6 +63,7 @@ impl Masks {
         let number = |n: Option<u32>| n.map(|n| n.to_string());
         let list = |l: &Vec<String>| l.join(",");
         let yes = |b: bool| b.then(|| "yes".to_owned());
+        let bed = self.regions_bed.as_ref().map(|p| p.display().to_string());
         let without = (!self.without_contigs.is_empty()).then(|| list(&self.without_contigs));
         [
             ("mask_below_gq", number(self.below_gq)),
@@ -70,11 +78,25 @@ impl Masks {
             ("biallelic_only", yes(self.biallelic_only)),
             ("contigs", self.contigs.as_ref().map(list)),
             ("without_contigs", without),
+            (
+                "regions",
+                (!self.regions.is_empty()).then(|| regions(&self.regions)),
+            ),
+            ("regions_bed", bed),
         ]
         .into_iter()
         .filter_map(|(name, value)| Some((name, value?)))
         .collect()
     }
+}
+
+fn regions(list: &[Region]) -> String {
+    let one = |r: &Region| match (r.from, r.to) {
+        (0, u64::MAX) => r.contig.clone(),
+        (from, u64::MAX) => format!("{}:{from}-", r.contig),
+        (from, to) => format!("{}:{from}-{to}", r.contig),
+    };
+    list.iter().map(one).collect::<Vec<_>>().join(",")
 }
 
 impl MaskTally {

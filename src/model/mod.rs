@@ -7,6 +7,7 @@ mod matching;
 mod notes;
 mod plan;
 mod programme;
+mod regions;
 mod screen_plan;
 mod strata;
 
@@ -22,6 +23,7 @@ pub use plan::{
     DEFAULT_SAMPLING_PLAN, MeasurePlan, default_gene_copies,
 };
 pub use programme::{LifeHistory, PopulationSettings, Programme, SamplingPlan};
+pub use regions::{Region, Regions};
 pub use screen_plan::{
     DEFAULT_LIST_LOCI, DEFAULT_LIST_PAIRS, DEFAULT_MIN_SAMPLE_CALL_RATE, DEFAULT_SCREEN_LOCI,
     RunRule, SCREEN_REPEATS, ScreenPlan,

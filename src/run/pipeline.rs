@@ -281,6 +281,9 @@ impl<'a, S: Gather> Worker<'a, S> {
         let mut rows = Vec::new();
         for i in 0..work.batch.len() {
             let verdict = decoder.decode(&work.batch, i, &mut self.locus)?;
+            if verdict == Verdict::Elsewhere {
+                continue;
+            }
             *self.part.verdicts.entry(verdict).or_default() += 1;
             if let Some(masks) = self.masks.filter(|_| verdict == Verdict::Kept) {
                 let masked = &mut self.part.masked;

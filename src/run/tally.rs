@@ -229,7 +229,7 @@ impl Tallies {
 const AGAIN: &str = "make the tally again";
 
 /// Settings in which shards differ by their nature.
-const OF_THE_SHARD: [&str; 2] = ["contigs", "without_contigs"];
+const OF_THE_SHARD: [&str; 4] = ["contigs", "without_contigs", "regions", "regions_bed"];
 
 /// Settings that `measure` can name as well.
 const FROM_PLAN: [&str; 3] = ["gene_copies", "list_losses", "min_call_rate"];

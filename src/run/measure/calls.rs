@@ -1,6 +1,7 @@
 //! The files of calls behind a report: opened, matched with the sheet, and what is told of them.
 
 use std::collections::HashSet;
+use std::sync::Arc;
 
 use crate::error::{Error, Result};
 use crate::ingest::sheet::{Sheet, listed_samples};
@@ -66,8 +67,12 @@ pub fn told_with_calls(error: Error, plan: &MeasurePlan) -> Error {
 pub fn open_calls(plan: &MeasurePlan, sheet: &Sheet) -> Result<(Vec<Source>, Matched)> {
     let mut sources = Vec::new();
     let mut first: Option<Matched> = None;
+    let regions = ingest::regions_of(&plan.masks)?.map(Arc::new);
     for path in &plan.calls {
-        let reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
+        let mut reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
+        if let Some(regions) = &regions {
+            reader.restrict(Arc::clone(regions))?;
+        }
         let matched = match_samples(&reader.header().samples, &sheet.rows, plan.allow_absent)
             .map_err(|problems| Error::Sheet {
                 path: plan.sheet.clone(),

@@ -1,6 +1,7 @@
 //! Sheet and calls to slots, and findings back to rows of the sheet.
 
 use std::collections::HashMap;
+use std::sync::Arc;
 
 use crate::error::{Error, Place, Result};
 use crate::ingest::sheet::Sheet;
@@ -28,8 +29,12 @@ pub(super) fn open_calls(plan: &ScreenPlan, sheet: &Sheet) -> Result<(Vec<Source
     let rows = all_samples(&sheet.rows);
     let mut sources = Vec::new();
     let mut first: Option<Matched> = None;
+    let regions = ingest::regions_of(&plan.masks)?.map(Arc::new);
     for path in &plan.calls {
-        let reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
+        let mut reader = ingest::open_with_map(path, plan.locus_map.as_deref())?;
+        if let Some(regions) = &regions {
+            reader.restrict(Arc::clone(regions))?;
+        }
         let matched = match_samples(&reader.header().samples, &rows, plan.allow_absent);
         let matched = matched.map_err(|problems| Error::Sheet {
             path: plan.sheet.clone(),
