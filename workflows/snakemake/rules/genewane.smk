@@ -54,7 +54,7 @@ rule tally:
         options=MEASURE,
     shell:
         "genewane tally {input.calls} --samples {input.samples} {params.options}"
-        " --contigs {wildcards.contig} --threads {threads} -o {output} 2> {log}"
+        " --region {wildcards.contig} --threads {threads} -o {output} 2> {log}"
 
 
 rule measure:
@@ -114,7 +114,9 @@ rule verdict:
 
 rule page:
     input:
-        expand("{out}/report.json", out=OUT),
+        report=expand("{out}/report.json", out=OUT),
+        forecast=expand("{out}/forecast.json", out=OUT),
+        verdict=expand("{out}/verdict.json", out=OUT),
     output:
         expand("{out}/page.html", out=OUT),
     log:
@@ -122,4 +124,4 @@ rule page:
     conda:
         "../envs/genewane.yaml"
     shell:
-        "genewane page {input} -o {output} 2> {log}"
+        "genewane page {input.report} {input.forecast} {input.verdict} -o {output} 2> {log}"
