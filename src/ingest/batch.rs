@@ -1,4 +1,8 @@
 //! Whole records on their way from the reader to a decoder.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "spans are made by the splitter of the same batch"
+)]
 
 /// Some records of one file, undecoded, in file order. Refilled by
 /// [`crate::ingest::CallsReader::next_batch`]; its buffers are kept.

@@ -1,4 +1,8 @@
 //! One record of BCF (VCF 4.3, section 6.3).
+#![expect(
+    clippy::indexing_slicing,
+    reason = "a block is as long as columns times places, which was checked when it was split"
+)]
 
 use super::call::{Call, Flaw, Places, Row, UNUSED};
 use super::cursor::{Cursor, Kind};

@@ -1,4 +1,8 @@
 //! One genotype as it was called, and the row of a locus that takes them.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "a call has two places, and slots and columns are those that the selection was checked for"
+)]
 
 use crate::model::{CallTally, Genotypes, MISSING_DOSAGE, Verdict};
 

@@ -1,4 +1,8 @@
 //! Typed values of BCF (VCF 4.3, section 6.3.3), with every length checked.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "`take` gives as many bytes as were asked for"
+)]
 
 use super::fault::{Fault, WRITE_AGAIN};
 

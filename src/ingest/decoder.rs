@@ -1,4 +1,8 @@
 //! From an undecoded record to a locus and its verdict.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "the scanner counts columns and places of the same row"
+)]
 
 mod masks;
 
@@ -158,11 +162,10 @@ impl Decoder {
         placed: &mut bool,
     ) -> std::result::Result<Verdict, Fault> {
         let line = Line::split(line, self.header.samples.len())?;
-        self.place(line.contig, line.position, locus)?;
-        *placed = true;
-        if self.is_elsewhere(locus) {
+        if !self.place(line.contig, line.position, locus)? {
             return Ok(Verdict::Elsewhere);
         }
+        *placed = true;
         set_id(locus, line.id);
         locus.clear_alleles();
         let format = self.format_of(line.format, locus.record)?;
@@ -210,11 +213,10 @@ impl Decoder {
                 WRITE_AGAIN,
             )
         })?;
-        self.place(contig.as_bytes(), site.position, locus)?;
-        *placed = true;
-        if self.is_elsewhere(locus) {
+        if !self.place(contig.as_bytes(), site.position, locus)? {
             return Ok(Verdict::Elsewhere);
         }
+        *placed = true;
         set_id(locus, site.id);
         locus.clear_alleles();
         site.alleles(|allele| locus.push_allele(allele))?;
@@ -223,11 +225,6 @@ impl Decoder {
             Some(_) if site.allele_count > MAX_ALLELES => Ok(Verdict::TooManyAlleles),
             Some(block) => self.genotypes(locus, Values::Binary(block)),
         }
-    }
-
-    fn is_elsewhere(&self, locus: &Locus) -> bool {
-        let regions = self.regions.as_ref();
-        regions.is_some_and(|regions| !regions.hold(&locus.contig, locus.position))
     }
 
     /// Reads the genotypes of a record whose alleles are in place.
@@ -325,13 +322,14 @@ impl Decoder {
         }
     }
 
-    /// Sets contig and position, hashing the name only when it is a new one.
+    /// Sets contig and position, hashing the name only when it is a new one; false where the run is about
+    /// other regions.
     fn place(
         &mut self,
         contig: &[u8],
         position: u64,
         locus: &mut Locus,
-    ) -> std::result::Result<(), Fault> {
+    ) -> std::result::Result<bool, Fault> {
         if contig != self.contig.name.as_bytes() {
             let name = std::str::from_utf8(contig).map_err(|_| {
                 Fault::new(
@@ -356,7 +354,8 @@ impl Decoder {
         if position > i32::MAX as u64 {
             self.remarks.add(Remark::FarPosition, locus.record);
         }
-        Ok(())
+        let regions = self.regions.as_ref();
+        Ok(regions.is_none_or(|regions| regions.hold(&locus.contig, position)))
     }
 
     /// What the FORMAT column says; remembered from the record before.

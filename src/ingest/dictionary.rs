@@ -1,4 +1,8 @@
 //! `##` lines of a header: contigs, and the numbering of names that binary records use.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "places were found in the same line"
+)]
 
 use std::collections::HashMap;
 use std::sync::Arc;

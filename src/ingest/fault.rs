@@ -1,4 +1,8 @@
 //! What is wrong with a piece of a file, before its place is known.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "cut at the length of what is shown"
+)]
 
 use std::path::Path;
 

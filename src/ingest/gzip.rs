@@ -1,4 +1,8 @@
 //! The header of a gzip member (RFC 1952), and whether it is a BGZF block.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "`need` gives at least as many bytes as were asked for, or a fault"
+)]
 
 use libdeflater::crc32;
 

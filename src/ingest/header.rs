@@ -4,6 +4,10 @@
 //! descriptive lines that break the standard (a bad `Number=` of some INFO key, say) do not touch a
 //! genotype and are let through with a warning, while a second `#CHROM` column named otherwise, a
 //! duplicate sample or a missing `##fileformat` stops the run, and every message has its cure.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "the place was found in the same line"
+)]
 
 use std::collections::HashSet;
 

@@ -3,6 +3,10 @@
 //! BGZF blocks are inflated here, not by a library, for three reasons: a file cut inside the header
 //! of a block must be noticed, the end-of-file marker must be asked for, and a block can be inflated
 //! straight into the batch with one decompressor for all blocks.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "lengths were asked of the same buffer"
+)]
 
 use std::ops::Range;
 

@@ -1,6 +1,10 @@
 //! Whether records come in order, and none twice: told, since single loci do not suffer from it.
 //!
 //! Watched by the reader, who alone sees all records in the order of the file.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "places were found in the same line"
+)]
 
 use std::collections::HashSet;
 

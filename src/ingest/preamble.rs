@@ -1,4 +1,8 @@
 //! From the first byte of the decompressed file to its first record.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "places were found in the same text"
+)]
 
 use memchr::memchr;
 

@@ -1,4 +1,8 @@
 //! From the bytes of a file to batches of whole records.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "the splitter stays within its batch"
+)]
 
 use std::collections::VecDeque;
 use std::io::Read;

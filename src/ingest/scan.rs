@@ -1,4 +1,5 @@
 //! The sample columns of a line of text.
+#![expect(clippy::indexing_slicing, reason = "places were found in the same row")]
 
 use memchr::{memchr, memchr_iter, memchr2};
 

@@ -16,6 +16,10 @@
 //! | `use` | yes or no; rows with no are left out and counted, blank is yes |
 //!
 //! Further columns are ignored. `NA` counts as blank in optional columns.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "columns are those of the header, and rows have as many"
+)]
 
 pub mod annotate;
 mod columns;

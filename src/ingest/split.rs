@@ -1,4 +1,8 @@
 //! Where one record ends and the next begins.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "places were found in the same batch"
+)]
 
 use memchr::memchr;
 

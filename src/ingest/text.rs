@@ -1,4 +1,8 @@
 //! One line of VCF.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "places were found in the same line"
+)]
 
 use memchr::memchr;
 

@@ -10,6 +10,10 @@
 //! must not contradict itself. The table becomes the same records as a VCF with one record a locus:
 //! alleles named as written, in ascending order, the locus as identifier. Without a map of loci each
 //! locus stands on a contig of its own, which is what unlinked loci are. The table is held in memory.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "numbers were given out by the same lists"
+)]
 
 mod map;
 

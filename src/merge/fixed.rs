@@ -82,4 +82,31 @@ mod tests {
         let largest = i128::from(to_fixed(f64::INFINITY)) * i128::from(BATCH_LOCI) * 2;
         assert!(largest <= i128::from(i64::MAX));
     }
+
+    /// Ten million loci of 50 individuals: expected heterozygosities are whole numbers of
+    /// 2/(100 x 99), so their sum is known exactly.
+    #[test]
+    fn ten_million_loci_add_up_within_the_stated_error() {
+        const LOCI: u64 = 10_000_000;
+        let (mut sum, mut exact) = (0i128, 0u64);
+        let mut state = 1u64;
+        for _ in 0..LOCI {
+            state = state
+                .wrapping_mul(6_364_136_223_846_793_005)
+                .wrapping_add(1);
+            let copies = 1 + (state >> 33) % 99;
+            let pairs_that_differ = copies * (100 - copies);
+            sum += i128::from(to_fixed(2.0 * pairs_that_differ as f64 / 9900.0));
+            exact += pairs_that_differ;
+        }
+        // In whole units of 2^-40 / 4950, so that the comparison itself rounds nothing.
+        let difference = sum * 4950 - (i128::from(exact) << FRACTION_BITS);
+        let most = i128::from(LOCI) * 4950 / 2;
+        assert!(difference.abs() <= most, "{difference} of at most {most}");
+        // Errors of rounding cancel for the most part.
+        assert!(
+            difference.abs() <= most / 100,
+            "{difference} of at most {most}"
+        );
+    }
 }

@@ -4,6 +4,21 @@
 //! stratum `typed:S`, `heterozygotes:S` and `copies:S` (a list by allele). The footer holds under
 //! [`HEADER_KEY`] what it was made of (JSON, [`TallyHeader`]) and under `genewane-state` the exact sums that
 //! `measure` adds up, for this program alone.
+#![cfg_attr(
+    not(test),
+    deny(
+        clippy::unwrap_used,
+        clippy::expect_used,
+        clippy::panic,
+        clippy::unreachable,
+        clippy::todo,
+        clippy::indexing_slicing
+    )
+)]
+#![expect(
+    clippy::indexing_slicing,
+    reason = "places were found in the same line; slots are those of the strata"
+)]
 
 use std::collections::BTreeMap;
 use std::fmt::Write as _;

@@ -1,4 +1,15 @@
 //! Copies of chosen alleles, looked up in the rows of a tally.
+#![cfg_attr(
+    not(test),
+    deny(
+        clippy::unwrap_used,
+        clippy::expect_used,
+        clippy::panic,
+        clippy::unreachable,
+        clippy::todo,
+        clippy::indexing_slicing
+    )
+)]
 
 use std::collections::{HashMap, HashSet};
 use std::fs::File;

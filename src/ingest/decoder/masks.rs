@@ -1,5 +1,6 @@
 //! Masks on a record that was decoded: its filters, and the quality, depth and allele reads of its
 //! genotypes. Read again from the record only when a mask asks for them.
+#![expect(clippy::indexing_slicing, reason = "three fields, three places")]
 
 use super::Decoder;
 use crate::error::{Place, Result};

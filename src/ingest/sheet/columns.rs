@@ -1,4 +1,5 @@
 //! Which column of the sheet holds what.
+#![expect(clippy::indexing_slicing, reason = "numbers of the same list")]
 
 use crate::model::{Note, Problem, nearest, plain_letters};
 

@@ -1,4 +1,5 @@
 //! Single fields of the sheet to values, each with its complaint and cure.
+#![expect(clippy::indexing_slicing, reason = "the month was checked first")]
 
 use crate::model::Sex;
 

@@ -1,4 +1,8 @@
 //! Bytes of a small delimited table to records with their true line numbers.
+#![expect(
+    clippy::indexing_slicing,
+    reason = "the place was found in the same text"
+)]
 
 use crate::model::Problem;
 
