@@ -56,7 +56,7 @@ complete -c genewane -n "__fish_genewane_using_subcommand measure" -l mask-below
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l filters -d 'Keep records of which every filter is listed, as in PASS,. (a dot is "not filtered")' -r
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l contigs -d 'Keep these contigs alone' -r
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l without-contigs -d 'Leave out these contigs, such as sex chromosomes' -r
-complete -c genewane -n "__fish_genewane_using_subcommand measure" -l region -d 'Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; may be given again' -r
+complete -c genewane -n "__fish_genewane_using_subcommand measure" -l region -d 'Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; several with commas' -r
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l regions-bed -d 'The same, from a BED file (positions from 0, ends not included)' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -l threads -d 'Threads to use [default: all cores]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand measure" -s o -l output -d 'Write the report here [default: standard output]' -r -F
@@ -87,7 +87,7 @@ complete -c genewane -n "__fish_genewane_using_subcommand tally" -l mask-below-b
 complete -c genewane -n "__fish_genewane_using_subcommand tally" -l filters -d 'Keep records of which every filter is listed, as in PASS,. (a dot is "not filtered")' -r
 complete -c genewane -n "__fish_genewane_using_subcommand tally" -l contigs -d 'Keep these contigs alone' -r
 complete -c genewane -n "__fish_genewane_using_subcommand tally" -l without-contigs -d 'Leave out these contigs, such as sex chromosomes' -r
-complete -c genewane -n "__fish_genewane_using_subcommand tally" -l region -d 'Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; may be given again' -r
+complete -c genewane -n "__fish_genewane_using_subcommand tally" -l region -d 'Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; several with commas' -r
 complete -c genewane -n "__fish_genewane_using_subcommand tally" -l regions-bed -d 'The same, from a BED file (positions from 0, ends not included)' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand tally" -l threads -d 'Threads to use [default: all cores]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand tally" -s o -l output -d 'Write the tally here: a Parquet file' -r -F
@@ -171,7 +171,7 @@ complete -c genewane -n "__fish_genewane_using_subcommand screen" -l mask-below-
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l filters -d 'Keep records of which every filter is listed, as in PASS,. (a dot is "not filtered")' -r
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l contigs -d 'Keep these contigs alone' -r
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l without-contigs -d 'Leave out these contigs, such as sex chromosomes' -r
-complete -c genewane -n "__fish_genewane_using_subcommand screen" -l region -d 'Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; may be given again' -r
+complete -c genewane -n "__fish_genewane_using_subcommand screen" -l region -d 'Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; several with commas' -r
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l regions-bed -d 'The same, from a BED file (positions from 0, ends not included)' -r -F
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l threads -d 'Threads to use [default: all cores]' -r
 complete -c genewane -n "__fish_genewane_using_subcommand screen" -l allow-absent -d 'Let samples of the sheet lack calls: they are left out with a note'

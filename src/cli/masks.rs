@@ -40,12 +40,12 @@ pub(super) struct MaskFlags {
     /// Leave out these contigs, such as sex chromosomes
     #[arg(long, value_name = "LIST", value_delimiter = ',')]
     without_contigs: Vec<String>,
-    /// Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; may be given again
+    /// Read the records at these places alone: CONTIG, CONTIG:FROM-TO, CONTIG:FROM-; several with commas
     ///
     /// By the position of a record (POS), from 1, ends included. With an index (.csi or .tbi) beside BGZF
     /// calls only their blocks are read; otherwise all is read, which is told. Records elsewhere are as if
     /// they were not in the file.
-    #[arg(long, value_name = "REGION", value_parser = Region::parse)]
+    #[arg(long, value_name = "REGION", value_delimiter = ',', value_parser = Region::parse)]
     region: Vec<Region>,
     /// The same, from a BED file (positions from 0, ends not included)
     #[arg(long, value_name = "FILE")]

@@ -30,6 +30,7 @@ rule screen:
     threads: 2
     resources:
         mem_mb=lambda wildcards, attempt: 2000 * attempt,
+        runtime=lambda wildcards, attempt: 120 * attempt,
     shell:
         "genewane screen {input.calls} --samples {input.samples} --threads {threads}"
         " --write-sheet {output.sheet} -o {output.report} 2> {log}"
@@ -50,6 +51,7 @@ rule tally:
     threads: 1
     resources:
         mem_mb=lambda wildcards, attempt: 1000 * attempt,
+        runtime=lambda wildcards, attempt: 240 * attempt,
     params:
         options=MEASURE,
     shell:
@@ -70,6 +72,7 @@ rule measure:
     threads: 2
     resources:
         mem_mb=lambda wildcards, attempt: 2000 * attempt,
+        runtime=lambda wildcards, attempt: 120 * attempt,
     params:
         options=MEASURE,
     shell:
@@ -87,6 +90,9 @@ rule forecast:
     conda:
         "../envs/genewane.yaml"
     threads: 2
+    resources:
+        mem_mb=lambda wildcards, attempt: 2000 * attempt,
+        runtime=lambda wildcards, attempt: 60 * attempt,
     params:
         options=config.get("forecast_options", ""),
     shell:
@@ -104,6 +110,9 @@ rule verdict:
         expand("{out}/logs/verdict.log", out=OUT),
     conda:
         "../envs/genewane.yaml"
+    resources:
+        mem_mb=lambda wildcards, attempt: 1000 * attempt,
+        runtime=lambda wildcards, attempt: 60 * attempt,
     params:
         options=config.get("verdict_options", ""),
     shell:
@@ -123,5 +132,8 @@ rule page:
         expand("{out}/logs/page.log", out=OUT),
     conda:
         "../envs/genewane.yaml"
+    resources:
+        mem_mb=lambda wildcards, attempt: 1000 * attempt,
+        runtime=lambda wildcards, attempt: 60 * attempt,
     shell:
         "genewane page {input.report} {input.forecast} {input.verdict} -o {output} 2> {log}"
