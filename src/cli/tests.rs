@@ -133,13 +133,11 @@ fn help_and_version_exit_0() {
         version.to_string(),
         format!("genewane {}\n", env!("CARGO_PKG_VERSION"))
     );
-    for line in [
-        "--help",
-        "help",
-        "help measure",
-        "measure --help",
-        "rehearse -h",
-    ] {
+    for line in ["help", "help measure", "help formats"] {
+        assert!(matches!(parse(line), Ok(Work::Words(_))), "{line}");
+    }
+    assert_eq!(parse("help mesure").unwrap_err().exit_code(), 2);
+    for line in ["--help", "measure --help", "rehearse -h"] {
         let help = parse(line).unwrap_err();
         assert_eq!(help.exit_code(), 0, "{line}");
         assert!(
@@ -225,7 +223,7 @@ fn stated_defaults_are_the_defaults_of_the_plan() {
     use crate::model::{
         DEFAULT_LIST_LOSSES, DEFAULT_MIN_CALL_RATE, DEFAULT_SAMPLING_PLAN, SamplingPlan,
     };
-    let help = parse("help measure").unwrap_err().to_string();
+    let help = parse("measure --help").unwrap_err().to_string();
     let plan = match DEFAULT_SAMPLING_PLAN {
         SamplingPlan::One => "1",
         SamplingPlan::Two => "2",
