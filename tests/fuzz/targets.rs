@@ -3,6 +3,7 @@
 use std::io::{Cursor, Read, Write};
 use std::path::{Path, PathBuf};
 use std::sync::LazyLock;
+use std::sync::atomic::{AtomicU64, Ordering};
 
 use genewane::ingest::{self, Decoder, RecordBatch, Selection};
 use genewane::model::{Locus, Verdict};
@@ -13,8 +14,10 @@ use genewane::report::tally::read_tally;
 use genewane::report::tally_counts::TalliedCounts;
 use noodles_bgzf as bgzf;
 use noodles_vcf::variant::io::Write as _;
+use noodles_vcf::variant::record_buf::samples::sample::Value;
 
 use crate::common::{fixture, run};
+use crate::sums::{report, states};
 
 /// What came of one input: read, or the words of the refusal.
 pub type Outcome = Result<(), String>;
@@ -28,7 +31,7 @@ pub struct Target {
     pub share: u64,
 }
 
-pub const TARGETS: [Target; 9] = [
+pub const TARGETS: [Target; 11] = [
     Target {
         name: "text",
         corpus: texts,
@@ -76,6 +79,18 @@ pub const TARGETS: [Target; 9] = [
         corpus: tallies,
         read: tally,
         share: 100,
+    },
+    Target {
+        name: "map",
+        corpus: maps,
+        read: map,
+        share: 200,
+    },
+    Target {
+        name: "sums",
+        corpus: states,
+        read: report,
+        share: 10,
     },
     Target {
         name: "documents",
@@ -174,13 +189,19 @@ fn calls(bytes: &[u8]) -> Outcome {
             );
         }
     }
-    if bytes.starts_with(b"##fileformat=VCF") && bytes.len().is_multiple_of(8) {
+    // The other reader takes longer than ours: every eighth input, unless all are asked for.
+    let compared = bytes.len().is_multiple_of(8) || *COMPARE_ALL;
+    if bytes.starts_with(b"##fileformat=VCF") && compared {
         compare(bytes, &read);
     }
     Ok(())
 }
 
-/// Holds the genotypes against those of another library, where it reads the record at all.
+static COMPARE_ALL: LazyLock<bool> =
+    LazyLock::new(|| std::env::var_os("GENEWANE_FUZZ_COMPARE_ALL").is_some());
+
+/// Holds the genotypes against those of another library, where it reads the record at all: called ones and
+/// missing ones, those of records that were set aside left out.
 fn compare(bytes: &[u8], ours: &[Vec<Option<[u16; 2]>>]) {
     let mut reader = noodles_vcf::io::Reader::new(bytes);
     let Ok(header) = reader.read_header() else {
@@ -189,27 +210,33 @@ fn compare(bytes: &[u8], ours: &[Vec<Option<[u16; 2]>>]) {
     for (record, ours) in reader.record_bufs(&header).zip(ours) {
         // From the first record that it refuses it is out of step.
         let Ok(record) = record else { return };
+        let alternates = record.alternate_bases().as_ref();
         for (sample, ours) in record.samples().values().zip(ours) {
-            use noodles_vcf::variant::record_buf::samples::sample::Value;
             let Some(Some(Value::Genotype(theirs))) = sample.get("GT") else {
                 continue;
             };
-            let alleles: Vec<Option<usize>> =
-                theirs.as_ref().iter().map(|a| a.position()).collect();
-            if let ([Some(a), Some(b)], Some(ours)) = (&alleles[..], ours) {
-                // Which copy comes first means nothing.
-                let sorted = |mut pair: [u16; 2]| {
-                    pair.sort_unstable();
-                    pair
-                };
-                assert_eq!(
-                    sorted([*a as u16, *b as u16]),
-                    sorted(*ours),
-                    "genotypes differ"
-                );
-            }
+            let codes: Vec<_> = theirs.as_ref().iter().map(|a| a.position()).collect();
+            assert_eq!(diploid(&codes, alternates), *ours, "genotypes differ");
+            COMPARED.fetch_add(1, Ordering::Relaxed);
         }
     }
+}
+
+/// Genotypes that were held against those of another library.
+pub static COMPARED: AtomicU64 = AtomicU64::new(0);
+
+/// What the definitions make of a genotype: two alleles called, none of them a stand-in for others. Which
+/// copy comes first means nothing.
+fn diploid(codes: &[Option<usize>], alternates: &[String]) -> Option<[u16; 2]> {
+    let &[Some(a), Some(b)] = codes else {
+        return None;
+    };
+    let stands_in = |code: usize| {
+        let name = code.checked_sub(1).and_then(|i| alternates.get(i));
+        name.is_some_and(|name| ["*", "<*>", "<NON_REF>"].contains(&name.as_str()))
+    };
+    let sorted = [a.min(b) as u16, a.max(b) as u16];
+    (!stands_in(a) && !stands_in(b)).then_some(sorted)
 }
 
 fn tidies() -> Vec<Vec<u8>> {
@@ -223,6 +250,25 @@ fn tidies() -> Vec<Vec<u8>> {
 fn tidy(bytes: &[u8]) -> Outcome {
     let path = scratch("tidy.csv", bytes);
     let mut reader = ingest::open(&path).map_err(words)?;
+    let mut batch = RecordBatch::default();
+    while reader.next_batch(&mut batch).map_err(words)? {}
+    Ok(())
+}
+
+fn maps() -> Vec<Vec<u8>> {
+    vec![
+        b"locus,contig,position\nL1,a,12\nL2,b,900\n".to_vec(),
+        b"locus\tcontig\tposition\nL2\ta\t7\nL1\ta\t3\n".to_vec(),
+    ]
+}
+
+/// A map of loci, with the first table of genotypes.
+fn map(bytes: &[u8]) -> Outcome {
+    let (table, map) = (
+        scratch("table.csv", &tidies()[0]),
+        scratch("map.csv", bytes),
+    );
+    let mut reader = ingest::open_with_map(&table, Some(&map)).map_err(words)?;
     let mut batch = RecordBatch::default();
     while reader.next_batch(&mut batch).map_err(words)? {}
     Ok(())
@@ -278,7 +324,7 @@ fn list(bytes: &[u8]) -> Outcome {
 }
 
 /// A small survey: the demo, two contigs of it.
-static SMALL: LazyLock<PathBuf> = LazyLock::new(|| {
+pub static SMALL: LazyLock<PathBuf> = LazyLock::new(|| {
     let folder = std::env::temp_dir().join(format!("genewane-fuzz-{}", std::process::id()));
     std::fs::create_dir_all(&folder).expect("a scratch folder");
     let sheet = std::fs::read_to_string(fixture("demo/samples.tsv")).expect("the demo sheet");
@@ -288,7 +334,7 @@ static SMALL: LazyLock<PathBuf> = LazyLock::new(|| {
     folder
 });
 
-fn made(command: &str, name: &str, options: &[&str]) -> Vec<u8> {
+pub fn made(command: &str, name: &str, options: &[&str]) -> Vec<u8> {
     let out = SMALL.join(name);
     let mut arguments = vec![
         command.into(),
@@ -302,7 +348,7 @@ fn made(command: &str, name: &str, options: &[&str]) -> Vec<u8> {
     std::fs::read(out).expect("an output")
 }
 
-const OF_A_SURVEY: [&str; 4] = ["--quiet", "--generation-years", "2", "--contigs"];
+pub const OF_A_SURVEY: [&str; 4] = ["--quiet", "--generation-years", "2", "--contigs"];
 
 fn tallies() -> Vec<Vec<u8>> {
     let options = [&OF_A_SURVEY[..], &["fd8"]].concat();
@@ -356,7 +402,7 @@ fn document(bytes: &[u8]) -> Outcome {
     }
 }
 
-fn words(error: genewane::Error) -> String {
+pub fn words(error: genewane::Error) -> String {
     error.to_string()
 }
 
