@@ -233,7 +233,9 @@ fn diploid(codes: &[Option<usize>], alternates: &[String]) -> Option<[u16; 2]> {
     };
     let stands_in = |code: usize| {
         let name = code.checked_sub(1).and_then(|i| alternates.get(i));
-        name.is_some_and(|name| ["*", "<*>", "<NON_REF>"].contains(&name.as_str()))
+        // Where ALT is a dot, allele 1 is an alternate that is not named (examples of the standard have it).
+        let unnamed = code == 1 && alternates.is_empty();
+        unnamed || name.is_some_and(|name| ["*", "<*>", "<NON_REF>"].contains(&name.as_str()))
     };
     let sorted = [a.min(b) as u16, a.max(b) as u16];
     (!stands_in(a) && !stands_in(b)).then_some(sorted)
