@@ -5,6 +5,7 @@ use std::ops::Range;
 
 use serde::{Deserialize, Serialize};
 
+use super::bounds::{self, MOST_ALLELES};
 use super::fixed::{from_fixed, to_fixed};
 use crate::locus::Counts;
 use crate::model::Locus;
@@ -141,6 +142,27 @@ impl Carriers {
             && other.scarce_carried.len() == n
             && other.vanish.len() == n
             && other.list.iter().flat_map(|a| &a.carriers).all(within)
+    }
+
+    /// Whether the alleles can be those of the individuals.
+    pub(super) fn is_bounded(&self) -> bool {
+        let n = self.slots.len();
+        let typed = u32::try_from(2 * n).unwrap_or(u32::MAX);
+        let listed = |a: &ScarceAllele| {
+            (1..=FEW_CARRIERS).contains(&a.carriers.len())
+                && 0 < a.copies
+                && a.copies as usize <= 2 * FEW_CARRIERS
+                && a.copies <= a.typed
+                && a.typed <= typed
+        };
+        let counts = self.only_carrier.iter().chain(&self.scarce_carried);
+        self.scarce <= MOST_ALLELES
+            && counts
+                .chain(self.shared.values())
+                .all(|&c| c <= self.scarce)
+            && self.shared.keys().all(|&(i, j)| i < j && (j as usize) < n)
+            && self.list.iter().all(listed)
+            && bounds::terms(&self.vanish)
     }
 
     /// Slots of the individuals.

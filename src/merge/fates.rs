@@ -8,6 +8,7 @@ use std::collections::{BTreeMap, BTreeSet};
 
 use serde::{Deserialize, Serialize};
 
+use super::bounds::{self, MOST_ALLELES, MOST_LOCI};
 use crate::locus::Counts;
 use crate::model::Locus;
 
@@ -113,6 +114,21 @@ impl Fates {
         self.loci_fixed += other.loci_fixed;
     }
 
+    /// Whether the fates can be those of so many individuals at the first visit and at the second.
+    pub(super) fn is_bounded(&self, first: usize, second: usize) -> bool {
+        let most = [most_typed(first), most_typed(second)];
+        let possible = |copies: u32, before: u32, after: u32| {
+            0 < copies && copies <= before && before <= most[0] && 0 < after && after <= most[1]
+        };
+        let mut keys = self.by_key.keys();
+        let mut missing = self.missing.iter();
+        let numbers = self.by_key.values().flat_map(|f| [&f.seen, &f.not_seen]);
+        keys.all(|k| possible(k.baseline_copies, k.baseline_typed, k.later_typed))
+            && missing.all(|m| possible(m.baseline_copies, m.baseline_typed, m.later_typed))
+            && bounds::add_up(numbers, MOST_ALLELES)
+            && self.loci_fixed <= MOST_LOCI
+    }
+
     /// Alleles by key, in order.
     pub fn by_key(&self) -> impl Iterator<Item = (FateKey, Fate)> + '_ {
         self.by_key.iter().map(|(&key, &fate)| (key, fate))
@@ -170,6 +186,11 @@ pub(super) fn rounded(n: u32) -> u32 {
     }
     let step = 1u32 << (n.ilog2() - 5);
     (n / step) * step + step / 2
+}
+
+/// The most gene copies of so many individuals, [`rounded`].
+pub(super) fn most_typed(individuals: usize) -> u32 {
+    rounded(u32::try_from(2 * individuals).unwrap_or(u32::MAX))
 }
 
 #[cfg(test)]

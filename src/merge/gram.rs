@@ -178,6 +178,14 @@ impl GramStratum {
         other.individuals == n && other.contigs.values().all(|sums| sums.has_size(n))
     }
 
+    /// Whether there are no more groups of contigs than are kept, and their sums can be added up further.
+    pub(super) fn is_bounded(&self) -> bool {
+        let most = contig_groups(self.individuals);
+        self.contigs.len() <= most
+            && (!self.folded || self.contigs.keys().all(|&key| key < most as u64))
+            && self.contigs.values().all(ContigSums::is_bounded)
+    }
+
     /// Individuals of the stratum.
     pub fn individuals(&self) -> usize {
         self.individuals

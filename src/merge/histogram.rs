@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::bounds::{self, MOST_LOCI};
 use crate::locus::hardy_weinberg::Direction;
 
 /// Bits of the fraction of a double that a bin drops: 8 are kept, so each octave has 256 bins and
@@ -56,6 +57,11 @@ impl PValueHistogram {
     /// Whether both have the same bins.
     pub(super) fn same_shape(&self, other: &PValueHistogram) -> bool {
         self.deficit.len() == other.deficit.len() && self.excess.len() == other.excess.len()
+    }
+
+    /// Whether there are no more tests than loci can be.
+    pub(super) fn is_bounded(&self) -> bool {
+        bounds::add_up(self.deficit.iter().chain(&self.excess), MOST_LOCI)
     }
 
     /// Adds all tests of another histogram; commutative and associative, with the default as

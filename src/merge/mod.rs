@@ -1,5 +1,6 @@
 //! Sums that merge: the same bytes for any order, any number of threads and any sharding.
 
+mod bounds;
 pub mod carriers;
 mod entry;
 pub mod fates;

@@ -66,6 +66,11 @@ impl Panel {
         self.trim();
     }
 
+    /// Whether no more loci were offered than vary, and no more are kept than were offered.
+    pub(super) fn is_bounded(&self, polymorphic: u64) -> bool {
+        self.offered <= polymorphic && self.loci.len() as u64 <= self.offered
+    }
+
     /// Loci kept, in an order of their own that is the same in every run.
     pub fn loci(&self) -> impl ExactSizeIterator<Item = &PanelLocus> {
         self.loci.iter()

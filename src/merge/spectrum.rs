@@ -4,7 +4,8 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
-use super::fates::rounded;
+use super::bounds::{self, MOST_ALLELES, MOST_LOCI};
+use super::fates::{most_typed, rounded};
 use crate::locus::Counts;
 
 /// Alleles by copies seen and gene copies typed, over loci that vary among all individuals in use.
@@ -31,6 +32,16 @@ impl Spectrum {
         for (class, alleles) in other.classes {
             *self.classes.entry(class).or_default() += alleles;
         }
+    }
+
+    /// Whether the alleles can be those of so many individuals.
+    pub(super) fn is_bounded(&self, individuals: usize) -> bool {
+        let most = most_typed(individuals);
+        let possible =
+            |&(copies, typed): &(u32, u32)| 0 < copies && copies <= typed && typed <= most;
+        self.loci <= MOST_LOCI
+            && self.classes.keys().all(possible)
+            && bounds::add_up(self.classes.values(), MOST_ALLELES)
     }
 
     /// Copies, gene copies and number of alleles, in order. Numbers above 64 are rounded by at most

@@ -93,6 +93,9 @@ impl Sums {
         read.heterozygous = stored.heterozygous;
         read.kept = stored.kept;
         read.polymorphic = stored.polymorphic;
+        if !read.is_bounded() {
+            return Err("they are larger than loci of these samples can make them".to_owned());
+        }
         // Merged into empty sums, which have the buffers that were not kept.
         sums.merge(read);
         sums.flush();

@@ -5,6 +5,7 @@ use std::ops::Range;
 
 use serde::{Deserialize, Serialize};
 
+use super::bounds;
 use super::fixed::{BATCH_LOCI, from_fixed};
 use super::windows::{Blocking, Windows};
 use crate::locus::{GenotypeClasses, Terms};
@@ -162,6 +163,11 @@ impl<T: Terms> TwoWay<T> {
             && self.total.len() == other.total.len()
             && self.absences.len() == other.absences.len()
             && self.windows.same_shape(&other.windows)
+    }
+
+    /// Whether the sums can be added up further.
+    pub(super) fn is_bounded(&self) -> bool {
+        bounds::terms(self.total.iter().chain(&self.absences)) && self.windows.is_bounded()
     }
 
     /// Individuals by independent sample.

@@ -9,6 +9,8 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use super::bounds;
+
 /// Levels at which windows double: from 2^16 bases up to a whole contig.
 const CONTIG_LEVEL: u32 = 32;
 /// Bases of the finest window, as a power of two.
@@ -72,6 +74,11 @@ impl Windows {
             && self.most == other.most
             && other.level <= CONTIG_LEVEL + FOLD_BITS
             && other.sums.values().all(|sums| sums.len() == self.terms)
+    }
+
+    /// Whether there are no more windows than are kept, and their sums can be added up further.
+    pub(super) fn is_bounded(&self) -> bool {
+        self.sums.len() <= self.most && bounds::terms(self.sums.values().flatten())
     }
 
     /// Number of windows with loci.

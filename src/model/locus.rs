@@ -234,6 +234,28 @@ pub struct CallTally {
 }
 
 impl CallTally {
+    /// Every number of it.
+    pub fn numbers(&self) -> [u64; 7] {
+        let CallTally {
+            diploid,
+            missing,
+            partly_missing,
+            haploid,
+            other_ploidy,
+            spanning_deletion,
+            unspecified_allele,
+        } = *self;
+        [
+            diploid,
+            missing,
+            partly_missing,
+            haploid,
+            other_ploidy,
+            spanning_deletion,
+            unspecified_allele,
+        ]
+    }
+
     /// Adds another tally; commutative and associative, with the default as identity.
     pub fn merge(&mut self, other: &CallTally) {
         self.diploid += other.diploid;

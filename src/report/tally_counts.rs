@@ -125,7 +125,9 @@ impl TalliedCounts {
                     _ => 0,
                 })
                 .collect();
-            let all: u32 = copies.iter().sum();
+            // Copies that do not add up are no copies: the place then counts as not looked up.
+            let sum = copies.iter().try_fold(0u32, |sum, &n| sum.checked_add(n));
+            let Some(all) = sum else { continue };
             for (allele, &n) in alleles.split(',').zip(&copies) {
                 let key = (
                     contig.clone(),

@@ -215,10 +215,18 @@ impl Tallies {
                 postcard::from_bytes(beside).map_err(|e| broken(e.to_string()))?;
             let sums = Sums::restore(Arc::clone(scheme), sums).map_err(broken)?;
             all.sums.merge(sums);
+            // Two that are within bounds can be added up; that the outcome is so as well lets the next come.
+            let too_large = || broken("they are too large to be added up".to_owned());
+            if !all.sums.is_bounded() || !can_be_added(&verdicts, &tally, &masked) {
+                return Err(too_large());
+            }
             all.tally.merge(&tally);
             all.masked.merge(&masked);
             for (verdict, n) in verdicts {
                 *all.verdicts.entry(verdict).or_default() += n;
+            }
+            if !can_be_added(&all.verdicts, &all.tally, &all.masked) {
+                return Err(too_large());
             }
         }
         all.sums.flush();
@@ -233,6 +241,15 @@ const OF_THE_SHARD: [&str; 4] = ["contigs", "without_contigs", "regions", "regio
 
 /// Settings that `measure` can name as well.
 const FROM_PLAN: [&str; 3] = ["gene_copies", "list_losses", "min_call_rate"];
+
+/// Whether what is counted beside the sums is so little that as much again can be added.
+fn can_be_added(verdicts: &BTreeMap<Verdict, u64>, calls: &CallTally, masked: &MaskTally) -> bool {
+    let calls = calls.numbers();
+    let masked = masked.records.values().chain(masked.genotypes.values());
+    let mut numbers = verdicts.values().chain(&calls).chain(masked);
+    let sum = numbers.try_fold(0u64, |sum, &n| sum.checked_add(n));
+    sum.is_some_and(|sum| sum <= u64::MAX / 4)
+}
 
 fn parts_of(state: &[u8]) -> Option<(&[u8], &[u8])> {
     let (length, rest) = state.split_first_chunk::<8>()?;

@@ -6,6 +6,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::super::bounds;
 use super::sums::Triangle;
 use super::{LocusRows, LocusWeights, TERM_BITS, WEIGHT_BITS, power_of_two};
 
@@ -50,6 +51,17 @@ impl MissingSums {
         self.b.absent.has_size(n)
             && self.h.absent.has_size(n)
             && lists.iter().all(|list| list.absent.len() == n)
+    }
+
+    pub(super) fn is_bounded(&self) -> bool {
+        let pairs = [&self.b, &self.h];
+        let lists = [&self.p, &self.q, &self.typed];
+        pairs
+            .iter()
+            .all(|sums| bounds::fine([&sums.all]) && sums.absent.is_bounded())
+            && lists
+                .iter()
+                .all(|sums| bounds::fine(sums.absent.iter().chain([&sums.all])))
     }
 
     pub(super) fn merge(&mut self, other: &MissingSums) {

@@ -4,11 +4,16 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+use super::super::bounds::{self, MOST_ALLELES, MOST_LOCI};
 use super::Product;
 use super::missing::MissingSums;
 
 /// Up to so many rows, sums of integers of at most 2^44 stay within i64.
 const NARROW_ROWS: u64 = 1 << 18;
+/// The most that one row adds to a cell: 2^44, and what rounding the parts of a vector can add to that.
+const MOST_OF_A_ROW: i128 = (1 << 44) + (1 << 28);
+/// Sets of cutoffs.
+const MASKS: u8 = 8;
 
 /// The sums of one contig, by set of cutoffs (a mask of bits).
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
@@ -29,6 +34,10 @@ impl ContigSums {
                 && bin.by_typed.len() == n + 1
                 && bin.missing.as_ref().is_none_or(|m| m.has_size(n))
         })
+    }
+
+    pub(super) fn is_bounded(&self) -> bool {
+        self.bins.keys().all(|&mask| mask < MASKS) && self.bins.values().all(BinSums::is_bounded)
     }
 
     pub(super) fn merge(&mut self, other: ContigSums) {
@@ -91,6 +100,17 @@ impl BinSums {
     pub(super) fn missing_mut(&mut self, individuals: usize) -> &mut MissingSums {
         self.missing
             .get_or_insert_with(|| Box::new(MissingSums::new(individuals)))
+    }
+
+    fn is_bounded(&self) -> bool {
+        let numbers =
+            |of: fn(&TypedTally) -> &u64, most| bounds::add_up(self.by_typed.iter().map(of), most);
+        bounds::fine([&self.own])
+            && self.vectors.is_bounded()
+            && numbers(|t| &t.loci, MOST_LOCI)
+            && numbers(|t| &t.weight, MOST_ALLELES)
+            && numbers(|t| &t.squared_weight, 16 * MOST_ALLELES)
+            && self.missing.iter().all(|m| m.is_bounded())
     }
 
     fn merge(&mut self, other: BinSums) {
@@ -160,6 +180,16 @@ impl Triangle {
             _ => return false,
         };
         self.size == n && cells == n * (n + 1) / 2
+    }
+
+    /// Whether no cell is larger than so many rows make it.
+    pub(super) fn is_bounded(&self) -> bool {
+        let most = i128::from(self.rows) * MOST_OF_A_ROW;
+        self.rows <= MOST_ALLELES
+            && match &self.cells {
+                Cells::Narrow(cells) => cells.iter().all(|&c| i128::from(c).abs() <= most),
+                Cells::Wide(cells) => cells.iter().all(|&c| (-most..=most).contains(&c)),
+            }
     }
 
     /// Individuals.
