@@ -155,6 +155,16 @@ proptest! {
         assert_same(&merged, &whole);
     }
 
+    /// Bounds for what comes from files refuse nothing that loci can make.
+    #[test]
+    fn what_is_stored_reads_back(records in records()) {
+        let scheme = scheme();
+        let whole = sums(&scheme, &records);
+        let bytes = whole.clone().store().expect("bytes");
+        let read = Sums::restore(scheme, &bytes).expect("sums");
+        assert_same(&read, &whole);
+    }
+
     /// The heart of the intervals over individuals: a delete-one value read from the sums is what a
     /// recount without the individual gives (the set of loci that vary among all held fixed).
     #[test]
@@ -237,4 +247,36 @@ proptest! {
         prop_assert!(t.richness >= t.richness_loci - 1e-9);
         prop_assert!(t.richness <= 4.0 * t.richness_loci + 1e-9);
     }
+}
+
+/// Each would overflow, or take more from a number than it is, if it were read.
+#[test]
+fn stored_sums_that_no_loci_make_are_refused() {
+    let record = Record {
+        contig: 1,
+        position: 5,
+        alleles: 2,
+        calls: vec![Some([0, 1]); SLOTS],
+    };
+    let refused = |what: &str, spoil: fn(&mut Sums)| {
+        let mut spoilt = sums(&scheme(), [&record]);
+        spoil(&mut spoilt);
+        let bytes = spoilt.store().expect("bytes");
+        let told = Sums::restore(scheme(), &bytes).map(drop).expect_err(what);
+        assert!(told.contains("larger than loci"), "{what}: {told}");
+    };
+    refused("records", |s| s.kept = u64::MAX);
+    refused("more vary than there are", |s| s.polymorphic = 2);
+    refused("genotypes", |s| s.strata[0].typed_genotypes = u64::MAX);
+    refused("typed at more than there are", |s| s.typed_records[3] = 2);
+    refused("heterozygous where not typed", |s| s.heterozygous[8] = 2);
+    refused("loci of a spectrum", |s| s.spectra[0].loci = u64::MAX);
+    refused("fixed loci", |s| s.pairs[0].fates.loci_fixed = u64::MAX);
+    refused("scarce alleles", |s| s.carriers[0].scarce = u64::MAX);
+    refused("only carriers", |s| s.carriers[0].only_carrier[1] = 1 << 60);
+    refused("tests", |s| {
+        let test = &mut s.strata[1].hardy_weinberg;
+        let side = genewane::locus::hardy_weinberg::Direction::Excess;
+        test.add_to_bin(7, side, u64::MAX - 9).expect("a bin");
+    });
 }

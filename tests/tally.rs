@@ -5,6 +5,9 @@ mod common;
 use std::path::{Path, PathBuf};
 
 use common::{Run, fixture, genewane, run, without_provenance};
+use genewane::ingest::sheet::parse_sheet;
+use genewane::model::match_samples;
+use genewane::report::tally::{TallyRows, read_tally};
 use serde_json::Value;
 
 /// The demo calls as text, cut into one file a contig; the cuts' names.
@@ -207,6 +210,36 @@ fn damage_is_noticed() {
         assert_ne!(run.code, Some(0), "bit of byte {at} went unnoticed");
         assert_ne!(run.code, Some(101), "byte {at}: {}", run.stderr);
     }
+}
+
+/// A checksum holds for whatever was written: sums that no calls make are refused all the same.
+#[test]
+fn sums_that_cannot_be_added_up_are_told() {
+    let folder = tempfile::tempdir().expect("a scratch folder");
+    let calls = shards(folder.path());
+    let (path, _) = tally(&calls[0], &sheet(), &[]);
+    let (header, mut state) = read_tally(&path).expect("a tally");
+    let rows = std::fs::read(sheet()).expect("the sheet");
+    let (rows, _) = parse_sheet(&rows).expect("rows");
+    let matched = match_samples(&header.samples_in_calls, &rows, false).expect("strata");
+    // The sums end with two numbers of seven bits a byte: records kept, and how many of them vary.
+    for _ in 0..2 {
+        state.pop();
+        while state.last().is_some_and(|byte| byte & 0x80 != 0) {
+            state.pop();
+        }
+    }
+    let most = [[0xff; 9].as_slice(), &[1]].concat(); // 2^64 - 1
+    state.extend([most.clone(), most].concat());
+    TallyRows::create(&path, &matched.strata)
+        .and_then(|rows| rows.finish(&path, header, &state))
+        .expect("a tally");
+    let run = measure(&[path], &[]);
+    assert_eq!(run.code, Some(1), "{}", run.stderr);
+    for word in ["larger than loci", "make the tally again"] {
+        assert!(run.stderr.contains(word), "{}", run.stderr);
+    }
+    assert!(!run.stderr.contains("panicked"), "{}", run.stderr);
 }
 
 #[test]

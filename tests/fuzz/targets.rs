@@ -90,7 +90,7 @@ pub const TARGETS: [Target; 11] = [
         name: "sums",
         corpus: states,
         read: report,
-        share: 10,
+        share: 5,
     },
     Target {
         name: "documents",
