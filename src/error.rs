@@ -1,8 +1,11 @@
 //! What can go wrong, where, and how to mend it. One exit code per class.
 
+use std::cell::Cell;
 use std::fmt;
 use std::io;
+use std::panic::AssertUnwindSafe;
 use std::path::PathBuf;
+use std::sync::Once;
 
 pub use crate::model::Problem;
 
@@ -126,6 +129,32 @@ impl fmt::Display for Place {
     }
 }
 
+/// Runs a library on a file that someone may have made to harm: should it panic, that is a damaged file,
+/// told as `broken`, and not a word of the panic itself comes out.
+pub(crate) fn guarded<T>(
+    broken: &str,
+    read: impl FnOnce() -> std::result::Result<T, String>,
+) -> std::result::Result<T, String> {
+    static QUIET: Once = Once::new();
+    QUIET.call_once(|| {
+        let before = std::panic::take_hook();
+        std::panic::set_hook(Box::new(move |panic| {
+            if !GUARDED.get() {
+                before(panic);
+            }
+        }));
+    });
+    let outer = GUARDED.replace(true);
+    let outcome = std::panic::catch_unwind(AssertUnwindSafe(read));
+    GUARDED.set(outer);
+    outcome.unwrap_or_else(|_| Err(broken.to_owned()))
+}
+
+thread_local! {
+    /// Whether a panic of this thread is going to be caught by [`guarded`].
+    static GUARDED: Cell<bool> = const { Cell::new(false) };
+}
+
 fn list(path: &std::path::Path, problems: &[Problem]) -> String {
     let mut out = format!("{}: {} problem(s)", path.display(), problems.len());
     for p in problems {
@@ -135,4 +164,23 @@ fn list(path: &std::path::Path, problems: &[Problem]) -> String {
         }
     }
     out
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_panic_of_a_library_is_a_damaged_file() {
+        assert_eq!(guarded("broken", || Ok(5)), Ok(5));
+        assert_eq!(
+            guarded::<()>("broken", || Err("cut".into())),
+            Err("cut".into())
+        );
+        assert_eq!(
+            guarded::<()>("broken", || panic!("inside")),
+            Err("broken".into())
+        );
+        assert!(!GUARDED.get());
+    }
 }

@@ -9,6 +9,16 @@
 //! simulations build on these ([`outlook`]); [`report`] writes what leaves the house.
 //! `DEVELOPERS.md` has the import table, and `tests/architecture.rs` keeps it true.
 #![forbid(unsafe_code)]
+#![cfg_attr(
+    not(test),
+    deny(
+        clippy::unwrap_used,
+        clippy::expect_used,
+        clippy::panic,
+        clippy::unreachable,
+        clippy::todo
+    )
+)]
 
 pub mod cli;
 pub mod error;

@@ -2,43 +2,16 @@
 
 mod common;
 
-use std::path::PathBuf;
 use std::sync::LazyLock;
 
 use serde_json::Value;
 
-use common::{Run, close, find, fixture, run};
+use common::{Case, Run, close, find, fixture, run};
 
 /// The report of the demonstration data, made once.
-static REPORT: LazyLock<Value> = LazyLock::new(|| {
-    common::measure(
-        &fixture("demo/calls.vcf.gz"),
-        &fixture("demo/samples.tsv"),
-        &["--generation-years", "2", "--quiet"],
-    )
-});
-
-struct Case {
-    folder: tempfile::TempDir,
-}
+static REPORT: LazyLock<Value> = LazyLock::new(|| common::demo_report("2"));
 
 impl Case {
-    fn new() -> Self {
-        let case = Case {
-            folder: tempfile::tempdir().expect("a scratch folder"),
-        };
-        case.write("report.json", &REPORT.to_string());
-        case
-    }
-
-    fn path(&self, name: &str) -> PathBuf {
-        self.folder.path().join(name)
-    }
-
-    fn write(&self, name: &str, text: &str) {
-        std::fs::write(self.path(name), text).expect("a scratch file");
-    }
-
     /// Runs on the report; options that name a file of this case start with `@`.
     fn run(&self, options: &[&str]) -> Run {
         let mut arguments = vec!["forecast".into(), self.path("report.json").into_os_string()];
@@ -93,7 +66,7 @@ fn median(step: &Value, field: &str) -> f64 {
 // 1 - that for inbreeding: 0.9043820750, 0.0956179250.
 #[test]
 fn a_given_size_gives_the_closed_form() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     case.write(
         "s.toml",
         "[[scenario]]\nname = \"fifty\"\neffective_size = 50\n",
@@ -149,7 +122,7 @@ fn a_given_size_gives_the_closed_form() {
 // of them: 1/(2(1 - 0.9^(1/50))) = 237.5305; twice the rate, half the time.
 #[test]
 fn the_size_needed_is_the_closed_form() {
-    let document = Case::new().document(&["--years", "100", "--quiet"]);
+    let document = Case::with_report(&REPORT).document(&["--years", "100", "--quiet"]);
     let population = find(&document["populations"], "population", "Quillmere");
     let needed = find(&population["sizes_needed"], "share_of", "today");
     assert_eq!(
@@ -177,7 +150,7 @@ fn the_size_needed_is_the_closed_form() {
 
 #[test]
 fn the_same_bytes_for_any_threads_and_other_ones_for_another_seed() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     case.write("s.toml", "[[scenario]]\nname = \"double\"\ntimes = 2\n");
     let of = |threads: &str, seed: &str| {
         let got = case.run(&[
@@ -211,7 +184,7 @@ fn the_same_bytes_for_any_threads_and_other_ones_for_another_seed() {
 
 #[test]
 fn newcomers_from_the_other_lake() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let text = "[[scenario]]\nname = \"founders\"\npopulations = \"Tarn Osk\"\nrelease = 20\n\
         generation = 2\nfrom = \"Quillmere@2020\"\n\
         [[scenario]]\nname = \"trickle\"\npopulations = [\"Tarn Osk\"]\nmigrants = 2\nfrom = \"Quillmere@2020\"\n";
@@ -254,7 +227,7 @@ fn newcomers_from_the_other_lake() {
 // told here): the chances add up to 1, and a scarce allele of the report is found as it is written.
 #[test]
 fn watched_alleles_of_the_report() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let scarce = &REPORT["at_risk"][0];
     let cell = |name: &str| scarce[name].to_string().replace('"', "");
     let row = format!(
@@ -319,7 +292,7 @@ fn counted_in_the_text(place: (&str, &str), samples: &[String]) -> (u64, u64) {
 
 #[test]
 fn a_tally_has_the_copies_of_any_watched_allele() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let tally = case.path("demo.parquet");
     let mut arguments = vec![
         "tally".into(),
@@ -405,7 +378,7 @@ fn a_tally_has_the_copies_of_any_watched_allele() {
 
 #[test]
 fn bad_input_is_told_with_its_place() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     case.write(
         "s.toml",
         "[[scenario]]\nname = \"x\"\neffective_size = 90\ncensus = 40\n",
@@ -467,7 +440,7 @@ fn bad_input_is_told_with_its_place() {
 
 #[test]
 fn without_a_generation_length_there_are_no_years() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     // The sheet without its generations.
     let sheet = std::fs::read_to_string(fixture("demo/samples.tsv")).unwrap();
     case.write("samples.tsv", &sheet.replacen("generation", "cohort", 1));

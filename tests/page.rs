@@ -2,28 +2,14 @@
 
 mod common;
 
-use std::path::PathBuf;
-
 use serde_json::Value;
 
-use common::{Run, fixture, run};
-
-struct Case {
-    folder: tempfile::TempDir,
-}
+use common::{Case, Run, run};
 
 impl Case {
     /// The report of the demonstration data, a forecast and a verdict of it.
-    fn new() -> Self {
-        let case = Case {
-            folder: tempfile::tempdir().expect("a scratch folder"),
-        };
-        let report = common::measure(
-            &fixture("demo/calls.vcf.gz"),
-            &fixture("demo/samples.tsv"),
-            &["--generation-years", "2", "--quiet"],
-        );
-        case.write("report.json", &report.to_string());
+    fn with_documents() -> Self {
+        let case = Case::with_report(&common::demo_report("2"));
         case.write(
             "scenarios.toml",
             "[[scenario]]\nname = \"<b>larger & 'safer'</b>\"\neffective_size = 200\n",
@@ -32,14 +18,6 @@ impl Case {
         case.made("forecast", "forecast.json", &forecast);
         case.made("verdict", "verdict.json", &["--quiet"]);
         case
-    }
-
-    fn path(&self, name: &str) -> PathBuf {
-        self.folder.path().join(name)
-    }
-
-    fn write(&self, name: &str, text: &str) {
-        std::fs::write(self.path(name), text).expect("a scratch file");
     }
 
     fn read(&self, name: &str) -> Value {
@@ -69,7 +47,7 @@ impl Case {
 
 #[test]
 fn forecasts_and_verdicts_stand_on_the_page_of_their_report() {
-    let case = Case::new();
+    let case = Case::with_documents();
     let bare = String::from_utf8(case.page(&["report.json"]).stdout).unwrap();
     assert!(!bare.contains("id=\"forecast\"") && !bare.contains("id=\"verdict\""));
     let got = case.page(&["report.json", "verdict.json", "forecast.json"]);
@@ -133,7 +111,7 @@ fn between<'a>(html: &'a str, from: &str, to: &str) -> &'a str {
 
 #[test]
 fn what_does_not_belong_to_the_report_is_refused_and_nothing_is_written() {
-    let case = Case::new();
+    let case = Case::with_documents();
     let refused = |documents: &[&str], words: &str| {
         let got = case.page(documents);
         assert_eq!(got.code, Some(1), "{}", got.stderr);

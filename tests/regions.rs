@@ -8,7 +8,7 @@ use std::io::{Read, Write};
 use std::path::{Path, PathBuf};
 use std::time::{Duration, SystemTime};
 
-use common::{Run, fixture, run};
+use common::{Case, Run, fixture, run};
 use noodles_bgzf as bgzf;
 use noodles_core::Position;
 use noodles_csi::{self as csi, binning_index::index::reference_sequence::bin::Chunk};
@@ -34,21 +34,7 @@ fn place(line: &str) -> (&str, u64) {
     )
 }
 
-struct Case {
-    folder: tempfile::TempDir,
-}
-
 impl Case {
-    fn new() -> Self {
-        Case {
-            folder: tempfile::tempdir().expect("a scratch folder"),
-        }
-    }
-
-    fn path(&self, name: &str) -> PathBuf {
-        self.folder.path().join(name)
-    }
-
     /// Writes BGZF text of many small blocks with an index by another library; `csi` or `tbi`.
     fn indexed_text(&self, name: &str, ending: &str) -> PathBuf {
         let path = self.path(name);
@@ -169,7 +155,7 @@ fn content(report: Value) -> Value {
 
 #[test]
 fn regions_give_the_report_of_calls_that_hold_nothing_else() {
-    let case = Case::new();
+    let case = Case::empty();
     let tbi = case.indexed_text("tbi.vcf.gz", "tbi");
     let csi = case.indexed_text("csi.vcf.gz", "csi");
     let bcf = case.indexed_binary("calls.bcf");
@@ -226,7 +212,7 @@ fn regions_give_the_report_of_calls_that_hold_nothing_else() {
 /// Every contig by itself: tallies of regions add up to the report of the whole.
 #[test]
 fn tallies_of_regions_add_up() {
-    let case = Case::new();
+    let case = Case::empty();
     let calls = case.indexed_text("calls.vcf.gz", "csi");
     let mut shards = Vec::new();
     for contig in contigs() {
@@ -257,7 +243,7 @@ fn tallies_of_regions_add_up() {
 
 #[test]
 fn indexes_that_cannot_be_trusted_are_told() {
-    let case = Case::new();
+    let case = Case::empty();
     let calls = case.indexed_text("calls.vcf.gz", "tbi");
     let index = with_ending(&calls, "tbi");
     let contig = contigs()[1].clone();
@@ -316,7 +302,7 @@ fn indexes_that_cannot_be_trusted_are_told() {
 
 #[test]
 fn wrong_regions_are_told() {
-    let case = Case::new();
+    let case = Case::empty();
     let calls = case.indexed_text("calls.vcf.gz", "tbi");
     let refused = |options: &[&str], parts: &[&str]| {
         let got = measure(&calls, options);

@@ -2,43 +2,16 @@
 
 mod common;
 
-use std::path::PathBuf;
 use std::sync::LazyLock;
 
 use serde_json::Value;
 
-use common::{Run, close, find, fixture, run};
+use common::{Case, Run, close, find, run};
 
 /// The report of the demonstration data, made once.
-static REPORT: LazyLock<Value> = LazyLock::new(|| {
-    common::measure(
-        &fixture("demo/calls.vcf.gz"),
-        &fixture("demo/samples.tsv"),
-        &["--generation-years", "4", "--quiet"],
-    )
-});
-
-struct Case {
-    folder: tempfile::TempDir,
-}
+static REPORT: LazyLock<Value> = LazyLock::new(|| common::demo_report("4"));
 
 impl Case {
-    fn new() -> Self {
-        let case = Case {
-            folder: tempfile::tempdir().expect("a scratch folder"),
-        };
-        case.write("report.json", &REPORT.to_string());
-        case
-    }
-
-    fn path(&self, name: &str) -> PathBuf {
-        self.folder.path().join(name)
-    }
-
-    fn write(&self, name: &str, text: &str) {
-        std::fs::write(self.path(name), text).expect("a scratch file");
-    }
-
     fn judge(&self, policy: &str, options: &[&str]) -> Run {
         self.write("policy.toml", policy);
         let (report, policy) = (self.path("report.json"), self.path("policy.toml"));
@@ -83,7 +56,7 @@ fn size(population: &str) -> (f64, f64, f64) {
 
 #[test]
 fn a_limit_outside_and_inside_the_interval() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let (value, low, high) = size("Tarn Osk");
     for (limit, answer, code) in [
         (low - 1.0, "met", 0),
@@ -106,7 +79,7 @@ fn a_limit_outside_and_inside_the_interval() {
 
 #[test]
 fn uncertain_counts_as_asked() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let (value, ..) = size("Tarn Osk");
     let text = format!("measure = \"effective_size\"\nabove = {value}\npopulations = \"Tarn Osk\"");
     for (how, code) in [("tell", 0), ("met", 0), ("breached", 3)] {
@@ -117,7 +90,7 @@ fn uncertain_counts_as_asked() {
 
 #[test]
 fn a_rule_that_does_not_bind_is_told_and_not_counted() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let text =
         "measure = \"effective_size\"\nabove = 1e6\nbinding = false\npopulations = \"Tarn Osk\"";
     let got = case.judge(&rule(text), &[]);
@@ -130,7 +103,7 @@ fn a_rule_that_does_not_bind_is_told_and_not_counted() {
 
 #[test]
 fn measures_are_the_numbers_of_the_report() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let policy = [
         "measure = \"heterozygosity_kept\"\nat_least = 0.5",
         "measure = \"inbreeding_per_generation\"\nat_most = 0.5",
@@ -200,7 +173,7 @@ fn the_indicator_by_its_definition() {
             }
         }
     }
-    let document = Case::new().document(&policy, &["--indicator"]);
+    let document = Case::with_report(&REPORT).document(&policy, &["--indicator"]);
     let indicator = &document["indicator"];
     close(
         "mean",
@@ -243,7 +216,7 @@ fn a_census_at_its_ratio_is_compared_without_rounding() {
         ));
     }
     policy.push_str("[population.D]\nspecies = \"Wren\"\ncensus = 4000\nratio = 0.2\n");
-    let document = Case::new().document(&policy, &["--indicator"]);
+    let document = Case::with_report(&REPORT).document(&policy, &["--indicator"]);
     let places = &document["rules"][0]["places"];
     for (name, answer) in [("A", "breached"), ("B", "met"), ("C", "met")] {
         assert_eq!(find(places, "where", name)["answer"], answer, "{name}");
@@ -271,7 +244,7 @@ fn the_built_in_policy_prints_and_judges() {
     assert_eq!(printed.code, Some(0), "{}", printed.stderr);
     let policy = String::from_utf8(printed.stdout).unwrap();
     assert!(policy.contains("Franklin (1980)") && policy.contains("A.4"));
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let own = case.document(&policy, &[]);
     let report = case.path("report.json");
     let built_in = run(["verdict".as_ref(), report.as_os_str(), "--quiet".as_ref()]);
@@ -285,7 +258,7 @@ fn the_built_in_policy_prints_and_judges() {
 
 #[test]
 fn a_policy_with_problems_is_told_whole() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let policy = "[[rule]]\nfield = \"latest.alelic_richness\"\nat_least = 2\n\
         [[rule]]\nfield = \"since_baseline.expected_heterozygosity_kept\"\nat_least = 0.9\n\
         [[rule]]\nmeasure = \"effective_size\"\nabove = 5\npopulations = \"Tarn Oks\"\n";
@@ -306,7 +279,7 @@ fn a_policy_with_problems_is_told_whole() {
 
 #[test]
 fn a_report_that_cannot_be_trusted_is_refused() {
-    let case = Case::new();
+    let case = Case::with_report(&REPORT);
     let policy = rule("measure = \"effective_size\"\nabove = 5");
     let sound = REPORT.to_string();
     for (text, part) in [

@@ -35,7 +35,9 @@ use super::settings::{
     ABOVE_ZERO, AT_LEAST_TWO, AT_LEAST_ZERO, Value, Walker, find, integer, number, walk,
 };
 use crate::error::{Error, Result};
-use crate::model::{LifeHistory, PopulationSettings, Problem, Programme, SamplingPlan};
+use crate::model::{
+    LifeHistory, PopulationSettings, Problem, Programme, SamplingPlan, hexadecimal,
+};
 
 /// Keys of a population's settings, at the top and in its table.
 const SETTINGS: [&str; 10] = [
@@ -81,10 +83,7 @@ pub fn read_programme(path: &Path) -> Result<ProgrammeFile> {
         path: path.to_path_buf(),
         problems,
     })?;
-    let digest = Sha256::digest(&bytes)
-        .iter()
-        .map(|byte| format!("{byte:02x}"))
-        .collect();
+    let digest = hexadecimal(&Sha256::digest(&bytes));
     Ok(ProgrammeFile {
         path: path.to_path_buf(),
         programme,

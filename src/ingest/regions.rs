@@ -9,7 +9,7 @@ use noodles_core::{Position, region::Interval};
 use noodles_csi::{self as csi, BinningIndex};
 
 use super::header::CallsHeader;
-use crate::error::{Error, Place, Result};
+use crate::error::{Error, Place, Result, guarded};
 use crate::model::{Masks, Problem, Region, Regions, nearest};
 
 /// The empty block that ends every BGZF file (SAM specification, section 4.1.2).
@@ -100,19 +100,15 @@ pub(super) fn access(path: &Path, header: &CallsHeader, regions: &Regions) -> Re
         )));
     }
     ends_as_it_must(path)?;
-    // The library may panic on an index that someone made to harm; that is a damaged file as well.
-    let found = std::panic::catch_unwind(|| chunks(&index, header, regions));
-    let damaged = |problem: String| Error::Calls {
+    let found = guarded("the index cannot be read", || {
+        chunks(&index, header, regions).map_err(|e| format!("the index cannot be read: {e}"))
+    });
+    found.map(Access::Chunks).map_err(|problem| Error::Calls {
         path: index.clone(),
         place: Place::Header,
         problem,
         cure: "make the index again, or remove it".to_owned(),
-    };
-    match found {
-        Ok(Ok(chunks)) => Ok(Access::Chunks(chunks)),
-        Ok(Err(e)) => Err(damaged(format!("the index cannot be read: {e}"))),
-        Err(_) => Err(damaged("the index cannot be read".to_owned())),
-    }
+    })
 }
 
 fn contigs_are_known(header: &CallsHeader, regions: &Regions) -> Result<()> {

@@ -32,7 +32,7 @@ use std::path::{Path, PathBuf};
 use sha2::{Digest, Sha256};
 
 use crate::error::{Error, Result};
-use crate::model::{Note, Problem, SheetRow, nearest};
+use crate::model::{Note, Problem, SheetRow, hexadecimal, nearest};
 use columns::Columns;
 use table::Record;
 
@@ -65,10 +65,7 @@ pub fn read_sheet(path: &Path) -> Result<Sheet> {
         path: path.to_path_buf(),
         problems,
     })?;
-    let digest = Sha256::digest(&bytes)
-        .iter()
-        .map(|byte| format!("{byte:02x}"))
-        .collect();
+    let digest = hexadecimal(&Sha256::digest(&bytes));
     Ok(Sheet {
         path: path.to_path_buf(),
         rows,

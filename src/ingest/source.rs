@@ -11,6 +11,7 @@ use std::path::{Path, PathBuf};
 use sha2::{Digest, Sha256};
 
 use crate::error::{Error, Result};
+use crate::model::hexadecimal;
 
 /// Bytes held at a time: four of the largest compressed blocks.
 const BUFFER_BYTES: usize = 256 << 10;
@@ -115,16 +116,9 @@ impl Source {
 
     /// Size and digest of all that was taken from the stream so far.
     pub fn digest(&self) -> InputDigest {
-        let sha256 = self
-            .digest
-            .clone()
-            .finalize()
-            .iter()
-            .map(|b| format!("{b:02x}"))
-            .collect();
         InputDigest {
             bytes: self.taken,
-            sha256,
+            sha256: hexadecimal(&self.digest.clone().finalize()),
         }
     }
 }

@@ -116,15 +116,22 @@ impl Fates {
 
     /// Whether the fates can be those of so many individuals at the first visit and at the second.
     pub(super) fn is_bounded(&self, first: usize, second: usize) -> bool {
-        let most = [most_typed(first), most_typed(second)];
-        let possible = |copies: u32, before: u32, after: u32| {
+        let possible = |copies: u32, [before, after]: [u32; 2], most: [u32; 2]| {
             0 < copies && copies <= before && before <= most[0] && 0 < after && after <= most[1]
         };
+        let rounded = [most_typed(first), most_typed(second)];
+        // The list has the numbers as they are, which may be above the rounded ones.
+        let exact = [gene_copies(first), gene_copies(second)];
         let mut keys = self.by_key.keys();
         let mut missing = self.missing.iter();
         let numbers = self.by_key.values().flat_map(|f| [&f.seen, &f.not_seen]);
-        keys.all(|k| possible(k.baseline_copies, k.baseline_typed, k.later_typed))
-            && missing.all(|m| possible(m.baseline_copies, m.baseline_typed, m.later_typed))
+        keys.all(|k| {
+            possible(
+                k.baseline_copies,
+                [k.baseline_typed, k.later_typed],
+                rounded,
+            )
+        }) && missing.all(|m| possible(m.baseline_copies, [m.baseline_typed, m.later_typed], exact))
             && bounds::add_up(numbers, MOST_ALLELES)
             && self.loci_fixed <= MOST_LOCI
     }
@@ -188,9 +195,14 @@ pub(super) fn rounded(n: u32) -> u32 {
     (n / step) * step + step / 2
 }
 
+/// Gene copies of so many individuals, all typed.
+fn gene_copies(individuals: usize) -> u32 {
+    u32::try_from(2 * individuals).unwrap_or(u32::MAX)
+}
+
 /// The most gene copies of so many individuals, [`rounded`].
 pub(super) fn most_typed(individuals: usize) -> u32 {
-    rounded(u32::try_from(2 * individuals).unwrap_or(u32::MAX))
+    rounded(gene_copies(individuals))
 }
 
 #[cfg(test)]
@@ -202,6 +214,22 @@ mod tests {
         for n in 1..100_000u32 {
             let error = (f64::from(rounded(n)) - f64::from(n)).abs() / f64::from(n);
             assert!(error <= 0.03, "{n} became {}", rounded(n));
+        }
+    }
+
+    /// Numbers above 64 are rounded as keys and not in the list: both are within bounds for every size.
+    #[test]
+    fn fates_of_fully_typed_samples_are_within_bounds() {
+        assert!((1..200).any(|n| most_typed(n) < gene_copies(n)));
+        for n in (1..200).chain([500, 1031, 20_000]) {
+            let mut first = Counts::of(2, vec![Some([0, 0]); n - 1]);
+            first.add([0, 1]);
+            let second = Counts::of(2, vec![Some([0, 0]); n]);
+            let mut fates = Fates::new(5);
+            fates.add(&Locus::default(), &first, &second);
+            assert_eq!(fates.missing.len(), 1);
+            assert!(fates.is_bounded(n, n), "{n}");
+            assert!(!fates.is_bounded(n / 2, n), "{n}");
         }
     }
 

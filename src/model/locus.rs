@@ -236,23 +236,14 @@ pub struct CallTally {
 impl CallTally {
     /// Every number of it.
     pub fn numbers(&self) -> [u64; 7] {
-        let CallTally {
-            diploid,
-            missing,
-            partly_missing,
-            haploid,
-            other_ploidy,
-            spanning_deletion,
-            unspecified_allele,
-        } = *self;
         [
-            diploid,
-            missing,
-            partly_missing,
-            haploid,
-            other_ploidy,
-            spanning_deletion,
-            unspecified_allele,
+            self.diploid,
+            self.missing,
+            self.partly_missing,
+            self.haploid,
+            self.other_ploidy,
+            self.spanning_deletion,
+            self.unspecified_allele,
         ]
     }
 

@@ -33,6 +33,11 @@ pub use strata::{
     strata_of,
 };
 
+/// Bytes as hexadecimal digits, two a byte.
+pub fn hexadecimal(bytes: &[u8]) -> String {
+    bytes.iter().map(|byte| format!("{byte:02x}")).collect()
+}
+
 /// A hash that is the same on every machine and in every version: FNV-1a with a final mix.
 ///
 /// Used to spread loci and contigs over a bounded number of groups without regard to their order.

@@ -1,17 +1,7 @@
 //! Tables as Parquet files, fed with the lines of the same table as text.
 //!
 //! Rows are gathered in groups of bounded size. Column kinds say what a cell's text means; `NA` is null.
-#![cfg_attr(
-    not(test),
-    deny(
-        clippy::unwrap_used,
-        clippy::expect_used,
-        clippy::panic,
-        clippy::unreachable,
-        clippy::todo,
-        clippy::indexing_slicing
-    )
-)]
+#![cfg_attr(not(test), deny(clippy::indexing_slicing))]
 #![expect(
     clippy::indexing_slicing,
     reason = "places were found in the same line"

@@ -4,17 +4,7 @@
 //! stratum `typed:S`, `heterozygotes:S` and `copies:S` (a list by allele). The footer holds under
 //! [`HEADER_KEY`] what it was made of (JSON, [`TallyHeader`]) and under `genewane-state` the exact sums that
 //! `measure` adds up, for this program alone.
-#![cfg_attr(
-    not(test),
-    deny(
-        clippy::unwrap_used,
-        clippy::expect_used,
-        clippy::panic,
-        clippy::unreachable,
-        clippy::todo,
-        clippy::indexing_slicing
-    )
-)]
+#![cfg_attr(not(test), deny(clippy::indexing_slicing))]
 #![expect(
     clippy::indexing_slicing,
     reason = "places were found in the same line; slots are those of the strata"
@@ -39,9 +29,9 @@ use sha2::{Digest, Sha256};
 use super::parquet::{Kind, ParquetTable};
 use super::table::plain;
 use super::wire::InputFile;
-use crate::error::{Error, Place, Result};
+use crate::error::{Error, Place, Result, guarded};
 use crate::merge::LocusView;
-use crate::model::{Locus, Strata};
+use crate::model::{Locus, Strata, hexadecimal};
 
 /// Name of the format.
 pub const TALLY_FORMAT: &str = "genewane-tally";
@@ -282,30 +272,18 @@ pub fn faulty(path: &Path, problem: &str, cure: &str) -> Error {
 /// Texts by key in the footer of a Parquet file.
 fn footer(path: &Path) -> Result<BTreeMap<String, String>> {
     let file = File::open(path).map_err(|e| Error::io(path, "open", e))?;
-    // The library may panic on a footer that someone made to harm; that is a damaged file as well.
-    let read = std::panic::catch_unwind(std::panic::AssertUnwindSafe(|| {
-        SerializedFileReader::new(file).map(|reader| {
-            let texts = reader.metadata().file_metadata().key_value_metadata();
-            let texts = texts.into_iter().flatten();
-            texts
-                .filter_map(|kv| Some((kv.key.clone(), kv.value.clone()?)))
-                .collect()
-        })
-    }));
-    match read {
-        Ok(Ok(texts)) => Ok(texts),
-        Ok(Err(e)) => Err(faulty(
-            path,
-            &format!("its footer cannot be read: {e}"),
-            AGAIN,
-        )),
-        Err(_) => Err(faulty(path, "its footer cannot be read", AGAIN)),
-    }
+    guarded("its footer cannot be read", || {
+        let reader = SerializedFileReader::new(file);
+        let reader = reader.map_err(|e| format!("its footer cannot be read: {e}"))?;
+        let texts = reader.metadata().file_metadata().key_value_metadata();
+        let texts = texts.into_iter().flatten();
+        Ok(texts
+            .filter_map(|kv| Some((kv.key.clone(), kv.value.clone()?)))
+            .collect())
+    })
+    .map_err(|problem| faulty(path, &problem, AGAIN))
 }
 
 fn digest(bytes: &[u8]) -> String {
-    Sha256::digest(bytes)
-        .iter()
-        .map(|b| format!("{b:02x}"))
-        .collect()
+    hexadecimal(&Sha256::digest(bytes))
 }

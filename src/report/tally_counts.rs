@@ -1,15 +1,5 @@
 //! Copies of chosen alleles, looked up in the rows of a tally.
-#![cfg_attr(
-    not(test),
-    deny(
-        clippy::unwrap_used,
-        clippy::expect_used,
-        clippy::panic,
-        clippy::unreachable,
-        clippy::todo,
-        clippy::indexing_slicing
-    )
-)]
+#![cfg_attr(not(test), deny(clippy::indexing_slicing))]
 
 use std::collections::{HashMap, HashSet};
 use std::fs::File;
@@ -21,7 +11,7 @@ use parquet::record::{Field, Row};
 use parquet::schema::types::Type;
 
 use super::tally::faulty;
-use crate::error::{Error, Result};
+use crate::error::{Error, Result, guarded};
 
 /// Copies and gene copies typed by contig, position, allele and stratum.
 #[derive(Debug, Clone, Default)]
@@ -43,17 +33,13 @@ impl TalliedCounts {
         wanted: &HashSet<(&str, u64)>,
     ) -> Result<()> {
         let file = File::open(path).map_err(|e| Error::io(path, "open", e))?;
-        // The library may panic on a file that someone made to harm; that is a damaged file as well.
-        let read = std::panic::catch_unwind(std::panic::AssertUnwindSafe(|| {
+        guarded("its rows cannot be read", || {
             self.rows(file, strata, wanted)
-        }));
-        let problem = match read {
-            Ok(Ok(())) => return Ok(()),
-            Ok(Err(problem)) => problem,
-            Err(_) => "its rows cannot be read".to_owned(),
-        };
-        let cure = "give what 'genewane tally' wrote from the calls of this report";
-        Err(faulty(path, &problem, cure))
+        })
+        .map_err(|problem| {
+            let cure = "give what 'genewane tally' wrote from the calls of this report";
+            faulty(path, &problem, cure)
+        })
     }
 
     /// The counts of one allele in one stratum.

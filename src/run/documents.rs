@@ -8,6 +8,7 @@ use std::path::Path;
 use sha2::{Digest, Sha256};
 
 use crate::error::{Error, Result};
+use crate::model::hexadecimal;
 use crate::report::page::{parse_report, read_document};
 use crate::report::wire::{InputFile, Provenance, Report};
 
@@ -43,8 +44,7 @@ pub(super) fn provenance(
 
 /// An input file with its digest.
 pub(super) fn input_file(role: &str, path: &Path, format: &str, bytes: &[u8]) -> InputFile {
-    let digest = Sha256::digest(bytes);
-    let digest = digest.iter().map(|byte| format!("{byte:02x}")).collect();
+    let digest = hexadecimal(&Sha256::digest(bytes));
     super::input_file(role, path, format, bytes.len() as u64, digest)
 }
 
@@ -61,15 +61,11 @@ pub(super) fn large_input_file(role: &str, path: &Path, format: &str) -> Result<
         digest.update(&piece[..n]);
         bytes += n as u64;
     }
-    let digest = digest
-        .finalize()
-        .into_iter()
-        .map(|byte| format!("{byte:02x}"));
     Ok(super::input_file(
         role,
         path,
         format,
         bytes,
-        digest.collect(),
+        hexadecimal(&digest.finalize()),
     ))
 }

@@ -12,6 +12,46 @@ pub fn root() -> &'static Path {
     Path::new(env!("CARGO_MANIFEST_DIR"))
 }
 
+/// A folder of scratch files, gone at the end.
+pub struct Case {
+    folder: tempfile::TempDir,
+}
+
+impl Case {
+    /// An empty folder.
+    pub fn empty() -> Self {
+        Case {
+            folder: tempfile::tempdir().expect("a scratch folder"),
+        }
+    }
+
+    /// With `report.json`, the report of the demonstration data.
+    pub fn with_report(report: &Value) -> Self {
+        let case = Case::empty();
+        case.write("report.json", &report.to_string());
+        case
+    }
+
+    /// A file of the folder.
+    pub fn path(&self, name: &str) -> PathBuf {
+        self.folder.path().join(name)
+    }
+
+    /// Writes a file of the folder.
+    pub fn write(&self, name: &str, text: &str) {
+        std::fs::write(self.path(name), text).expect("a scratch file");
+    }
+}
+
+/// The report of the demonstration data with a generation length in years.
+pub fn demo_report(generation_years: &str) -> Value {
+    measure(
+        &fixture("demo/calls.vcf.gz"),
+        &fixture("demo/samples.tsv"),
+        &["--generation-years", generation_years, "--quiet"],
+    )
+}
+
 /// A file under `fixtures/`.
 pub fn fixture(name: &str) -> PathBuf {
     root().join("fixtures").join(name)

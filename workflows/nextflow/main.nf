@@ -25,6 +25,11 @@ def optional(path) {
     return path ? file(path, checkIfExists: true) : []
 }
 
+// The indexes that stand beside calls, if any.
+def indexes(calls) {
+    return ['csi', 'tbi'].collect { ending -> file("${calls.toUriString()}.${ending}") }.findAll { index -> index.exists() }
+}
+
 // For other workflows: `programmes` carries (name, calls, sheet), and `counted` holds the contigs as above.
 workflow MONITOR {
     take:
@@ -39,7 +44,7 @@ workflow MONITOR {
     pieces = numbered(counted)
     scattered = programmes
         .combine(channel.fromList(pieces))
-        .map { name, calls, sheet, shard, contigs -> tuple(name, shard, contigs, calls, sheet) }
+        .map { name, calls, sheet, shard, contigs -> tuple(name, shard, contigs, calls, indexes(calls), sheet) }
     TALLY(scattered, settings.programme, options.measure)
 
     // As soon as a programme has all its tallies; in the order of the shards, so that a rerun finds its cache.
@@ -51,7 +56,8 @@ workflow MONITOR {
 
     FORECAST(MEASURE.out.report, settings.scenarios, settings.watched, options.forecast)
     VERDICT(MEASURE.out.report, settings.policy, options.verdict)
-    PAGE(MEASURE.out.report, options.page)
+    documents = MEASURE.out.report.join(FORECAST.out.forecast).join(VERDICT.out.verdict)
+    PAGE(documents, options.page)
 
     versions = SCREEN.out.versions
         .mix(TALLY.out.versions, MEASURE.out.versions, FORECAST.out.versions, VERDICT.out.versions, PAGE.out.versions)

@@ -220,6 +220,11 @@ impl Triangle {
             (Cells::Narrow(mine), Cells::Narrow(theirs)) => {
                 mine.iter_mut().zip(theirs).for_each(|(c, v)| *c += v);
             }
+            #[expect(
+                clippy::unreachable,
+                reason = "`count` widens by the number of rows, and `has_size` holds what was read to the same"
+            )]
+            (Cells::Narrow(_), Cells::Wide(_)) => unreachable!("count widens"),
             (Cells::Wide(mine), Cells::Narrow(theirs)) => {
                 mine.iter_mut()
                     .zip(theirs)
@@ -228,7 +233,6 @@ impl Triangle {
             (Cells::Wide(mine), Cells::Wide(theirs)) => {
                 mine.iter_mut().zip(theirs).for_each(|(c, v)| *c += v);
             }
-            (Cells::Narrow(_), Cells::Wide(_)) => unreachable!("count widens"),
         }
     }
 

@@ -89,7 +89,7 @@ fn row(rule: &Rule, place: &Place) -> Vec<Cell> {
         Cell::from(place.place.as_str()),
         Cell::from(word(place.answer)),
         Cell::from(value),
-        Cell::from(limit(&rule.limit)),
+        Cell::from(limit(rule)),
         Cell::from(if rule.binding { "yes" } else { "no, told only" }),
         Cell::from(place.reason.as_str()),
         Cell::from(rule.source.as_deref().unwrap_or("none named")),

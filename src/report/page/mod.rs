@@ -20,6 +20,8 @@ mod view;
 
 use std::path::Path;
 
+use base64::Engine;
+use base64::engine::general_purpose::STANDARD;
 use minijinja::value::{Serde, Value};
 use minijinja::{AutoEscape, Environment};
 use sha2::{Digest, Sha256};
@@ -116,31 +118,13 @@ impl Page {
 
 /// What the page may do: nothing but its own style and script.
 fn policy(style: &str) -> String {
-    let digest = |text: &str| base64(&Sha256::digest(text.as_bytes()));
+    let digest = |text: &str| STANDARD.encode(Sha256::digest(text.as_bytes()));
     format!(
         "default-src 'none'; style-src 'sha256-{}'; script-src 'sha256-{}'; img-src data:; \
          base-uri 'none'; form-action 'none'",
         digest(style),
         digest(SCRIPT)
     )
-}
-
-/// Base64 with padding (RFC 4648, section 4).
-fn base64(bytes: &[u8]) -> String {
-    const ALPHABET: &[u8; 64] = b"ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789+/";
-    let mut out = String::with_capacity(bytes.len().div_ceil(3) * 4);
-    for chunk in bytes.chunks(3) {
-        let mut three = [0u8; 3];
-        three[..chunk.len()].copy_from_slice(chunk);
-        let bits = u32::from_be_bytes([0, three[0], three[1], three[2]]);
-        for i in 0..4 {
-            match i <= chunk.len() {
-                true => out.push(ALPHABET[(bits >> (18 - 6 * i) & 63) as usize] as char),
-                false => out.push('='),
-            }
-        }
-    }
-    out
 }
 
 /// A name in a cell: kept apart from the direction of its neighbours where it needs to be.

@@ -1,6 +1,6 @@
 //! The verdict as a short table for a terminal.
 
-use super::document::{Answer, Indicator, Limit, Place, Verdict};
+use super::document::{Answer, Indicator, Place, Rule, Verdict};
 
 /// Rules and answers in aligned columns, the sum in the last line.
 pub fn text_table(verdict: &Verdict) -> String {
@@ -16,7 +16,7 @@ pub fn text_table(verdict: &Verdict) -> String {
                 rule.rule.clone(),
                 place.place.clone(),
                 value(place),
-                limit(&rule.limit),
+                limit(rule),
             ]);
         }
     }
@@ -62,13 +62,32 @@ pub fn value(place: &Place) -> String {
     }
 }
 
-/// The limit in words.
-pub fn limit(limit: &Limit) -> String {
+/// The limit in words, with the unit of what it limits.
+pub fn limit(rule: &Rule) -> String {
+    let limit = &rule.limit;
     let side = limit.side.replace('_', " ");
     match (limit.number, limit.flag) {
-        (Some(limit), _) => format!("{side} {}", number(limit)),
+        (Some(limit), _) => {
+            let words = format!("{side} {} {}", number(limit), unit(&rule.measure));
+            words.trim_end().to_owned()
+        }
         (None, Some(flag)) => format!("must be {}", if flag { "yes" } else { "no" }),
         (None, None) => side,
+    }
+}
+
+/// What the numbers of a measure count; nothing for a number without a unit, and for a field of the report, whose
+/// schema has it.
+fn unit(measure: &str) -> &'static str {
+    match measure {
+        "effective_size" => "individuals",
+        "inbreeding_per_generation" => "a generation",
+        "heterozygosity_kept" => "of the baseline",
+        "alleles_probably_lost" => "alleles",
+        "share_probably_lost" => "of the baseline's alleles",
+        "share_of_census" => "of the census",
+        "populations_above" => "(share of the populations)",
+        _ => "",
     }
 }
 

@@ -1,4 +1,4 @@
-// Sets the report as one page.
+// Sets the report, what lies ahead and the verdict as one page.
 process PAGE {
     tag "${name}"
     cpus 1
@@ -6,7 +6,7 @@ process PAGE {
     time { 1.h * task.attempt }
 
     input:
-    tuple val(name), path(report)
+    tuple val(name), path(report), path(forecast), path(verdict)
     val options
 
     output:
@@ -15,7 +15,7 @@ process PAGE {
 
     script:
     """
-    genewane page ${report} ${options} -o page.html
+    genewane page ${report} ${forecast} ${verdict} ${options} -o page.html
     version=\$(genewane --version)
     printf '"%s":\\n  genewane: "%s"\\n' '${task.process}' "\${version#* }" > versions.yml
     """

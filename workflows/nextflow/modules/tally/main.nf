@@ -1,4 +1,5 @@
-// Counts one shard: the contigs named, out of calls that may hold more.
+// Counts one shard: the contigs named, out of calls that may hold more. With an index beside the calls their other
+// blocks are not read.
 process TALLY {
     tag "${name} ${contigs}"
     cpus 1
@@ -6,7 +7,7 @@ process TALLY {
     time { 4.h * task.attempt }
 
     input:
-    tuple val(name), val(shard), val(contigs), path(calls), path(sheet)
+    tuple val(name), val(shard), val(contigs), path(calls), path(index), path(sheet)
     path programme
     val options
 
@@ -18,7 +19,7 @@ process TALLY {
     // No programme file is an empty list.
     def settings = programme ? "--programme ${programme}" : ''
     """
-    genewane tally ${calls} --samples ${sheet} ${settings} ${options} --contigs '${contigs}' \\
+    genewane tally ${calls} --samples ${sheet} ${settings} ${options} --region '${contigs}' \\
         --threads ${task.cpus} -o ${shard}.parquet
     version=\$(genewane --version)
     printf '"%s":\\n  genewane: "%s"\\n' '${task.process}' "\${version#* }" > versions.yml
